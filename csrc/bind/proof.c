@@ -1,0 +1,8 @@
+#include "bind/bind.h"
+
+static const luaL_Reg functions[] = {{NULL, NULL}};
+
+int lbr_open_proof(lua_State *L) {
+  luaL_newlib(L, functions);
+  return 1;
+}

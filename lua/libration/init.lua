@@ -1,0 +1,25 @@
+--- libration: plan, prove and check measurements of spectral lines.
+-- The front door: a table of rooms, each loaded when it is first used. It sets
+-- no globals, and no module of the library requires it back.
+
+local M = { version = "0.1.0" }
+
+-- Public names and where they live: module, and field (absent: the module).
+local rooms = {
+  window = { "libration.window" },
+}
+
+return setmetatable(M, {
+  __index = function(t, key)
+    local room = rooms[key]
+    if not room then
+      return nil
+    end
+    local value = require(room[1])
+    if room[2] then
+      value = value[room[2]]
+    end
+    rawset(t, key, value)
+    return value
+  end,
+})
