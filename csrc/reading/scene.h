@@ -17,8 +17,9 @@ typedef struct lbr_source {
   double hz;      /* nominal frequency, Hz, > 0 */
   double lock_hz; /* movement per unit deviation of its driver, Hz */
   double free_hz; /* half-width of its own movement, Hz */
-  double wander;  /* most change of frequency within a record, relative,
-                     end to end, taken as a steady ramp */
+  double wander;  /* most change of frequency within a record, relative, peak
+                     to peak: f(t) = f (1 + wander/2 sin(2 pi t/T + any)), one
+                     period per record, so that the mean frequency is f */
   double least;   /* amplitude range, peak, in the demand's unit */
   double most;
   size_t driver;  /* index into the drivers */
