@@ -78,14 +78,6 @@ static void make_factors(lbr_filter *f) {
   }
 }
 
-lbr_status lbr_filter_prepare(lbr_filter *filter) {
-  if (!fields_ok(filter)) return LBR_DOMAIN;
-  lbr_status status = design(filter);
-  if (status != LBR_OK) return status;
-  make_factors(filter);
-  return LBR_OK;
-}
-
 double lbr_filter_corner(const lbr_filter *f, double rate) {
   double corner = f->shape == LBR_FILTER_POINTS ? f->point_at[0] : f->corner;
   return f->corner_of_rate ? corner * rate : corner;
@@ -138,6 +130,21 @@ static double product_gain(const lbr_filter *f, double w) {
     gain2 *= above * above / (square(f->stiff[i] - w2) + f->damp[i] * w2);
   }
   return f->start * sqrt(gain2);
+}
+
+/* Double precision carries the design only while the transition is not too
+ * narrow: the edge must come out where it was asked for. */
+static bool came_out(const lbr_filter *f) {
+  return f->shape != LBR_FILTER_ELLIPTIC ||
+         fabs(product_gain(f, 1.0) - f->floor) < 1e-9 * f->floor;
+}
+
+lbr_status lbr_filter_prepare(lbr_filter *filter) {
+  if (!fields_ok(filter)) return LBR_DOMAIN;
+  lbr_status status = design(filter);
+  if (status != LBR_OK) return status;
+  make_factors(filter);
+  return came_out(filter) ? LBR_OK : LBR_NO_CONVERGE;
 }
 
 static double decibels(const lbr_filter *f, double at) {
