@@ -12,6 +12,7 @@ static const char *const shapes[] = {
     [LBR_FILTER_POINTS] = "points",
 };
 
+#define CLASS "libration.prepared_filter"
 #define SHAPES (sizeof shapes / sizeof *shapes)
 
 /* The field's value as text, for a message; leaves it on the stack. */
@@ -102,7 +103,7 @@ static void check_poles(lua_State *L, int arg, lbr_filter *out) {
                                "a rejection in dB above ripple_db, up to 300");
 }
 
-void lbr_check_filter(lua_State *L, int arg, lbr_filter *out) {
+static void read_table(lua_State *L, int arg, lbr_filter *out) {
   memset(out, 0, sizeof *out);
   arg = lua_absindex(L, arg);
   if (!lua_isnoneornil(L, arg)) {
@@ -123,6 +124,22 @@ void lbr_check_filter(lua_State *L, int arg, lbr_filter *out) {
   if (status != LBR_OK)
     luaL_argerror(L, arg, lua_pushfstring(L, "this filter cannot be made: %s",
                                           lbr_status_text(status)));
+}
+
+void lbr_check_filter(lua_State *L, int arg, lbr_filter *out) {
+  const lbr_filter *made = luaL_testudata(L, arg, CLASS);
+  if (made)
+    *out = *made;
+  else
+    read_table(L, arg, out);
+}
+
+/* The prepared filter of argument 1, read into *room where it is a table. */
+static const lbr_filter *the_filter(lua_State *L, lbr_filter *room) {
+  const lbr_filter *made = luaL_testudata(L, 1, CLASS);
+  if (made) return made;
+  read_table(L, 1, room);
+  return room;
 }
 
 /* A rate is needed only where the corner is a share of it. */
@@ -153,10 +170,10 @@ static double check_hz(lua_State *L, int arg) {
  * assert(math.abs(core.filter.gain(f, 100) ^ 2 - 0.5) < 1e-12)
  */
 static int filter_gain(lua_State *L) {
-  lbr_filter f;
-  lbr_check_filter(L, 1, &f);
+  lbr_filter room;
+  const lbr_filter *f = the_filter(L, &room);
   double hz = check_hz(L, 2);
-  lua_pushnumber(L, lbr_filter_gain(&f, hz, check_rate(L, 3, &f)));
+  lua_pushnumber(L, lbr_filter_gain(f, hz, check_rate(L, 3, f)));
   return 1;
 }
 
@@ -173,10 +190,10 @@ static int filter_gain(lua_State *L) {
  * assert(math.abs(re - 0.5) < 1e-12 and math.abs(im + 0.5) < 1e-12)
  */
 static int filter_response(lua_State *L) {
-  lbr_filter f;
-  lbr_check_filter(L, 1, &f);
+  lbr_filter room;
+  const lbr_filter *f = the_filter(L, &room);
   double hz = check_hz(L, 2);
-  double complex r = lbr_filter_response(&f, hz, check_rate(L, 3, &f));
+  double complex r = lbr_filter_response(f, hz, check_rate(L, 3, f));
   lua_pushnumber(L, creal(r));
   lua_pushnumber(L, cimag(r));
   return 2;
@@ -196,11 +213,11 @@ static int filter_response(lua_State *L) {
  * assert(math.abs(low - 10 ^ (-1 / 20)) < 1e-9 and high >= 1)
  */
 static int filter_range(lua_State *L) {
-  lbr_filter f;
+  lbr_filter room;
   double low, high;
-  lbr_check_filter(L, 1, &f);
+  const lbr_filter *f = the_filter(L, &room);
   double hz1 = check_hz(L, 2), hz2 = check_hz(L, 3);
-  lbr_filter_range(&f, hz1, hz2, check_rate(L, 4, &f), &low, &high);
+  lbr_filter_range(f, hz1, hz2, check_rate(L, 4, f), &low, &high);
   lua_pushnumber(L, low);
   lua_pushnumber(L, high);
   return 2;
@@ -217,11 +234,11 @@ static int filter_range(lua_State *L) {
  * assert(math.abs(core.filter.edge(f, 1e-4) - 3162.2776) < 1e-3)
  */
 static int filter_edge(lua_State *L) {
-  lbr_filter f;
-  lbr_check_filter(L, 1, &f);
+  lbr_filter room;
+  const lbr_filter *f = the_filter(L, &room);
   double level = luaL_checknumber(L, 2);
   luaL_argcheck(L, level > 0.0, 2, "the level must be a gain above 0");
-  lua_pushnumber(L, lbr_filter_edge(&f, level, check_rate(L, 3, &f)));
+  lua_pushnumber(L, lbr_filter_edge(f, level, check_rate(L, 3, f)));
   return 1;
 }
 
@@ -248,15 +265,35 @@ static void push_roots(lua_State *L, const double complex *root, size_t n) {
  * assert(math.abs(poles[1].re + 1.1016013) < 1e-7)
  */
 static int filter_roots(lua_State *L) {
-  lbr_filter f;
-  lbr_check_filter(L, 1, &f);
-  push_roots(L, f.pole, f.poles);
-  push_roots(L, f.zero, f.zeros);
-  lua_pushnumber(L, f.scale);
+  lbr_filter room;
+  const lbr_filter *f = the_filter(L, &room);
+  push_roots(L, f->pole, f->poles);
+  push_roots(L, f->zero, f->zeros);
+  lua_pushnumber(L, f->scale);
   return 3;
 }
 
+/***
+ * A filter designed once, for many questions; takes a table's place in every
+ * function here.
+ * @param spec table: as for gain
+ * @return userdata: the prepared filter, immutable
+ * @usage
+ * local f = core.filter.prepare { shape = "bessel", order = 4, corner = 9 }
+ * assert(math.abs(core.filter.gain(f, 9) ^ 2 - 0.5) < 1e-12)
+ */
+static int filter_prepare(lua_State *L) {
+  static const luaL_Reg none[] = {{NULL, NULL}};
+  lbr_filter room;
+  const lbr_filter *f = the_filter(L, &room);
+  lbr_filter *kept = lua_newuserdatauv(L, sizeof *kept, 0);
+  *kept = *f;
+  lbr_set_class(L, CLASS, none, none);
+  return 1;
+}
+
 static const luaL_Reg functions[] = {
+    {"prepare", filter_prepare},
     {"gain", filter_gain},   {"response", filter_response},
     {"range", filter_range}, {"edge", filter_edge},
     {"roots", filter_roots}, {NULL, NULL},

@@ -6,7 +6,7 @@
 #include "bind/bind.h"
 #include "filter/analog.h"
 
-/* Argument `arg`: nil (no filter) or a table with shape ("none",
+/* Argument `arg`: nil (no filter), a prepared filter, or a table with shape ("none",
  * "butterworth", "chebyshev", "bessel", "elliptic", "points"), order, corner
  * (Hz, or a share of the rate when corner_of_rate), ripple_db, stop_db,
  * points = { {at=, db=}, ... }; other fields are left to the caller.  Fills

@@ -6,6 +6,7 @@ local M = { version = "0.1.0" }
 
 -- Public names and where they live: module, and field (absent: the module).
 local rooms = {
+  filter = { "libration.filter", "new" },
   fraction = { "libration.fraction" },
   window = { "libration.window" },
 }
