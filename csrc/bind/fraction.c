@@ -68,6 +68,14 @@ static const char *complaint(lbr_status status) {
   }
 }
 
+/* nil, message, code; the message is on the stack, so it stays. */
+static int refuse_look(lua_State *L, const char *message, lbr_status status) {
+  lua_pushnil(L);
+  lua_pushstring(L, message);
+  lua_pushstring(L, lbr_status_code(status));
+  return 3;
+}
+
 lbr_fraction lbr_check_fraction(lua_State *L, int arg) {
   lbr_fraction value = {0, 1};
   lbr_status status = to_fraction(L, arg, &value);
@@ -213,13 +221,46 @@ static int try_fraction(lua_State *L) {
     lbr_push_fraction(L, value);
     return 1;
   }
-  lua_pushnil(L);
-  lua_pushfstring(L, "%s %s", push_look(L, 1), complaint(status));
-  lua_replace(L, 1);
-  lua_settop(L, 2); /* message, nil */
-  lua_insert(L, 1); /* nil, message */
-  lua_pushstring(L, lbr_status_code(status));
-  return 3;
+  return refuse_look(L, lua_pushfstring(L, "%s %s", push_look(L, 1),
+                                        complaint(status)), status);
+}
+
+/* run(a, b), or nil, message, code. */
+static int try_operate(lua_State *L, operation run, const char *sign) {
+  lbr_fraction a = lbr_check_fraction(L, 1), b = lbr_check_fraction(L, 2);
+  lbr_fraction result = {0, 1};
+  lbr_status status = run(a, b, &result);
+  if (!status) {
+    lbr_push_fraction(L, result);
+    return 1;
+  }
+  return refuse_look(L, lua_pushfstring(L, "%s %s %s %s", push_look(L, 1), sign,
+                                        push_look(L, 2), complaint(status)),
+                     status);
+}
+
+/*** Product of two fractions that does not raise where it does not fit.
+ * @param a fraction: the first (integer, float, text or fraction)
+ * @param b fraction: the second
+ * @return fraction: a * b; or nil, message, code ("overflow")
+ * @usage
+ * assert(core.base.try_multiply("2/3", 3) == core.base.fraction(2))
+ * assert(select(3, core.base.try_multiply(math.maxinteger, 2)) == "overflow")
+ */
+static int try_multiply(lua_State *L) {
+  return try_operate(L, lbr_fraction_mul, "*");
+}
+
+/*** Quotient of two fractions that does not raise where it does not fit.
+ * @param a fraction: what is divided (integer, float, text or fraction)
+ * @param b fraction: what it is divided by
+ * @return fraction: a / b; or nil, message, code ("overflow", "domain")
+ * @usage
+ * assert(core.base.try_divide(1, 3) == core.base.fraction "1/3")
+ * assert(select(3, core.base.try_divide(1, 0)) == "domain")
+ */
+static int try_divide(lua_State *L) {
+  return try_operate(L, lbr_fraction_div, "/");
 }
 
 /*** Whether a value is a fraction.
@@ -304,7 +345,9 @@ static const luaL_Reg functions[] = {
     {"number_read", number_read},
     {"number_text", number_text},
     {"sha256", sha256},
+    {"try_divide", try_divide},
     {"try_fraction", try_fraction},
+    {"try_multiply", try_multiply},
     {NULL, NULL},
 };
 
