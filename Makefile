@@ -3,7 +3,9 @@
 LUA      ?= lua5.4
 BUILD    ?= build
 PREFIX   ?= /usr/local
-CC       ?= gcc
+ifeq ($(origin CC),default)
+CC       := gcc
+endif
 OPT      ?= -O3 -g
 PACKAGES := lua5.4 fftw3 sndfile
 
