@@ -1,0 +1,131 @@
+#include "lines/phasor.h"
+
+#include <math.h>
+
+#define BLOCK LBR_PHASOR_BLOCK
+#define LANES 8 /* independent partial sums: what vector units want */
+#define TAU 6.283185307179586476925286766559
+#define FAST __attribute__((target_clones("avx512f", "avx2", "default")))
+
+double complex lbr_phasor_at(double f, double t) {
+  double product = f * t;
+  double rest = fma(f, t, -product);
+  double turns = (product - nearbyint(product)) + rest;
+  return CMPLX(cos(TAU * turns), -sin(TAU * turns));
+}
+
+static void fill_table(double f, double *restrict c, double *restrict s) {
+  for (size_t k = 0; k < BLOCK; k++) {
+    double complex z = lbr_phasor_at(f, (double)k);
+    c[k] = creal(z);
+    s[k] = cimag(z);
+  }
+}
+
+/* A full block against the table: sum y c and sum y s. */
+static inline double complex block_sum(const double *restrict y,
+                                       const double *restrict c,
+                                       const double *restrict s) {
+  double a[LANES] = {0}, b[LANES] = {0};
+  for (size_t k = 0; k < BLOCK; k += LANES)
+    for (size_t l = 0; l < LANES; l++) {
+      a[l] += y[k + l] * c[k + l];
+      b[l] += y[k + l] * s[k + l];
+    }
+  double re = ((a[0] + a[4]) + (a[2] + a[6])) + ((a[1] + a[5]) + (a[3] + a[7]));
+  double im = ((b[0] + b[4]) + (b[2] + b[6])) + ((b[1] + b[5]) + (b[3] + b[7]));
+  return CMPLX(re, im);
+}
+
+static double complex tail_sum(const double *y, size_t n, const double *c,
+                               const double *s) {
+  double re = 0, im = 0;
+  for (size_t k = 0; k < n; k++) {
+    re += y[k] * c[k];
+    im += y[k] * s[k];
+  }
+  return CMPLX(re, im);
+}
+
+/* Complex product without the library's care for infinities. */
+static inline double complex times(double complex a, double complex b) {
+  return CMPLX(creal(a) * creal(b) - cimag(a) * cimag(b),
+               creal(a) * cimag(b) + cimag(a) * creal(b));
+}
+
+FAST double complex lbr_phasor_sum(const double *y, size_t n, double f) {
+  double c[BLOCK], s[BLOCK];
+  double middle = 0.5 * ((double)n - 1);
+  double complex sum = 0;
+  size_t at = 0;
+  fill_table(f, c, s);
+  for (; at + BLOCK <= n; at += BLOCK)
+    sum += times(block_sum(y + at, c, s),
+                 lbr_phasor_at(f, (double)at - middle));
+  if (at < n)
+    sum += times(tail_sum(y + at, n - at, c, s),
+                 lbr_phasor_at(f, (double)at - middle));
+  return sum;
+}
+
+static inline double fold_lanes(const double *a) {
+  return ((a[0] + a[4]) + (a[2] + a[6])) + ((a[1] + a[5]) + (a[3] + a[7]));
+}
+
+/* re[p] = sum a u^p, im[p] = sum b u^p over a block; a and b are used up. */
+static inline void block_moments(double *restrict a, double *restrict b,
+                                 const double *restrict u, double *restrict re,
+                                 double *restrict im) {
+  for (size_t p = 0; p < LBR_PHASOR_MOMENTS; p++) {
+    double ra[LANES] = {0}, ia[LANES] = {0};
+    for (size_t k = 0; k < BLOCK; k += LANES)
+      for (size_t l = 0; l < LANES; l++) {
+        ra[l] += a[k + l];
+        ia[l] += b[k + l];
+        a[k + l] *= u[k + l];
+        b[k + l] *= u[k + l];
+      }
+    re[p] = fold_lanes(ra);
+    im[p] = fold_lanes(ia);
+  }
+}
+
+FAST void lbr_phasor_moments(const double *y, size_t n, double f,
+                             double complex m[LBR_PHASOR_MOMENTS]) {
+  double c[BLOCK], s[BLOCK], a[BLOCK], b[BLOCK], u[BLOCK];
+  double re[LBR_PHASOR_MOMENTS], im[LBR_PHASOR_MOMENTS];
+  double middle = 0.5 * ((double)n - 1), scale = 1.0 / (double)n;
+  fill_table(f, c, s);
+  for (size_t p = 0; p < LBR_PHASOR_MOMENTS; p++) m[p] = 0;
+  for (size_t at = 0; at < n; at += BLOCK) {
+    size_t count = n - at < BLOCK ? n - at : BLOCK;
+    double start = (double)at - middle;
+    for (size_t k = 0; k < BLOCK; k++) {
+      double value = k < count ? y[at + k] : 0;
+      a[k] = value * c[k];
+      b[k] = value * s[k];
+      u[k] = (start + (double)k) * scale;
+    }
+    block_moments(a, b, u, re, im);
+    double complex anchor = lbr_phasor_at(f, start);
+    for (size_t p = 0; p < LBR_PHASOR_MOMENTS; p++)
+      m[p] += times(CMPLX(re[p], im[p]), anchor);
+  }
+}
+
+void lbr_phasor_expand(const double complex m[LBR_PHASOR_MOMENTS], double v,
+                       double complex *x, double complex *slope,
+                       double complex *curve) {
+  const double complex step = CMPLX(0, -TAU);
+  double complex power = 1; /* (-2 pi i v)^p / p! */
+  double complex x0 = 0, x1 = 0, x2 = 0;
+  for (size_t p = 0; p < LBR_PHASOR_MOMENTS; p++) {
+    x0 += times(m[p], power);
+    if (p + 1 < LBR_PHASOR_MOMENTS) x1 += times(m[p + 1], power);
+    if (p + 2 < LBR_PHASOR_MOMENTS) x2 += times(m[p + 2], power);
+    power = times(power, step * (v / (double)(p + 1)));
+  }
+  *x = x0;
+  *slope = times(x1, step);
+  *curve = times(x2, times(step, step));
+}

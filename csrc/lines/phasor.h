@@ -1,0 +1,36 @@
+/* Windowed sums at one frequency, exact to rounding at any record length.
+ *
+ * Time is counted in samples from the record's centre, t = n - (N - 1) / 2,
+ * frequency in cycles per sample (any real value: it need not lie below 1/2).
+ * Phases come from a table inside blocks of LBR_PHASOR_BLOCK samples and an
+ * anchor for each block, both from exactly reduced phases; nothing recurs from
+ * sample to sample, so errors do not grow with N.
+ */
+#ifndef LBR_LINES_PHASOR_H
+#define LBR_LINES_PHASOR_H
+
+#include <complex.h>
+#include <stddef.h>
+
+#define LBR_PHASOR_BLOCK 64
+#define LBR_PHASOR_MOMENTS 10 /* moments of one expansion */
+
+/* exp(-2 pi i f t), the phase reduced exactly before it is rounded. */
+double complex lbr_phasor_at(double f, double t);
+
+/* sum_n y[n] exp(-2 pi i f t_n) */
+double complex lbr_phasor_sum(const double *y, size_t n, double f);
+
+/* m_p = sum_n y[n] u_n^p exp(-2 pi i f t_n), u = t / N, |u| <= 1/2, for
+ * p = 0 .. LBR_PHASOR_MOMENTS - 1: the transform near f is
+ *   X(f + v / N) = sum_p m_p (-2 pi i v)^p / p!
+ * with an error below (pi |v|)^10 / 10! of sum |y|. */
+void lbr_phasor_moments(const double *y, size_t n, double f,
+                        double complex m[LBR_PHASOR_MOMENTS]);
+
+/* X(f + v / N) and its derivatives with respect to v from the moments. */
+void lbr_phasor_expand(const double complex m[LBR_PHASOR_MOMENTS], double v,
+                       double complex *x, double complex *slope,
+                       double complex *curve);
+
+#endif

@@ -1,0 +1,166 @@
+#include "spectrum/transform.h"
+
+#include <fftw3.h>
+#include <pthread.h>
+#include <stdbool.h>
+#include <stdlib.h>
+#include <string.h>
+
+#include "base/checked.h"
+
+#define IDLE_PLANS 32          /* plans kept although nobody uses them */
+#define HEADROOM (1024 * 1024) /* bytes that must be free before planning */
+
+struct lbr_transform {
+  size_t points;
+  fftw_plan forward, back;
+  size_t users;       /* how many hold the plan */
+  bool forgotten;     /* not in the cache: the last user frees it */
+  lbr_transform *next;
+};
+
+/* The one piece of varying state of the core; newest plan first. */
+static pthread_mutex_t lock = PTHREAD_MUTEX_INITIALIZER;
+static lbr_transform *cache;
+
+double *lbr_transform_buffer(size_t count) {
+  size_t bytes;
+  if (lbr_size(count ? count : 1, sizeof(double), &bytes) != LBR_OK)
+    return NULL;
+  double *buffer = fftw_malloc(bytes);
+  if (buffer) memset(buffer, 0, bytes);
+  return buffer;
+}
+
+void lbr_transform_drop(void *buffer) { fftw_free(buffer); }
+
+static void free_plan(lbr_transform *t) {
+  if (t->forward) fftw_destroy_plan(t->forward);
+  if (t->back) fftw_destroy_plan(t->back);
+  free(t);
+}
+
+/* Planning on scratch of our own; the lock is held. */
+static lbr_status make_plan(size_t n, lbr_transform **out) {
+  lbr_transform *t = lbr_alloc(1, sizeof *t);
+  double *x = lbr_transform_buffer(n);
+  double *bins = lbr_transform_buffer(2 * (n / 2 + 1));
+  void *headroom = malloc(HEADROOM);
+  free(headroom);
+  lbr_status status = LBR_NO_MEMORY;
+  if (!t || !x || !bins || !headroom) goto done;
+  t->points = n;
+  t->forward = fftw_plan_dft_r2c_1d((int)n, x, (fftw_complex *)bins,
+                                    FFTW_ESTIMATE | FFTW_PRESERVE_INPUT);
+  t->back = fftw_plan_dft_c2r_1d((int)n, (fftw_complex *)bins, x,
+                                 FFTW_ESTIMATE | FFTW_DESTROY_INPUT);
+  if (t->forward && t->back) status = LBR_OK;
+done:
+  lbr_transform_drop(x);
+  lbr_transform_drop(bins);
+  if (status == LBR_OK)
+    *out = t;
+  else if (t)
+    free_plan(t);
+  return status;
+}
+
+static lbr_transform *find_plan(size_t n) {
+  for (lbr_transform *t = cache; t; t = t->next)
+    if (t->points == n) return t;
+  return NULL;
+}
+
+/* Keeps the newest idle plans only; the lock is held. */
+static void trim(size_t keep) {
+  size_t idle = 0;
+  for (lbr_transform **at = &cache; *at;) {
+    lbr_transform *t = *at;
+    if (t->users == 0 && ++idle > keep) {
+      *at = t->next;
+      free_plan(t);
+    } else {
+      at = &t->next;
+    }
+  }
+}
+
+lbr_status lbr_transform_get(size_t n, lbr_transform **out) {
+  if (n < 1 || n > LBR_TRANSFORM_MOST) return LBR_DOMAIN;
+  lbr_status status = LBR_OK;
+  pthread_mutex_lock(&lock);
+  lbr_transform *t = find_plan(n);
+  if (!t) {
+    status = make_plan(n, &t);
+    if (status == LBR_OK) {
+      t->next = cache;
+      cache = t;
+    }
+  }
+  if (status == LBR_OK) {
+    t->users++;
+    *out = t;
+  }
+  pthread_mutex_unlock(&lock);
+  return status;
+}
+
+void lbr_transform_put(lbr_transform *t) {
+  if (!t) return;
+  pthread_mutex_lock(&lock);
+  if (--t->users == 0) {
+    if (t->forgotten)
+      free_plan(t);
+    else
+      trim(IDLE_PLANS);
+  }
+  pthread_mutex_unlock(&lock);
+}
+
+void lbr_transform_forget(void) {
+  pthread_mutex_lock(&lock);
+  trim(0);
+  bool in_use = cache != NULL;
+  for (lbr_transform *t = cache; t; t = t->next) t->forgotten = true;
+  cache = NULL;
+  if (!in_use) fftw_cleanup();
+  pthread_mutex_unlock(&lock);
+}
+
+size_t lbr_transform_points(const lbr_transform *t) { return t->points; }
+
+void lbr_transform_forward(const lbr_transform *t, double *x,
+                           double complex *bins) {
+  fftw_execute_dft_r2c(t->forward, x, (fftw_complex *)bins);
+}
+
+void lbr_transform_back(const lbr_transform *t, double complex *bins,
+                        double *x) {
+  fftw_execute_dft_c2r(t->back, (fftw_complex *)bins, x);
+  double scale = 1.0 / (double)t->points;
+  for (size_t i = 0; i < t->points; i++) x[i] *= scale;
+}
+
+void lbr_transform_windowed(const lbr_transform *t, const double *x,
+                            const double *w, size_t n, double *scratch,
+                            double complex *bins) {
+  if (w)
+    for (size_t i = 0; i < n; i++) scratch[i] = w[i] * x[i];
+  else
+    memcpy(scratch, x, n * sizeof *x);
+  memset(scratch + n, 0, (t->points - n) * sizeof *scratch);
+  lbr_transform_forward(t, scratch, bins);
+}
+
+static bool is_fast(size_t n) {
+  static const size_t primes[] = {2, 3, 5};
+  for (size_t i = 0; i < 3; i++)
+    while (n % primes[i] == 0) n /= primes[i];
+  return n == 1;
+}
+
+size_t lbr_transform_fast_length(size_t n) {
+  if (n < 1) n = 1;
+  while (!is_fast(n)) n++;
+  return n;
+}
