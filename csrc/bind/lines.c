@@ -12,7 +12,7 @@
 typedef struct handle {
   lbr_tracker *tracker;
   size_t n, count; /* samples a record; lines */
-  lbr_tone *tones; /* count, results of a run */
+  lbr_measured *tones; /* count, results of a run */
   lbr_search *searches;
 } handle;
 

@@ -243,7 +243,7 @@ static double complex track(const lbr_tracker *t, const lbr_search *s,
   return best;
 }
 
-void lbr_tracker_run(lbr_tracker *t, const double *x, lbr_tone *tones) {
+void lbr_tracker_run(lbr_tracker *t, const double *x, lbr_measured *tones) {
   for (size_t i = 0; i < t->n; i++) t->y[i] = t->w[i] * x[i];
   if (t->transform)
     lbr_transform_windowed(t->transform, t->y, NULL, t->n, t->padded, t->bins);
@@ -253,6 +253,6 @@ void lbr_tracker_run(lbr_tracker *t, const double *x, lbr_tone *tones) {
     double complex sum = s->hi > s->lo ? track(t, s, &f)
                                        : lbr_phasor_sum(t->y, t->n, f);
     sum *= t->scale;
-    tones[i] = (lbr_tone){cabs(sum), f, carg(sum)};
+    tones[i] = (lbr_measured){cabs(sum), f, carg(sum)};
   }
 }

@@ -21,11 +21,11 @@ typedef struct lbr_search {
   double lo, hi; /* cycles per sample, lo <= hi; equal: a fixed frequency */
 } lbr_search;
 
-typedef struct lbr_tone {
+typedef struct lbr_measured {
   double amplitude; /* peak, in the record's unit */
   double frequency; /* cycles per sample, within its search interval */
   double phase;     /* rad, of the cosine, at the centre of the record */
-} lbr_tone;
+} lbr_measured;
 
 typedef struct lbr_tracker lbr_tracker;
 
@@ -40,6 +40,6 @@ LBR_CHECKED lbr_status lbr_tracker_new(const double *w, size_t n,
 void lbr_tracker_free(lbr_tracker *tracker); /* NULL is fine */
 
 /* Reads every line of record x (n samples) into tones (count). */
-void lbr_tracker_run(lbr_tracker *tracker, const double *x, lbr_tone *tones);
+void lbr_tracker_run(lbr_tracker *tracker, const double *x, lbr_measured *tones);
 
 #endif

@@ -91,9 +91,15 @@ void lbr_particulars_settle(const lbr_proof *proof, lbr_particulars *p) {
   }
 }
 
+/* The mean of the record, through filter and gain. */
+static double offset_shown(const lbr_proof *proof, const lbr_particulars *p) {
+  return p->offset * (1 + p->accuracy) *
+         lbr_filter_gain(&proof->front->filter, 0, proof->rate);
+}
+
 double lbr_particulars_reach(const lbr_proof *proof,
                              const lbr_particulars *p) {
-  double reach = fabs(p->offset);
+  double reach = fabs(offset_shown(proof, p));
   for (size_t i = 0; i < proof->scene->n_sources; i++)
     reach += p->actual[i].amplitude * p->actual[i].gain;
   return reach;
@@ -102,7 +108,8 @@ double lbr_particulars_reach(const lbr_proof *proof,
 void lbr_particulars_record(const lbr_proof *proof, const lbr_particulars *p,
                             double *x) {
   double true_rate = proof->rate * (1 + p->timebase);
-  for (size_t n = 0; n < proof->n; n++) x[n] = p->offset;
+  double mean = offset_shown(proof, p);
+  for (size_t n = 0; n < proof->n; n++) x[n] = mean;
   for (size_t i = 0; i < proof->scene->n_sources; i++) {
     const lbr_actual *a = &p->actual[i];
     double cycles = a->hz * (double)proof->n / true_rate;

@@ -20,7 +20,7 @@ typedef struct lbr_bench {
   lbr_tracker *tracker;
   lbr_front *front;
   lbr_particulars *particulars;
-  lbr_tone *tones;  /* n_lines */
+  lbr_measured *tones;  /* n_lines */
   double *clean;    /* n: the record without noise */
   double *noisy;    /* n: the record as the digitizer gives it */
 } lbr_bench;
