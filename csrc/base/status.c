@@ -5,7 +5,8 @@ static const struct {
 } rows[LBR_STATUS_COUNT] = {
     [LBR_OK] = {"ok", "no error"},
     [LBR_NO_MEMORY] = {"no_memory", "out of memory"},
-    [LBR_OVERFLOW] = {"overflow", "a value does not fit 64-bit exact arithmetic"},
+    [LBR_OVERFLOW] = {"overflow",
+                      "a value does not fit 64-bit exact arithmetic"},
     [LBR_DOMAIN] = {"domain", "an argument is outside its domain"},
     [LBR_UNKNOWN] = {"unknown", "no such name"},
     [LBR_NO_CONVERGE] = {"no_converge", "an iteration did not converge"},

@@ -52,13 +52,14 @@ static void *work(void *argument) {
 }
 
 /* Signals belong to the host's own thread, not to ours. */
-static unsigned start_threads(seat *seats, pthread_t *threads, unsigned count) {
+static unsigned start_threads(seat *seats, pthread_t *threads,
+                              unsigned count) {
   sigset_t all, before;
   unsigned started = 0;
   sigfillset(&all);
   pthread_sigmask(SIG_SETMASK, &all, &before);
-  while (started < count &&
-         pthread_create(&threads[started], NULL, work, &seats[started + 1]) == 0)
+  while (started < count && pthread_create(&threads[started], NULL, work,
+                                           &seats[started + 1]) == 0)
     started++;
   pthread_sigmask(SIG_SETMASK, &before, NULL);
   return started;
