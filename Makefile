@@ -87,7 +87,7 @@ check-valgrind: all ## the suite, but for slow specs, under memcheck
 	LUA="$(MEMCHECK)" BUSTED_FLAGS="--exclude-tags=checks,slow" $(SUITE) $(SPECS)
 
 ALLOC_WRAPS = malloc calloc realloc aligned_alloc posix_memalign free strdup \
-  fftw_malloc fftw_free fftwf_malloc fftwf_free pthread_create
+  fftw_malloc fftw_free pthread_create
 ALLOC_LDFLAGS = $(foreach f,$(ALLOC_WRAPS),-Wl,--wrap=$(f))
 
 check-alloc: ## every allocation of every scenario fails once, cleanly
