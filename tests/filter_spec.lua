@@ -213,7 +213,8 @@ describe("laws", function()
 
   it("is a table of points in dB over log frequency", function()
     local f = lb.filter { shape = "points", points = {
-      { at = 100, db = 0 }, { at = 1000, db = -40 }, { at = 2000, db = -30 }, { at = 1e4, db = -80 } } }
+      { at = 100, db = 0 }, { at = 1000, db = -40 },
+      { at = 2000, db = -30 }, { at = 1e4, db = -80 } } }
     assert.equal(1, f:gain(3))
     assert.near(-20, f:gain_db(math.sqrt(100 * 1000)), 1e-12)
     assert.near(-80, f:gain_db(1e6), 1e-12)
@@ -227,7 +228,8 @@ describe("laws", function()
   end)
 
   it("prints what it is", function()
-    assert.equal("elliptic low-pass, order 6, corner 0.4 of the rate, ripple 0.1 dB, stop band 80 dB",
+    assert.equal("elliptic low-pass, order 6, corner 0.4 of the rate, "
+      .. "ripple 0.1 dB, stop band 80 dB",
       tostring(lb.filter { shape = "elliptic", order = 6, corner = 0.4, corner_of_rate = true,
                            ripple_db = 0.1, stop_db = 80 }))
     assert.equal("no filter", tostring(lb.filter { shape = "none" }))
@@ -237,7 +239,7 @@ end)
 describe("refusals", function()
   local bad = {
     [{ shape = "brick" }] = "shape is brick; it must be none, butterworth",
-    [{ shape = "bessel", order = 17, corner = 1 }] = "order is 17; it must be an integer from 1 to 16",
+    [{ shape = "bessel", order = 17, corner = 1 }] = "order is 17; it must be an integer",
     [{ shape = "bessel", order = 3.5, corner = 1 }] = "order is 3.5",
     [{ shape = "bessel", order = 3 }] = "corner is nil; it must be a positive number",
     [{ shape = "bessel", order = 3, corner = -1 }] = "corner is %-1",

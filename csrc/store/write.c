@@ -102,8 +102,8 @@ static lbr_status open_sound(draft *d, const lbr_write_spec *spec,
                              size_t frames, lbr_why *why) {
   double bytes = (double)frames * (double)spec->channels * spec->bits / 8.0;
   SF_INFO info = {.samplerate = spec->rate, .channels = (int)spec->channels};
-  info.format = (bytes > WAV_BYTES ? SF_FORMAT_RF64 : SF_FORMAT_WAV) |
-                coding(spec);
+  int plain = spec->is_integer ? SF_FORMAT_WAV : SF_FORMAT_WAVEX;
+  info.format = (bytes > WAV_BYTES ? SF_FORMAT_RF64 : plain) | coding(spec);
   d->block = lbr_alloc(BLOCK_SAMPLES, sizeof(double));
   if (!d->block) return lbr_because(why, LBR_NO_MEMORY, "does not fit memory");
   d->file = sf_open_fd(d->fd, SFM_WRITE, &info, SF_FALSE);

@@ -8,6 +8,7 @@ local M = { version = "0.1.0" }
 local rooms = {
   filter = { "libration.filter", "new" },
   fraction = { "libration.fraction" },
+  record = { "libration.record" },
   units = { "libration.units" },
   window = { "libration.window" },
 }
