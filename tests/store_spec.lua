@@ -245,8 +245,17 @@ describe("refusals", function()
     sound:close()
     assert.is_false(pcall(sound.facts, sound))
     assert.truthy(tostring(sound):find "closed")
-    for _ = 1, 3000 do assert(store.open(front)) end
+    local function open_files()
+      local count = 0
+      for _ in lfs.dir "/proc/self/fd" do count = count + 1 end
+      return count
+    end
     collectgarbage()
+    local before = open_files()
+    for _ = 1, 100 do assert(store.open(front)) end
+    for _ = 1, 100 do store.open("/etc/passwd") end
+    collectgarbage()
+    assert.equal(before, open_files())
   end)
 end)
 
