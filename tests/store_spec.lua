@@ -7,11 +7,6 @@ local front = sounds.of_package("alsa-utils", "/Front_Center.wav")
 
 after_each(sounds.clean)
 
-local function facts_of(path)
-  local sound <close> = assert(store.open(path))
-  return sound:facts()
-end
-
 local function read_all(path, channels)
   local sound <close> = assert(store.open(path))
   return assert(sound:read(sound:facts().frames, channels)), sound:facts()

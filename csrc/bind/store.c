@@ -51,6 +51,13 @@ static const char *path_of(lua_State *L) {
  *   samples per second), channels, bits (0 for Vorbis), integer (codes are
  *   integers), lossy, full_scale (2^(bits-1), or 1 for floats), frames
  *   (samples per channel)
+ * @usage
+ * local path, x = os.tmpname(), core.samples.from { 1, -2, 3 }
+ * local spec = { rate = 8000, bits = 16, integer = true, scale = 1 }
+ * assert(core.store.write(path, spec, { x }))
+ * local sound <close> = core.store.open(path)
+ * assert(sound:facts().frames == 3 and sound:facts().bits == 16)
+ * os.remove(path)
  */
 static int sound_facts(lua_State *L) {
   const lbr_sound_facts *f = &check_open(L)->facts;
@@ -105,6 +112,13 @@ static size_t check_channels(lua_State *L, int arg, const handle *h,
  * @param channels table: channel numbers from 1; nil takes all
  * @return table: one block of samples per channel; or nil, message, code when
  *   the file is damaged
+ * @usage
+ * local path, x = os.tmpname(), core.samples.from { 1, -2, 3 }
+ * local spec = { rate = 8000, bits = 16, integer = true, scale = 1 }
+ * assert(core.store.write(path, spec, { x }))
+ * local sound <close> = core.store.open(path)
+ * assert(core.store.digest(sound:read(3, { 1 })[1]) == core.store.digest(x))
+ * os.remove(path)
  */
 static int sound_read(lua_State *L) {
   handle *h = check_open(L);
@@ -129,6 +143,13 @@ static int sound_read(lua_State *L) {
  * Winds the file to a frame.
  * @param frame integer: frames before the next one read, 0 .. frames
  * @return boolean: true; or nil, message, code
+ * @usage
+ * local path, x = os.tmpname(), core.samples.from { 1, -2, 3 }
+ * local spec = { rate = 8000, bits = 16, integer = true, scale = 1 }
+ * assert(core.store.write(path, spec, { x }))
+ * local sound <close> = core.store.open(path)
+ * assert(sound:seek(2) and #sound:read(1)[1] == 1)
+ * os.remove(path)
  */
 static int sound_seek(lua_State *L) {
   handle *h = check_open(L);
@@ -142,6 +163,14 @@ static int sound_seek(lua_State *L) {
 
 /***
  * Closes the file; doing so again is allowed.
+ * @usage
+ * local path, x = os.tmpname(), core.samples.from { 1, -2, 3 }
+ * local spec = { rate = 8000, bits = 16, integer = true, scale = 1 }
+ * assert(core.store.write(path, spec, { x }))
+ * local sound = core.store.open(path)
+ * sound:close()
+ * assert(not pcall(sound.facts, sound))
+ * os.remove(path)
  */
 static int sound_close(lua_State *L) {
   handle *h = luaL_checkudata(L, 1, CLASS);
@@ -249,6 +278,13 @@ static size_t check_blocks(lua_State *L, int arg, const double **channel,
  *   sample * scale, integers rounded to the nearest)
  * @param channels table: one block of samples per channel, of equal length
  * @return boolean: true; or nil, message, code ("io", "domain")
+ * @usage
+ * local path, x = os.tmpname(), core.samples.from { 1, -2, 3 }
+ * local spec = { rate = 8000, bits = 16, integer = true, scale = 1 }
+ * assert(core.store.write(path, spec, { x }))
+ * local done, message, code = core.store.write("/none/x.wav", spec, { x })
+ * assert(not done and code == "io")
+ * os.remove(path)
  */
 static int store_write(lua_State *L) {
   const char *path = check_path(L, 1);
@@ -277,6 +313,10 @@ static void set_count(lua_State *L, const char *field, size_t value) {
  * @return table: low, high (samples at or beyond each rail), low_run, high_run
  *   (longest run), first (index from 1 of the first, or nil), least, most
  *   (range of the finite samples), bad (samples that are not finite)
+ * @usage
+ * local x = core.samples.from { 5, 5, 1, -5 }
+ * local rails = core.store.rails(x, -5, 5)
+ * assert(rails.high == 2 and rails.high_run == 2 and rails.low == 1)
  */
 static int store_rails(lua_State *L) {
   size_t n;
@@ -301,6 +341,9 @@ static int store_rails(lua_State *L) {
  * SHA-256 of a block's samples, as doubles in this machine's byte order.
  * @param samples samples: a block
  * @return string: 64 hexadecimal digits
+ * @usage
+ * local x = core.samples.from { 1, 2 }
+ * assert(#core.store.digest(x) == 64)
  */
 static int store_digest(lua_State *L) {
   size_t n;
@@ -316,6 +359,9 @@ static int store_digest(lua_State *L) {
  * @param samples samples: a block of codes
  * @param factor number: unit per code
  * @return samples: a block of the same length
+ * @usage
+ * local x = core.samples.from { 1, -2 }
+ * assert(core.store.rails(core.store.in_unit(x, 10), -20, 20).low == 1)
  */
 static int store_in_unit(lua_State *L) {
   size_t n;

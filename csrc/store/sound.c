@@ -30,8 +30,9 @@ static const struct {
   int format;
   const char *name;
 } containers[] = {
-    {SF_FORMAT_WAV, "wav"},   {SF_FORMAT_WAVEX, "wav"}, {SF_FORMAT_RF64, "rf64"},
-    {SF_FORMAT_W64, "w64"},   {SF_FORMAT_FLAC, "flac"}, {SF_FORMAT_OGG, "ogg"},
+    {SF_FORMAT_WAV, "wav"},   {SF_FORMAT_WAVEX, "wav"},
+    {SF_FORMAT_RF64, "rf64"}, {SF_FORMAT_W64, "w64"},
+    {SF_FORMAT_FLAC, "flac"}, {SF_FORMAT_OGG, "ogg"},
 };
 
 static const struct {
@@ -206,8 +207,8 @@ lbr_status lbr_sound_read(lbr_sound *s, size_t count, size_t wanted,
     size_t frames = left < s->block_frames ? left : s->block_frames;
     if (!fill(s, frames))
       return lbr_because(why, LBR_FORMAT,
-                         "is damaged between frames %lld and %lld",
-                         (long long)s->at, (long long)s->at + (long long)frames);
+                         "is damaged in the %zu frames from %lld on", frames,
+                         (long long)s->at);
     spread(s, frames, done, wanted, channel, out);
     s->at += (int64_t)frames;
     done += frames;

@@ -55,8 +55,9 @@ static lbr_status check_spec(const lbr_write_spec *spec, lbr_why *why) {
 /* The limits a scaled sample must keep. */
 static void limits(const lbr_write_spec *spec, double *low, double *high) {
   double top = ldexp(1.0, spec->bits - 1);
-  *low = spec->is_integer ? -top : spec->bits == 32 ? -(double)FLT_MAX : -HUGE_VAL;
-  *high = spec->is_integer ? top - 1.0 : -*low;
+  double largest = spec->bits == 32 ? (double)FLT_MAX : DBL_MAX;
+  *low = spec->is_integer ? -top : -largest;
+  *high = spec->is_integer ? top - 1.0 : largest;
 }
 
 static lbr_status check_samples(const lbr_write_spec *spec, size_t frames,
@@ -108,7 +109,8 @@ static lbr_status open_sound(draft *d, const lbr_write_spec *spec,
   if (!d->block) return lbr_because(why, LBR_NO_MEMORY, "does not fit memory");
   d->file = sf_open_fd(d->fd, SFM_WRITE, &info, SF_FALSE);
   if (!d->file)
-    return lbr_because(why, LBR_IO, "cannot be written (%s)", sf_strerror(NULL));
+    return lbr_because(why, LBR_IO, "cannot be written (%s)",
+                       sf_strerror(NULL));
   /* its chunk carries the time of day: equal records give equal files */
   sf_command(d->file, SFC_SET_ADD_PEAK_CHUNK, NULL, SF_FALSE);
   return LBR_OK;
