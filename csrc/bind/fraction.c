@@ -239,6 +239,18 @@ static int try_operate(lua_State *L, operation run, const char *sign) {
                      status);
 }
 
+/*** Sum of two fractions that does not raise where it does not fit.
+ * @param a fraction: the first (integer, float, text or fraction)
+ * @param b fraction: the second
+ * @return fraction: a + b; or nil, message, code ("overflow")
+ * @usage
+ * assert(core.base.try_add("1/3", "1/6") == core.base.fraction "1/2")
+ * assert(select(3, core.base.try_add(math.maxinteger, 1)) == "overflow")
+ */
+static int try_add(lua_State *L) {
+  return try_operate(L, lbr_fraction_add, "+");
+}
+
 /*** Product of two fractions that does not raise where it does not fit.
  * @param a fraction: the first (integer, float, text or fraction)
  * @param b fraction: the second
@@ -345,6 +357,7 @@ static const luaL_Reg functions[] = {
     {"number_read", number_read},
     {"number_text", number_text},
     {"sha256", sha256},
+    {"try_add", try_add},
     {"try_divide", try_divide},
     {"try_fraction", try_fraction},
     {"try_multiply", try_multiply},

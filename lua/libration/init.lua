@@ -6,6 +6,9 @@ local M = { version = "0.1.0" }
 
 -- Public names and where they live: module, and field (absent: the module).
 local rooms = {
+  load = { "libration.load", "load" },
+  digitizer = { "libration.digitizer", "digitizer" },
+  demand = { "libration.demand", "demand" },
   filter = { "libration.filter", "new" },
   fraction = { "libration.fraction" },
   record = { "libration.record" },

@@ -396,6 +396,16 @@ function M.orders(value)
   return list
 end
 
+--- A number for people: so many significant digits, a point in every locale.
+-- @param x number: any
+-- @param digits integer: significant digits, default 6
+-- @return string: such as "0.000123457"
+-- @usage
+-- assert(lb.units.text(math.pi, 4) == "3.142")
+function M.text(x, digits)
+  return (("%." .. (digits or 6) .. "g"):format(x):gsub(",", "."))
+end
+
 --- The base unit of the unit of a quantity or unit text.
 -- @param text string: a unit, "mm/s^2"
 -- @return string: "m/s^2"; or nil and a reason

@@ -131,7 +131,7 @@ local function factor_at(text, at, result, sign, depth)
   if not factor then
     return nil, unknown(name)
   end
-  multiply(result, factor, powers, sign * (power and math.tointeger(power:sub(2)) or 1))
+  multiply(result, factor, powers, sign * (power and tonumber(power:sub(2)) or 1))
   return at + #name + (power and #power or 0)
 end
 
@@ -210,7 +210,7 @@ function M.base_unit(signature)
   end
   local above, below, root = {}, {}, ""
   for name, halves in signature:gmatch "(%a+):(%-?%d+)" do
-    halves = math.tointeger(halves)
+    halves = tonumber(halves)
     if name == "s" and halves % 2 ~= 0 then
       root, halves = "/rtHz", halves - 1
     end
