@@ -15,6 +15,8 @@
 
 typedef struct lbr_window lbr_window;
 
+struct lbr_series; /* window/series.h */
+
 typedef struct lbr_window_shape {
   const char *name;    /* "hann" */
   const char *title;   /* "Hann" */
@@ -25,6 +27,9 @@ typedef struct lbr_window_shape {
   double parameter_least, parameter_most, parameter_default;
   /* fills n periodic samples; NULL for cosine sums (common code) */
   lbr_status (*fill)(const lbr_window *window, double *out, size_t n);
+  /* writes the exact cosine series of the shape; NULL where there is none (or
+   * where it is terms_of itself) */
+  void (*expand)(const lbr_window *window, struct lbr_series *out);
 } lbr_window_shape;
 
 struct lbr_window {
