@@ -79,8 +79,11 @@ LBR_CHECKED lbr_status lbr_synth_record(const lbr_record_model *model,
                                         lbr_record_facts *facts);
 
 /* The shape that the filter and folding give white input noise at `rate`:
- * tap[0 .. half], sqrt of sum over k of |F(f + k rate)|^2.  Without a filter
- * (or one that never falls) that sum has no end: LBR_DOMAIN. */
+ * tap[0 .. half] of a symmetric filter whose response is the square root of
+ * the sum of |F|^2 over all frequencies that fold onto f.  Folds are summed
+ * until the gain stays below 1e-4; where it never does (no filter, a table
+ * that does not fall) they are left out: input noise then ends at rate / 2.
+ * LBR_DOMAIN: half > LBR_MOST_HALF_TAPS or a rate that is no rate. */
 LBR_CHECKED lbr_status lbr_input_shape(const lbr_filter *filter, double rate,
                                        size_t half, double *tap);
 

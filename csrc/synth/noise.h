@@ -45,10 +45,4 @@ void lbr_noise_add_shaped(const lbr_key *key, double sigma,
                           const lbr_shape *shape, uint64_t first, double *out,
                           size_t n);
 
-/* Either of them (shape NULL: white) on several threads; the same bits. */
-LBR_CHECKED lbr_status lbr_noise_add_threads(const lbr_key *key, double sigma,
-                                             const lbr_shape *shape,
-                                             uint64_t first, double *out,
-                                             size_t n, unsigned workers);
-
 #endif
