@@ -38,7 +38,14 @@ $(BUILD)/obj/%.o: csrc/%.c
 
 -include $(OBJECTS:.o=.d)
 
-test: all ## run the whole suite, spec files side by side
+# What base/ offers to C alone, for the tests.
+PROBE := $(BUILD)/probe.so
+probe: $(PROBE)
+
+$(PROBE): tests/support/probe.c $(filter $(BUILD)/obj/base/%,$(OBJECTS))
+	$(CC) $(CFLAGS_ALL) -shared $(LDFLAGS) -o $@ $^ -lm
+
+test: all probe ## run the whole suite, spec files side by side
 	$(SUITE)
 
 # The C library gives CMPLX only to compilers that it knows.
@@ -75,7 +82,7 @@ SANITIZED = env LD_PRELOAD=$(ASAN_LIBRARY) \
 check-san: ## the suite under the address and undefined-behaviour sanitizers
 	$(MAKE) -s BUILD=build/san OPT="-O1 -g -fno-omit-frame-pointer" \
 	  CFLAGS="-fsanitize=address,undefined -fno-sanitize-recover=all -Wno-null-dereference" \
-	  LDFLAGS="-fsanitize=address,undefined" all
+	  LDFLAGS="-fsanitize=address,undefined" all probe
 	BUILD=build/san LUA="$(SANITIZED)" BUSTED_FLAGS="--exclude-tags=checks" \
 	  scripts/env $(LUA) tests/support/suite.lua $(SPECS)
 
@@ -83,7 +90,7 @@ MEMCHECK = valgrind -q --error-exitcode=99 --leak-check=full \
   --errors-for-leak-kinds=definite --num-callers=30 \
   --suppressions=$(CURDIR)/tests/support/valgrind.supp $(LUA)
 
-check-valgrind: all ## the suite, but for slow specs, under memcheck
+check-valgrind: all probe ## the suite, but for slow specs, under memcheck
 	LUA="$(MEMCHECK)" BUSTED_FLAGS="--exclude-tags=checks,slow" $(SUITE) $(SPECS)
 
 ALLOC_WRAPS = malloc calloc realloc aligned_alloc posix_memalign free strdup \
@@ -103,7 +110,7 @@ $(BUILD)/host: tests/support/alloc_host.c
 	@mkdir -p $(@D)
 	$(CC) $(CFLAGS_ALL) -o $@ $< $(shell pkg-config --libs lua5.4) -lm -ldl
 
-check-long: all ## what takes longer than the suite may: tests/long and the sweep
+check-long: all probe ## what takes longer than the suite may: tests/long and the sweep
 	LBR_LONG=1 $(SUITE) tests/long
 	$(MAKE) check-alloc
 
@@ -128,5 +135,5 @@ clean: ## remove the build directory
 help: ## this list
 	@awk -F ':.*## ' '/^[a-z-]+:.*## /{printf "  make %-15s %s\n", $$1, $$2}' Makefile
 
-.PHONY: all test lint lint-c docs bench check-san check-valgrind check-alloc check-long \
+.PHONY: all probe test lint lint-c docs bench check-san check-valgrind check-alloc check-long \
         install uninstall clean help

@@ -28,7 +28,7 @@ local function python(program, input)
     assert(file:write(text))
     assert(file:close())
   end
-  local pipe = assert(io.popen("python3 " .. names[1] .. " < " .. names[2]))
+  local pipe = assert(io.popen("/usr/bin/python3 " .. names[1] .. " < " .. names[2]))
   local lines = {}
   for line in pipe:lines() do
     lines[#lines + 1] = line
