@@ -182,7 +182,8 @@ static int sound_close(lua_State *L) {
 
 static int sound_text(lua_State *L) {
   const handle *h = luaL_checkudata(L, 1, CLASS);
-  lua_pushfstring(L, "sound file %s%s", path_of(L), h->sound ? "" : " (closed)");
+  lua_pushfstring(L, "sound file %s%s", path_of(L),
+                  h->sound ? "" : " (closed)");
   return 1;
 }
 

@@ -4,8 +4,9 @@
 #include <string.h>
 #include <unistd.h>
 
+#include "store/ogg.h"
+
 #define MOST_CHUNKS 4096
-#define OGG_TAIL 70000 /* more than the largest page, 27 + 255 + 255 * 255 */
 
 typedef struct source {
   int fd;
@@ -98,29 +99,6 @@ static lbr_status check_wave64(source s, lbr_why *why) {
   return no_data(why);
 }
 
-/* Bytes of the page at `page`, of which n bytes are there; 0: not a page. */
-static size_t ogg_page(const unsigned char *page, size_t n) {
-  if (n < 27 || memcmp(page, "OggS", 4) != 0) return 0;
-  size_t length = 27 + (size_t)page[26];
-  if (length > n) return 0;
-  for (size_t i = 0; i < page[26]; i++) length += page[27 + i];
-  return length;
-}
-
-/* The last page must end with the file and be marked as the last. */
-static lbr_status check_ogg(source s, lbr_why *why) {
-  unsigned char tail[OGG_TAIL];
-  size_t n = s.size < OGG_TAIL ? (size_t)s.size : OGG_TAIL;
-  if (!read_at(s, s.size - (int64_t)n, tail, n)) return no_data(why);
-  for (size_t i = n; i-- > 0;) {
-    if (ogg_page(tail + i, n - i) != n - i) continue;
-    if (tail[i + 5] & 4) return LBR_OK;
-    break;
-  }
-  return lbr_because(why, LBR_FORMAT,
-                     "is cut off: its last page is not marked as the end");
-}
-
 lbr_status lbr_container_check(int fd, int64_t size, lbr_why *why) {
   source s = {fd, size};
   unsigned char head[12];
@@ -130,6 +108,6 @@ lbr_status lbr_container_check(int fd, int64_t size, lbr_why *why) {
   if (memcmp(head, "RF64", 4) == 0 || memcmp(head, "BW64", 4) == 0)
     return check_riff(s, true, why);
   if (memcmp(head, "riff", 4) == 0) return check_wave64(s, why);
-  if (memcmp(head, "OggS", 4) == 0) return check_ogg(s, why);
+  if (memcmp(head, "OggS", 4) == 0) return lbr_ogg_check(fd, size, why);
   return LBR_OK;
 }

@@ -4,7 +4,7 @@
 local M = {}
 
 local function output_of(command)
-  local pipe = assert(io.popen(command))
+  local pipe = assert(io.popen("env -u LD_PRELOAD " .. command))
   local text = pipe:read "a"
   pipe:close()
   return text
@@ -22,7 +22,7 @@ end
 
 --- Runs sox; fails the test when it does.
 function M.sox(text, ...)
-  assert(os.execute("sox -V1 " .. text:format(...)), "sox failed: " .. text)
+  assert(os.execute("env -u LD_PRELOAD sox -V1 " .. text:format(...)), "sox failed: " .. text)
 end
 
 --- What soxi says: rate, channels, samples, bits as integers.
