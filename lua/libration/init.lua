@@ -12,6 +12,8 @@ local rooms = {
   filter = { "libration.filter", "new" },
   fraction = { "libration.fraction" },
   record = { "libration.record" },
+  json = { "libration.json" },
+  report = { "libration.report" },
   units = { "libration.units" },
   window = { "libration.window" },
 }

@@ -188,8 +188,9 @@ end
 -- @param plan table: a plan with demand and digitizer
 -- @return table: commands for gnuplot.save; or nil, message, code ("format")
 -- @usage
--- local commands = require("libration.report.fold_plot").commands { rate = lb.fraction.new(1000),
---   digitizer = {}, demand = { title = "t", lines = { { name = "a", hz = lb.fraction.new(700) } } } }
+-- local commands = require("libration.report.fold_plot").commands {
+--   rate = lb.fraction.new(1000), digitizer = {},
+--   demand = { title = "t", lines = { { name = "a", hz = lb.fraction.new(700) } } } }
 -- assert(#commands > 10)
 function M.commands(plan)
   local view = view_of(plan)
@@ -207,7 +208,8 @@ function M.commands(plan)
   end
   out[#out + 1] = "set multiplot"
   out[#out + 1] = gnuplot.block("zigzag", zigzag(view.axis, view.shown, view.rate, view.scales))
-  out[#out + 1] = gnuplot.block("others", marks_of(view.list, view.scales, "interferer", view.height))
+  out[#out + 1] = gnuplot.block("others",
+    marks_of(view.list, view.scales, "interferer", view.height))
   out[#out + 1] = gnuplot.block("lines", marks_of(view.list, view.scales, "line", view.height))
   upper(out, view)
   if view.filter then

@@ -137,7 +137,8 @@ function M.draw(kind, commands, width, height)
     "set terminal " .. kinds[kind].terminal:format(width, height),
     "set output " .. M.quote(picture),
   }
-  local text = table.concat(head, "\n") .. "\n" .. table.concat(commands, "\n") .. "\nunset output\n"
+  table.move(commands, 1, #commands, #head + 1, head)
+  local text = table.concat(head, "\n") .. "\nunset output\n"
   local fine, message = file.write(script, text)
   if fine then
     fine, message = run(script)

@@ -67,7 +67,8 @@ end
 function M.record(plan)
   local text = plan.samples .. " samples = " .. numbers.time(plan.duration_s)
   if (plan.averages or 1) > 1 then
-    text = text .. ", " .. plan.averages .. " averaged, " .. numbers.time(M.total(plan)) .. " in all"
+    text = text .. ", " .. plan.averages .. " averaged, " .. numbers.time(M.total(plan))
+      .. " in all"
   end
   return text
 end

@@ -53,7 +53,8 @@ end
 -- @usage
 -- assert(not pcall(lb.report.plot.text, {}, "pie"))
 function M.text(plan, which)
-  local make = which == "fold map" and text_plot.fold_map or which == "spectrum" and text_plot.spectrum
+  local make = which == "fold map" and text_plot.fold_map
+    or which == "spectrum" and text_plot.spectrum
   if not make then
     error('which: "' .. tostring(which) .. '" is no picture; valid: "fold map", "spectrum"', 2)
   end

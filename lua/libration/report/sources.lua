@@ -15,7 +15,8 @@ end
 -- @return number: Hz to either side of its nominal frequency
 -- @usage
 -- local half = require("libration.report.sources").half
--- assert(half({ drivers = { { spread = 0.01 } } }, { driver = 1, lock_hz = 100, free_hz = 2 }) == 3)
+-- local source = { driver = 1, lock_hz = 100, free_hz = 2 }
+-- assert(half({ drivers = { { spread = 0.01 } } }, source) == 3)
 function M.half(demand, source)
   local driver = demand.drivers and demand.drivers[source.driver]
   return math.abs(source.lock_hz or 0) * (driver and driver.spread or 0) + (source.free_hz or 0)

@@ -97,7 +97,8 @@ local function frame(out, view)
     "set logscale y", "set format y \"%g\"", "set bmargin at screen 0.16",
     ("set yrange [%s:%s]"):format(gnuplot.number(view.least), gnuplot.number(view.most)),
     ("set xlabel %s"):format(gnuplot.quote("frequency in the record (" .. view.unit .. ")")),
-    ("set ylabel %s"):format(gnuplot.quote("peak amplitude (" .. (view.plan.demand.unit or "") .. ")")),
+    ("set ylabel %s"):format(gnuplot.quote(
+      "peak amplitude (" .. (view.plan.demand.unit or "") .. ")")),
   })
   if floor > view.least then
     out[#out + 1] = ("set object rectangle from graph 0, graph 0 to graph 1, first %s behind"
@@ -109,8 +110,8 @@ local function key(out, left_out)
   local notes = {
     "bar with disc: line, least to most amplitude    open square: its allowed error"
       .. "    diamond: the most it may be wrong by",
-    "open triangle: interferer where it shows, after the filter    shaded: what noise alone may read"
-      .. (left_out > 0 and ("    (%d names left out)"):format(left_out) or ""),
+    "open triangle: interferer where it shows, after the filter"
+      .. "    shaded: what noise alone may read" .. (left_out > 0 and ("    (%d names left out)"):format(left_out) or ""),
   }
   for i, note in ipairs(notes) do
     out[#out + 1] = ("set label %s at screen %g, screen %g left textcolor rgb \"#4a525b\""):format(
@@ -169,7 +170,8 @@ end
 -- local a = { name = "a", hz = lb.fraction.new(70), least = 1, most = 2 }
 -- local commands = require("libration.report.spectrum_plot").commands { worst = 0.5,
 --   rate = lb.fraction.new(1000), samples = 1000, duration_s = 1, digitizer = {},
---   demand = { unit = "V", lines = { a } }, lines = { { name = "a", error = 0.1, tolerance = 0.2 } } }
+--   demand = { unit = "V", lines = { a } },
+--   lines = { { name = "a", error = 0.1, tolerance = 0.2 } } }
 -- assert(#commands > 10)
 function M.commands(plan)
   local view = view_of(plan)

@@ -43,7 +43,8 @@ function M.verdict(plan)
   if plan.worst <= 1 then
     return "holds every tolerance with " .. numbers.percent(1 - plan.worst, -1) .. " to spare"
   end
-  return "does NOT hold: the worst line takes " .. numbers.percent(plan.worst) .. " of its tolerance"
+  return "does NOT hold: the worst line takes " .. numbers.percent(plan.worst)
+    .. " of its tolerance"
 end
 
 local function heading(lines, plan)
@@ -238,7 +239,8 @@ function M.plan(plan)
   local index = tightest(plan)
   if index and plan.lines[index].budget then
     lines[#lines + 1] = ""
-    lines[#lines + 1] = "Largest terms of the tightest line, " .. layout.safe(plan.lines[index].name)
+    lines[#lines + 1] = "Largest terms of the tightest line, "
+      .. layout.safe(plan.lines[index].name)
     push(lines, budget_table(plan, plan.lines[index], 5, 2))
   end
   lines[#lines + 1] = ""
@@ -250,21 +252,49 @@ end
 local function what_binds(lines, binding)
   paragraph(lines, "What binds: " .. how.binding(binding), 2)
   if binding.ratio then
-    paragraph(lines, "How far off: the error would take " .. numbers.percent(binding.ratio)
-      .. " of the tolerance", 2)
+    paragraph(lines, "How far off: " .. numbers.percent(binding.ratio) .. " of what is allowed", 2)
   end
 end
 
-local function relaxation_row(relaxation)
-  local plan = relaxation.plan
+local function plan_cells(plan)
   return {
-    relaxation.text or how.change(relaxation.change),
-    plan and numbers.time(how.total(plan)) or "",
-    plan and numbers.exact(plan.rate) or "",
-    plan and tostring(plan.samples) or "",
-    plan and plan.window and plan.window.name or "",
-    plan and numbers.percent(1 - plan.worst, -1) or "",
+    numbers.time(how.total(plan)), numbers.exact(plan.rate), tostring(plan.samples),
+    how.window(plan), plan.reading or "", numbers.percent(1 - plan.worst, -1),
   }
+end
+
+local plan_columns = {
+  { head = "takes", align = "right" }, { head = "rate", unit = "S/s", align = "point" },
+  { head = "samples", align = "right" }, { head = "window" }, { head = "reading" },
+  { head = "to spare", align = "right" },
+}
+
+local function plans_table(first, rows, indent)
+  local columns = { { head = first } }
+  push(columns, plan_columns)
+  return layout.layout(columns, rows, indent)
+end
+
+local function relaxation_row(relaxation)
+  local row = { relaxation.text or how.change(relaxation.change) }
+  push(row, relaxation.plan and plan_cells(relaxation.plan) or {})
+  return row
+end
+
+--- The trade-off front as a table.
+-- @param plans table: plans, shortest first
+-- @return string: one row a plan
+-- @usage
+-- local text = require("libration.report.text").front { { worst = 0.5, samples = 16,
+--   rate = lb.fraction.new(8), duration_s = 2, reading = "bin", window = { name = "hann" } } }
+-- assert(text:find("2.000 s", 1, true) and text:find("50 %", 1, true))
+function M.front(plans)
+  local rows = {}
+  for i, plan in ipairs(plans) do
+    rows[i] = { tostring(i) }
+    push(rows[i], plan_cells(plan))
+  end
+  return table.concat(plans_table("plan", rows, 0), "\n")
 end
 
 --- A refusal for a person: what binds, how far off, what would help.
@@ -281,10 +311,11 @@ function M.refusal(refusal)
   lines[1] = title and layout.safe(title) or "Refused"
   lines[2] = "cannot be measured as demanded: no plan holds every tolerance"
   lines[3] = ""
+  if refusal.message then
+    paragraph(lines, "Why: " .. refusal.message, 2)
+  end
   if refusal.binding then
     what_binds(lines, refusal.binding)
-  elseif refusal.message then
-    paragraph(lines, refusal.message, 2)
   end
   lines[#lines + 1] = ""
   local rows = {}
@@ -295,11 +326,7 @@ function M.refusal(refusal)
     lines[#lines + 1] = "No single change that was tried would help."
   else
     lines[#lines + 1] = "Any one of these would help:"
-    push(lines, layout.layout({
-      { head = "change" }, { head = "takes", align = "right" },
-      { head = "rate", unit = "S/s", align = "point" }, { head = "samples", align = "right" },
-      { head = "window" }, { head = "to spare", align = "right" },
-    }, rows, 2))
+    push(lines, plans_table("change", rows, 2))
   end
   if refusal.notes and refusal.notes[1] then
     lines[#lines + 1] = ""
