@@ -84,12 +84,7 @@ local function object(value, path, margin, open)
   return "{\n" .. table.concat(items, ",\n") .. "\n" .. margin .. "}"
 end
 
-writers["nil"] = function() return "null" end
-writers.boolean = function(value) return tostring(value) end
-writers.number = function(value) return number(value) end
-writers.string = function(value, path) return quote(value, path) end
-
-writers.table = function(value, path, margin, open)
+local function table_text(value, path, margin, open)
   if value == M.null then
     return "null"
   end
@@ -102,12 +97,19 @@ writers.table = function(value, path, margin, open)
   return text
 end
 
-writers.userdata = function(value, path, margin, open)
+local function userdata_text(value, path, margin, open)
   if not base.is_fraction(value) then
     error({ message = path .. " is an object that JSON cannot say" }, 0)
   end
   return object({ exact = tostring(value), value = value:number() }, path, margin, open)
 end
+
+writers["nil"] = function() return "null" end
+writers["boolean"] = tostring
+writers["number"] = number
+writers["string"] = quote
+writers["table"] = table_text
+writers["userdata"] = userdata_text
 
 -- What stands for JSON's null inside a table.
 M.null = setmetatable({}, { kind = "object" })

@@ -26,9 +26,10 @@ local function draw_group(out, group, axis, scale, base_y)
   local function at(place) return gnuplot.number(axis.at(place) / scale) end
   local style = ("lc rgb %q lw 0.7 dt 3"):format(M.faint)
   if #group.marks > 1 then
+    local bar_y = gnuplot.number(y - lane_height * 0.45)
     out[#out + 1] = ("set arrow from first %s, screen %s to first %s, screen %s nohead"
-      .. " lc rgb %q lw 1"):format(at(group.first), gnuplot.number(y - lane_height * 0.45), at(group.last),
-        gnuplot.number(y - lane_height * 0.45), M.colour[group.kind])
+      .. " lc rgb %q lw 1"):format(at(group.first), bar_y, at(group.last), bar_y,
+        M.colour[group.kind])
   end
   for _, mark in ipairs(group.marks) do
     if #group.marks == 1 or mark == group.marks[1] or mark == group.marks[#group.marks] then

@@ -74,7 +74,7 @@ end
 -- kept inside 0 to 1.
 local function middles_of(group, width)
   local middle, list = (group.first + group.last) / 2, {}
-  for i, shift in ipairs { 0, -0.45, 0.45 } do
+  for i, shift in ipairs { 0, -0.5, 0.5 } do
     list[i] = math.min(math.max(middle + shift * width, width / 2), 1 - width / 2)
   end
   return list
@@ -89,7 +89,8 @@ local clash = {
 
 local function free(spans, kind, left, right, gap)
   for _, span in ipairs(spans) do
-    if clash[kind][span.kind] and left < span.right + gap and right > span.left - gap then
+    local apart = (kind == "leader" or span.kind == "leader") and 0 or gap
+    if clash[kind][span.kind] and left < span.right + apart and right > span.left - apart then
       return false
     end
   end

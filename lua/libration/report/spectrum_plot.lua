@@ -111,7 +111,8 @@ local function key(out, left_out)
     "bar with disc: line, least to most amplitude    open square: its allowed error"
       .. "    diamond: the most it may be wrong by",
     "open triangle: interferer where it shows, after the filter"
-      .. "    shaded: what noise alone may read" .. (left_out > 0 and ("    (%d names left out)"):format(left_out) or ""),
+      .. "    shaded: what noise alone may read"
+      .. (left_out > 0 and ("    (%d names left out)"):format(left_out) or ""),
   }
   for i, note in ipairs(notes) do
     out[#out + 1] = ("set label %s at screen %g, screen %g left textcolor rgb \"#4a525b\""):format(

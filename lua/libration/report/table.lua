@@ -118,7 +118,7 @@ local function head_text(text, align, width)
 end
 
 local function line_of(cells, indent)
-  return (pad(indent) .. table.concat(cells, "  ")):gsub("%s+$", "")
+  return (pad(indent) .. table.concat(cells, "  ")):match("^(.-)%s*$")
 end
 
 --- Lays out a table.
