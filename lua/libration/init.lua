@@ -15,7 +15,8 @@ local rooms = {
   json = { "libration.json" },
   report = { "libration.report" },
   units = { "libration.units" },
-  window = { "libration.window" },
+  window = { "libration.window", "window" },
+  windows = { "libration.window", "windows" },
 }
 
 return setmetatable(M, {
