@@ -1,6 +1,7 @@
 /* core.proof: plans on trial. */
 #include <math.h>
 #include <string.h>
+#include <unistd.h>
 
 #include "base/checked.h"
 #include "bind/bind.h"
@@ -327,7 +328,19 @@ static int proof_new(lua_State *L) {
   return 1;
 }
 
-static const luaL_Reg functions[] = {{"new", proof_new}, {NULL, NULL}};
+/*** Says whether a person watches the error output.
+ * Progress is drawn on a terminal only.
+ * @return boolean: whether standard error is a terminal
+ * @usage
+ * assert(type(core.proof.watched()) == "boolean")
+ */
+static int proof_watched(lua_State *L) {
+  lua_pushboolean(L, isatty(STDERR_FILENO));
+  return 1;
+}
+
+static const luaL_Reg functions[] = {
+    {"new", proof_new}, {"watched", proof_watched}, {NULL, NULL}};
 
 int lbr_open_proof(lua_State *L) {
   luaL_newlib(L, functions);

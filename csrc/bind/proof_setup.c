@@ -71,10 +71,13 @@ static void read_spread(lua_State *L, int arg, lbr_setup *s) {
   s->scene.n_drivers = push_list(L, arg, "spread");
   s->spread = room(L, s->scene.n_drivers, sizeof *s->spread);
   for (size_t i = 0; i < s->scene.n_drivers; i++) {
+    int is_number;
     lua_geti(L, -1, (lua_Integer)i + 1);
-    s->spread[i] = luaL_checknumber(L, -1);
-    luaL_argcheck(L, s->spread[i] >= 0 && s->spread[i] < 1, arg,
-                  "spread is not between 0 and 1");
+    s->spread[i] = lua_tonumberx(L, -1, &is_number);
+    if (!is_number || !(s->spread[i] >= 0 && s->spread[i] < 1))
+      luaL_argerror(L, arg, lua_pushfstring(
+          L, "spread[%I] is not a number from 0 to below 1",
+          (LUAI_UACINT)(i + 1)));
     lua_pop(L, 1);
   }
   lua_pop(L, 1);

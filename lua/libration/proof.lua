@@ -1,0 +1,285 @@
+--- Proofs: a plan put on trial.
+-- A proof makes records that the demand allows and the digitizer would deliver,
+-- reads them the way the plan says, and holds every deviation against the
+-- plan's own bound: random trials, and an adversary that climbs towards the
+-- worst case of every line. Systematic bounds must never be passed; random
+-- deviations are compared with their standard deviation.
+
+local core = require "libration.core"
+local record = require "libration.record"
+local window = require "libration.window"
+
+local M = {}
+
+local CHUNK = 256 -- trials between two looks at the clock
+local MOST_TRIALS = 10 ^ 9
+
+local Proof = {}
+Proof.__index = Proof
+Proof.__name = "libration.proof"
+
+local function fail(level, text, ...)
+  error("prove: " .. text:format(...), level + 1)
+end
+
+local valid = { adversary = "boolean", noise = "boolean", progress = "boolean", seed = "integer",
+                trials = "integer", workers = "integer" }
+local defaults = { adversary = true, noise = true, progress = true, seed = 1, trials = 10000,
+                   workers = 0 }
+
+local function kind_of(value)
+  return math.type(value) == "integer" and "integer" or type(value)
+end
+
+local function check_options(options, kinds, level)
+  local names = {}
+  for name in pairs(kinds) do names[#names + 1] = name end
+  table.sort(names)
+  if type(options) ~= "table" then
+    fail(level + 1, "the options are a table, not %s", type(options))
+  end
+  for key, value in pairs(options) do
+    if not kinds[key] then
+      fail(level + 1, "unknown option %s; valid are %s", tostring(key), table.concat(names, ", "))
+    elseif kind_of(value) ~= kinds[key] then
+      fail(level + 1, "%s is %s; it must be %s", key, tostring(value), kinds[key])
+    end
+  end
+end
+
+local function with_defaults(options, level)
+  options = options or {}
+  check_options(options, valid, level + 1)
+  local out = {}
+  for name, value in pairs(defaults) do
+    if options[name] == nil then out[name] = value else out[name] = options[name] end
+  end
+  if out.trials < 0 or out.trials > MOST_TRIALS then
+    fail(level + 1, "trials is %d; it must be between 0 and %d", out.trials, MOST_TRIALS)
+  elseif out.workers < 0 or out.workers > 256 then
+    fail(level + 1, "workers is %d; it must be between 1 and 256, or 0 for one per core",
+      out.workers)
+  end
+  return out
+end
+
+local function plain(value)
+  return type(value) == "userdata" and value:number() or value
+end
+
+local function sources_of(demand)
+  local out = {}
+  for _, list in ipairs { demand.lines, demand.interferers or {} } do
+    for _, s in ipairs(list) do
+      out[#out + 1] = { hz = plain(s.hz), lock_hz = plain(s.lock_hz), free_hz = s.free_hz,
+                        wander = s.wander, least = s.least, most = s.most, driver = s.driver }
+    end
+  end
+  return out
+end
+
+--- The table that `core.proof.new` takes, for a plan.
+-- Volts of the digitizer become units of the demand through its sensitivity.
+-- @param plan plan: as lb.plan returns it; its `claims` are what is put on trial
+-- @return table: rate, coverage, window, spread, sources, offset, noise, front, claims
+function M.setup(plan)
+  local demand, spread = plan.demand, {}
+  for i, driver in ipairs(demand.drivers) do spread[i] = driver.spread end
+  return {
+    rate = plain(plan.rate), coverage = demand.coverage,
+    window = window(plan.window.name, plan.window.parameter):samples(plan.samples),
+    spread = spread, sources = sources_of(demand), offset = demand.offset, noise = demand.noise,
+    front = plan.front, claims = plan.claims,
+  }
+end
+
+-- A bar on the error output, drawn at most ten times a second.
+local function bar(wanted, total)
+  if not wanted or not core.proof.watched() or total == 0 then
+    return function() end
+  end
+  local last = -1
+  return function(done)
+    local now = core.base.clock()
+    if done < total and now - last < 0.1 then return end
+    last = now
+    local full = math.floor(30 * done / total)
+    io.stderr:write(("\rtrials [%s%s] %d of %d"):format(("#"):rep(full), ("."):rep(30 - full),
+      done, total), done == total and "\n" or "")
+    io.stderr:flush()
+  end
+end
+
+local function run_trials(trial, options)
+  local draw, tallies = bar(options.progress, options.trials), trial:run(options.seed, 0, 0, false)
+  local done = 0
+  while done < options.trials do
+    local count = math.min(CHUNK, options.trials - done)
+    tallies = trial:run(options.seed, done, count, options.noise)
+    done = done + count
+    draw(done)
+  end
+  return tallies
+end
+
+-- What is reported of one line: the worst of trials and attacks.
+local function line_report(plan, i, tally, high, low, noise)
+  local out = {
+    name = plan.lines[i].name, worst = tally.worst, worst_trial = tally.worst_trial,
+    worst_hz = tally.worst_hz, worst_hz_trial = tally.worst_hz_trial,
+    violations = tally.violations, violations_hz = tally.violations_hz, tightness = tally.worst,
+  }
+  if noise and tally.trials > 0 then
+    out.rms = (tally.squares / tally.trials) ^ 0.5
+    out.exceedance = tally.beyond / tally.trials
+  end
+  for side, attack in pairs { high = high, low = low } do
+    out[side] = attack.reached
+    out.tightness = math.max(out.tightness, attack.reached)
+    if attack.reached > 1 then out.violations = out.violations + 1 end
+  end
+  return out
+end
+
+local function worst_case(proof)
+  local worst = { ratio = -1 }
+  for i, line in ipairs(proof.lines) do
+    if proof.trials > 0 and line.worst > worst.ratio then
+      worst = { line = i, name = line.name, ratio = line.worst, seed = proof.seed,
+                trial = line.worst_trial }
+    end
+    for _, side in ipairs { "high", "low" } do
+      if line[side] and line[side] > worst.ratio then
+        worst = { line = i, name = line.name, ratio = line[side], seed = proof.seed,
+                  side = side }
+      end
+    end
+  end
+  return worst.line and worst or nil
+end
+
+local function sum_up(proof)
+  proof.violations, proof.tightness = 0, 0
+  for _, line in ipairs(proof.lines) do
+    proof.violations = proof.violations + line.violations + line.violations_hz
+    proof.tightness = math.max(proof.tightness, line.tightness)
+  end
+  proof.worst = worst_case(proof)
+  proof.holds = proof.violations == 0
+  return setmetatable(proof, Proof)
+end
+
+--- Puts a plan on trial: `plan:prove { trials = 10000, seed = 1 }`.
+-- @param plan plan: as lb.plan returns it
+-- @param options table: trials (default 10000), seed (default 1), adversary (default true), noise
+--   (default true: every trial also with noise, jitter, limits and codes), workers (threads;
+--   default 0, one per core), progress (default true: a bar, if standard error is a terminal)
+-- @return table: the proof: trials, seed, violations (of systematic bounds; 0 when the plan
+--   holds), holds (boolean), tightness (largest deviation over bound), worst (line, name, ratio,
+--   seed, and trial or side for replay), refused (text, when the adversary could not take
+--   part), seconds, and lines[i]: name, worst, worst_trial, worst_hz (random trials), high, low
+--   (adversary), tightness, violations, violations_hz, rms (of random deviations, in standard
+--   deviations), exceedance (share beyond the demand's coverage); print shows it as a table
+function M.prove(plan, options)
+  options = with_defaults(options, 2)
+  local started = core.base.clock()
+  local trial <close> = core.proof.new(M.setup(plan), options.workers)
+  local proof = { trials = options.trials, seed = options.seed, noise = options.noise,
+                  coverage = plan.demand.coverage, lines = {} }
+  local attacks, message
+  if options.adversary then
+    attacks, message = trial:attack(options.seed)
+    proof.refused = message
+  end
+  local tallies = run_trials(trial, options)
+  for i, tally in ipairs(tallies) do
+    proof.lines[i] = line_report(plan, i, tally, attacks and attacks[2 * i - 1],
+      attacks and attacks[2 * i], options.noise)
+  end
+  proof.seconds = core.base.clock() - started
+  return sum_up(proof)
+end
+
+local replay_kinds = { line = "integer", noise = "boolean", seed = "integer", side = "string",
+                       trial = "integer" }
+
+-- Seed and line of an attack to be replayed, checked.
+local function check_attack(options, plan, level)
+  local line, side = options.line, options.side
+  if side ~= "high" and side ~= "low" then
+    fail(level + 1, 'side is %q; it must be "high" or "low"', tostring(side))
+  elseif not line or line < 1 or line > #plan.lines then
+    fail(level + 1, "line is %s; it must be between 1 and %d", tostring(line), #plan.lines)
+  end
+end
+
+--- Makes one record of a proof again: `plan:replay { seed = 1, trial = 17 }`.
+-- @param plan plan: as lb.plan returns it
+-- @param options table: seed (default 1) and trial (from 0) of a random trial, noise (default
+--   true: as the digitizer delivers it); or seed, line (index) and side ("high" or "low") of an
+--   attack, which has no noise
+-- @return record: bit for bit the same each time; or nil, message, code
+-- @return table: particulars: timebase, accuracy, offset, deviation (per driver), sources (hz,
+--   amplitude, phase, gain, wander ...), lines (amplitude, read, read_hz, ratio, ratio_hz,
+--   deviation)
+function M.replay(plan, options)
+  check_options(options, replay_kinds, 2)
+  local seed, noise = options.seed or 1, options.noise ~= false
+  local trial <close> = core.proof.new(M.setup(plan), 1)
+  local x, particulars, lines
+  if options.side then
+    check_attack(options, plan, 2)
+    x, particulars, lines = trial:replay_attack(seed, options.line, options.side)
+    if not x then return nil, particulars, lines end
+  elseif options.trial and options.trial >= 0 then
+    x, particulars, lines = trial:replay(seed, options.trial, noise)
+  else
+    fail(2, "trial is %s; it must be an integer from 0", tostring(options.trial))
+  end
+  particulars.lines = lines
+  return record.new { rate = plan.rate, samples = x, unit = plan.demand.unit }, particulars
+end
+
+local function percent(share)
+  return share and ("%.3g %%"):format(100 * share) or "-"
+end
+
+local function ratio(value)
+  return value and ("%.3f"):format(value) or "-"
+end
+
+local function verdict(proof)
+  if proof.trials == 0 and proof.refused then
+    return "not proven: " .. proof.refused
+  elseif not proof.holds then
+    local w = proof.worst
+    return ("FAILS: %d violations; worst %.4f of the bound, line %s, replay { seed = %d, %s }")
+      :format(proof.violations, w.ratio, w.name, w.seed, w.trial and "trial = " .. w.trial or
+        ("line = %d, side = %q"):format(w.line, w.side))
+  end
+  return ("holds: no bound passed; the worst case reached %.3f of it"):format(proof.tightness)
+end
+
+--- A proof as a table that a person reads.
+-- @param proof table: as plan:prove returns it
+-- @return string: a row per line, the verdict last
+function M.text(proof)
+  local rows = {
+    ("Proof: %d random trials (seed %d), adversary %s, %.1f s"):format(proof.trials, proof.seed,
+      proof.refused and "refused: " .. proof.refused or proof.lines[1].high and "on every line" or
+      "not asked", proof.seconds),
+    "Largest deviation over its bound (1 is the bound):",
+    ("  %-20s %8s %8s %8s %8s %10s %12s"):format("line", "trials", "high", "low", "hz",
+      "rms/sigma", ("beyond %gs"):format(proof.coverage or 3)),
+  }
+  for _, l in ipairs(proof.lines) do
+    rows[#rows + 1] = ("  %-20s %8s %8s %8s %8s %10s %12s"):format(l.name, ratio(l.worst),
+      ratio(l.high), ratio(l.low), ratio(l.worst_hz), ratio(l.rms), percent(l.exceedance))
+  end
+  rows[#rows + 1] = verdict(proof)
+  return table.concat(rows, "\n")
+end
+
+Proof.__tostring = M.text
+
+return M
