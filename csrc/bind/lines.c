@@ -37,8 +37,9 @@ static double number_at(lua_State *L, int arg, lua_Integer i) {
 }
 
 /*** Reads every line of a record.
- * The record must be as long as the tracker's window.
+ * As many samples are read as the tracker's window has; all must be there.
  * @param x samples: the record
+ * @param first integer: number of the first sample read, from 1, default 1
  * @return table: amplitude, frequency and phase of line 1, then of line 2 ...
  *   in one flat sequence: the record's unit (peak), cycles per sample, and
  *   radians of the cosine at the centre of the record
@@ -52,10 +53,12 @@ static int tracker_run(lua_State *L) {
   size_t n;
   const double *x = lbr_check_samples(L, 2, &n);
   luaL_argcheck(L, h->tracker != NULL, 1, "the tracker is closed");
-  if (n != h->n)
+  if (n < h->n)
     luaL_argerror(L, 2, lua_pushfstring(L, "%I samples, the window has %I",
                                         (LUAI_UACINT)n, (LUAI_UACINT)h->n));
-  lbr_tracker_run(h->tracker, x, h->tones);
+  size_t first = lua_isnoneornil(L, 3)
+                     ? 1 : lbr_check_count(L, 3, 1, n - h->n + 1);
+  lbr_tracker_run(h->tracker, x + first - 1, h->tones);
   lua_createtable(L, (int)(3 * h->count), 0);
   for (size_t i = 0; i < h->count; i++) {
     const double row[3] = {h->tones[i].amplitude, h->tones[i].frequency,

@@ -142,20 +142,22 @@ local function line_report(plan, i, tally, high, low, noise)
 end
 
 local function worst_case(proof)
-  local worst = { ratio = -1 }
-  for i, line in ipairs(proof.lines) do
-    if proof.trials > 0 and line.worst > worst.ratio then
-      worst = { line = i, name = line.name, ratio = line.worst, seed = proof.seed,
-                trial = line.worst_trial }
-    end
-    for _, side in ipairs { "high", "low" } do
-      if line[side] and line[side] > worst.ratio then
-        worst = { line = i, name = line.name, ratio = line[side], seed = proof.seed,
-                  side = side }
-      end
+  local worst = nil
+  local function consider(line, ratio, where)
+    if ratio and (not worst or ratio > worst.ratio) then
+      where.line, where.name, where.ratio = line, proof.lines[line].name, ratio
+      where.seed, worst = proof.seed, where
     end
   end
-  return worst.line and worst or nil
+  for i, line in ipairs(proof.lines) do
+    if proof.trials > 0 then
+      consider(i, line.worst, { trial = line.worst_trial, of = "amplitude" })
+      consider(i, line.worst_hz, { trial = line.worst_hz_trial, of = "frequency" })
+    end
+    consider(i, line.high, { side = "high", of = "amplitude" })
+    consider(i, line.low, { side = "low", of = "amplitude" })
+  end
+  return worst
 end
 
 local function sum_up(proof)
@@ -176,10 +178,11 @@ end
 --   default 0, one per core), progress (default true: a bar, if standard error is a terminal)
 -- @return table: the proof: trials, seed, violations (of systematic bounds; 0 when the plan
 --   holds), holds (boolean), tightness (largest deviation over bound), worst (line, name, ratio,
---   seed, and trial or side for replay), refused (text, when the adversary could not take
---   part), seconds, and lines[i]: name, worst, worst_trial, worst_hz (random trials), high, low
---   (adversary), tightness, violations, violations_hz, rms (of random deviations, in standard
---   deviations), exceedance (share beyond the demand's coverage); print shows it as a table
+--   of = "amplitude" or "frequency", seed, and trial or side for replay), refused (text, when
+--   the adversary could not take part), seconds, and lines[i]: name, worst, worst_trial,
+--   worst_hz (random trials), high, low (adversary), tightness, violations, violations_hz, rms
+--   (of random deviations, in standard deviations), exceedance (share beyond the demand's
+--   coverage); print shows it as a table
 function M.prove(plan, options)
   options = with_defaults(options, 2)
   local started = core.base.clock()
@@ -253,11 +256,16 @@ local function verdict(proof)
     return "not proven: " .. proof.refused
   elseif not proof.holds then
     local w = proof.worst
-    return ("FAILS: %d violations; worst %.4f of the bound, line %s, replay { seed = %d, %s }")
-      :format(proof.violations, w.ratio, w.name, w.seed, w.trial and "trial = " .. w.trial or
-        ("line = %d, side = %q"):format(w.line, w.side))
+    return ("FAILS: %d violations; worst %.4f of the bound, %s of %s, replay { seed = %d, %s }")
+      :format(proof.violations, w.ratio, w.of, w.name, w.seed, w.trial and "trial = " .. w.trial
+        or ("line = %d, side = %q"):format(w.line, w.side))
   end
   return ("holds: no bound passed; the worst case reached %.3f of it"):format(proof.tightness)
+end
+
+local function adversary_text(proof)
+  return proof.refused and "refused: " .. proof.refused
+    or proof.lines[1].high and "on every line" or "not asked"
 end
 
 --- A proof as a table that a person reads.
@@ -266,8 +274,7 @@ end
 function M.text(proof)
   local rows = {
     ("Proof: %d random trials (seed %d), adversary %s, %.1f s"):format(proof.trials, proof.seed,
-      proof.refused and "refused: " .. proof.refused or proof.lines[1].high and "on every line" or
-      "not asked", proof.seconds),
+      adversary_text(proof), proof.seconds),
     "Largest deviation over its bound (1 is the bound):",
     ("  %-20s %8s %8s %8s %8s %10s %12s"):format("line", "trials", "high", "low", "hz",
       "rms/sigma", ("beyond %gs"):format(proof.coverage or 3)),

@@ -1,0 +1,196 @@
+--- Measuring a record by its plan: every line with its uncertainty.
+-- A record is read only if it is the record that was planned: its rate, length,
+-- unit and freedom from clipping are checked first. Every line then gets its
+-- amplitude with the plan's worst-case bound and with a standard uncertainty in
+-- the manner of JCGM 100:2008 (systematic bounds as rectangular distributions,
+-- a / sqrt 3, clause 4.3.7; random parts as standard deviations; combined in
+-- quadrature, clause 5.1; expanded with k = 2).
+
+local core = require "libration.core"
+local record = require "libration.record"
+local window = require "libration.window"
+
+local M = {}
+
+local Measurement = {}
+Measurement.__index = Measurement
+Measurement.__name = "libration.measurement"
+
+local EXPANDED = 2 -- coverage factor of the expanded uncertainty
+
+local function refuse(code, text, ...)
+  return nil, "the record breaks its plan: " .. text:format(...), code
+end
+
+local function check_channel(rec, k)
+  if k == nil and #rec.channels > 1 then
+    return refuse("which_channel", "it has %d channels; say which: channel = 1 to %d",
+      #rec.channels, #rec.channels)
+  elseif k ~= nil and not rec.channels[k] then
+    return refuse("wrong_channel", "channel %s is not there; it has 1 to %d", tostring(k),
+      #rec.channels)
+  end
+  return k or 1
+end
+
+-- Rails from the record's own full scale, else from the digitizer's range.
+local function check_values(rec, plan, k, values)
+  local rails = rec:rails(k)
+  local range = plan.front.range or math.huge
+  if not rails then
+    local step = plan.front.step or 0
+    rails = core.store.rails(values, -range + step / 2, range - 1.5 * step)
+  end
+  if rails.bad > 0 then
+    return refuse("not_finite", "%d samples are not finite numbers", rails.bad)
+  elseif rails.low + rails.high > 0 then
+    return refuse("clipped", "%d samples stand at the rails, the first is number %d",
+      rails.low + rails.high, rails.first)
+  end
+  return true
+end
+
+--- Checks that a record is the one that a plan asks for.
+-- @param rec record: what was measured
+-- @param plan plan: what was planned
+-- @param k integer: channel; needed when the record has several
+-- @return integer: the channel to be read; or nil, message, code: "which_channel",
+--   "wrong_channel", "wrong_rate", "too_short", "wrong_unit", "not_finite" or "clipped"
+-- @return samples: its values in the demand's unit
+function M.check(rec, plan, k)
+  local channel, message, code = check_channel(rec, k)
+  if not channel then return nil, message, code end
+  local needed, unit = plan.samples * plan.averages, rec.channels[channel].unit
+  if rec.rate ~= plan.rate then
+    return refuse("wrong_rate", "it was sampled at %s S/s, the plan says %s S/s",
+      tostring(rec.rate), tostring(plan.rate))
+  elseif rec.samples < needed then
+    return refuse("too_short", "it has %d samples, the plan needs %d", rec.samples, needed)
+  elseif unit ~= plan.demand.unit then
+    return refuse("wrong_unit", "its unit is %s, the demand's is %s", unit, plan.demand.unit)
+  end
+  local values = rec:values(channel)
+  local fine
+  fine, message, code = check_values(rec, plan, channel, values)
+  if not fine then return nil, message, code end
+  return channel, values
+end
+
+local function make_tracker(plan, rate)
+  local searches = {}
+  for _, claim in ipairs(plan.claims) do
+    searches[#searches + 1] = claim.f_lo / rate
+    searches[#searches + 1] = claim.f_hi / rate
+  end
+  local w = window(plan.window.name, plan.window.parameter):samples(plan.samples)
+  return core.lines.tracker(w, searches)
+end
+
+-- Amplitudes and frequencies averaged over the plan's consecutive records;
+-- phases are those of the first.
+local function read_all(plan, values, rate)
+  local tracker <close> = make_tracker(plan, rate)
+  local out = {}
+  for record_number = 1, plan.averages do
+    local flat = tracker:run(values, 1 + (record_number - 1) * plan.samples)
+    for i = 1, #flat // 3 do
+      local line = out[i] or { amplitude = 0, frequency = 0, phase = flat[3 * i] }
+      line.amplitude = line.amplitude + flat[3 * i - 2] / plan.averages
+      line.frequency = line.frequency + flat[3 * i - 1] / plan.averages
+      out[i] = line
+    end
+  end
+  return out
+end
+
+-- The largest systematic error of a reading: the bound at the largest true
+-- amplitude that can have given it.
+local function systematic_parts(claim, amplitude)
+  local true_most = claim.own < 1 and (amplitude + claim.others) / (1 - claim.own) or math.huge
+  return claim.own * true_most, claim.others
+end
+
+local function measured_line(plan, i, reading, rate)
+  local claim, line, k = plan.claims[i], plan.lines[i], plan.demand.coverage
+  local amplitude = reading.amplitude / claim.gain
+  local own, others = systematic_parts(claim, amplitude)
+  local sigma = (claim.sigma or 0) / plan.averages ^ 0.5
+  local standard = (own ^ 2 / 3 + others ^ 2 / 3 + sigma ^ 2) ^ 0.5
+  local tracked = claim.f_hi > claim.f_lo
+  local sigma_hz = (claim.sigma_hz or 0) / plan.averages ^ 0.5
+  return {
+    name = line.name, amplitude = amplitude, phase = reading.phase,
+    hz = reading.frequency * rate, tracked = tracked, nominal_hz = line.hz,
+    bound = own + others + k * sigma, systematic = own + others, random = sigma,
+    standard = standard, expanded = EXPANDED * standard,
+    hz_bound = tracked and claim.hz and claim.hz + k * sigma_hz or nil,
+  }
+end
+
+--- Measures every line of a record by a plan's own reading.
+-- The record must be the planned one (see check); longer records are read from their first
+-- sample on. With averages, consecutive records are read and amplitudes and frequencies averaged.
+-- @param rec record: what was recorded
+-- @param plan plan: the plan it was recorded by
+-- @param options table: channel (integer; needed when the record has several)
+-- @return table: the measurement: unit, rate, samples, averages, identity (of the plan), coverage
+--   (k of the bounds), and lines[i]: name, amplitude (peak), bound (worst error, random part with
+--   k), systematic, random (standard deviation), standard and expanded (k = 2) uncertainty, hz
+--   (where the line was read) with hz_bound (tracked lines), phase (rad, of the cosine at the
+--   centre of the first record, as the digitizer shows it), tracked; print shows it as a table;
+--   or nil, message, code when the record breaks its plan
+function M.measure(rec, plan, options)
+  for key in pairs(options or {}) do
+    if key ~= "channel" then
+      error(("measure: unknown option %s; valid is channel"):format(tostring(key)), 2)
+    end
+  end
+  local channel, values, code = M.check(rec, plan, options and options.channel)
+  if not channel then return nil, values, code end
+  local rate = plan.rate:number()
+  local out = { unit = plan.demand.unit, rate = plan.rate, samples = plan.samples,
+                averages = plan.averages, identity = plan.identity, channel = channel,
+                coverage = plan.demand.coverage, lines = {} }
+  for i, reading in ipairs(read_all(plan, values, rate)) do
+    out.lines[i] = measured_line(plan, i, reading, rate)
+  end
+  return setmetatable(out, Measurement)
+end
+
+--- Measures this record: `record:measure(plan)`; see libration.measure.
+-- @param plan plan: the plan it was recorded by
+-- @param options table: channel (integer; needed when the record has several)
+-- @return table: the measurement; or nil, message, code when the record breaks its plan
+function record.Record:measure(plan, options)
+  return M.measure(self, plan, options)
+end
+
+local function hz_text(line)
+  if not line.tracked then return ("%.6g (bin)"):format(line.hz) end
+  return line.hz_bound and ("%.6f +- %.2g"):format(line.hz, line.hz_bound)
+    or ("%.6f"):format(line.hz)
+end
+
+--- A measurement as a table that a person reads.
+-- @param m table: as measure returns it
+-- @return string: a row per line
+function M.text(m)
+  local rows = {
+    ("Measured by plan %s: %s S/s, %d samples, %d average%s, unit %s"):format(
+      tostring(m.identity or "without identity"):sub(1, 12), tostring(m.rate), m.samples,
+      m.averages, m.averages == 1 and "" or "s", m.unit),
+    ("  %-20s %12s %11s %11s %11s  %s"):format("line", "amplitude", "worst +-", "u (k=1)",
+      "U (k=2)", "frequency, Hz"),
+  }
+  for _, l in ipairs(m.lines) do
+    rows[#rows + 1] = ("  %-20s %12.6g %11.3g %11.3g %11.3g  %s"):format(l.name, l.amplitude,
+      l.bound, l.standard, l.expanded, hz_text(l))
+  end
+  rows[#rows + 1] = ("worst: systematic bound and %g standard deviations; u: JCGM 100 style")
+    :format(m.coverage)
+  return table.concat(rows, "\n")
+end
+
+Measurement.__tostring = M.text
+
+return M
