@@ -52,7 +52,8 @@ end
 local function tallies(given, trials, options)
   options = options or {}
   local proof <close> = core.proof.new(given, options.workers or 0)
-  local out, done, chunk = nil, 0, options.chunk or 4096
+  local done, chunk = 0, options.chunk or 4096
+  local out
   repeat
     local count = math.min(chunk, trials - done)
     out = proof:run(options.seed or 1, done, count, options.noise or false)

@@ -5,6 +5,7 @@
 #define BLOCK LBR_PHASOR_BLOCK
 #define LANES 8 /* independent partial sums: what vector units want */
 #define TAU 6.283185307179586476925286766559
+/* On static functions only: the linker would export the others. */
 #define FAST __attribute__((target_clones("avx512f", "avx2", "default")))
 
 double complex lbr_phasor_at(double f, double t) {
@@ -53,7 +54,7 @@ static inline double complex times(double complex a, double complex b) {
                creal(a) * cimag(b) + cimag(a) * creal(b));
 }
 
-FAST double complex lbr_phasor_sum(const double *y, size_t n, double f) {
+FAST static double complex sum_at(const double *y, size_t n, double f) {
   double c[BLOCK], s[BLOCK];
   double middle = 0.5 * ((double)n - 1);
   double complex sum = 0;
@@ -66,6 +67,10 @@ FAST double complex lbr_phasor_sum(const double *y, size_t n, double f) {
     sum += times(tail_sum(y + at, n - at, c, s),
                  lbr_phasor_at(f, (double)at - middle));
   return sum;
+}
+
+double complex lbr_phasor_sum(const double *y, size_t n, double f) {
+  return sum_at(y, n, f);
 }
 
 static inline double fold_lanes(const double *a) {
@@ -90,8 +95,8 @@ static inline void block_moments(double *restrict a, double *restrict b,
   }
 }
 
-FAST void lbr_phasor_moments(const double *y, size_t n, double f,
-                             double complex m[LBR_PHASOR_MOMENTS]) {
+FAST static void moments_at(const double *y, size_t n, double f,
+                            double complex *m) {
   double c[BLOCK], s[BLOCK], a[BLOCK], b[BLOCK], u[BLOCK];
   double re[LBR_PHASOR_MOMENTS], im[LBR_PHASOR_MOMENTS];
   double middle = 0.5 * ((double)n - 1), scale = 1.0 / (double)n;
@@ -111,6 +116,11 @@ FAST void lbr_phasor_moments(const double *y, size_t n, double f,
     for (size_t p = 0; p < LBR_PHASOR_MOMENTS; p++)
       m[p] += times(CMPLX(re[p], im[p]), anchor);
   }
+}
+
+void lbr_phasor_moments(const double *y, size_t n, double f,
+                        double complex m[LBR_PHASOR_MOMENTS]) {
+  moments_at(y, n, f, m);
 }
 
 void lbr_phasor_expand(const double complex m[LBR_PHASOR_MOMENTS], double v,

@@ -40,6 +40,7 @@ LBR_CHECKED lbr_status lbr_tracker_new(const double *w, size_t n,
 void lbr_tracker_free(lbr_tracker *tracker); /* NULL is fine */
 
 /* Reads every line of record x (n samples) into tones (count). */
-void lbr_tracker_run(lbr_tracker *tracker, const double *x, lbr_measured *tones);
+void lbr_tracker_run(lbr_tracker *tracker, const double *x,
+                     lbr_measured *tones);
 
 #endif

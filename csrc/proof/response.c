@@ -29,7 +29,8 @@ static lbr_status fill(lbr_response *r, const double *w) {
       (double complex *)lbr_transform_buffer(2 * (padded / 2 + 1));
   r->grid = lbr_alloc(r->points, sizeof *r->grid);
   lbr_status status = LBR_NO_MEMORY;
-  if (scratch && bins && r->grid) status = lbr_transform_get(padded, &transform);
+  if (scratch && bins && r->grid)
+    status = lbr_transform_get(padded, &transform);
   if (status == LBR_OK) {
     lbr_transform_windowed(transform, w, NULL, r->n, scratch, bins);
     double scale = 1 / creal(bins[0]), middle = 0.5 * ((double)r->n - 1);
