@@ -239,7 +239,9 @@ static int proof_replay(lua_State *L) {
   uint64_t seed = check_key(L, 2), trial = check_key(L, 3);
   int noise = lua_toboolean(L, 4);
   need_bench(L, h);
-  lbr_trial_run(h->bench, seed, trial, noise, h->outcomes);
+  lbr_status status =
+      lbr_trial_run(h->bench, seed, trial, noise, h->outcomes);
+  if (status != LBR_OK) return lbr_raise(L, status, "replay");
   return push_replay(L, h, noise ? h->bench->noisy : h->bench->clean);
 }
 

@@ -139,8 +139,9 @@ static void set_ends(climb *c, double own_amplitude) {
 
 /* Start 0: all in the middle; 1 and 2: all at one end; then random. */
 static void set_start(climb *c, size_t start, uint64_t seed) {
-  lbr_draw d = lbr_draw_start(seed, 64 * (2 * c->aim.line + start) +
-                                        (c->aim.side > 0 ? 32 : 0));
+  uint64_t attack = 2 * c->aim.line + (c->aim.side > 0);
+  lbr_draw d = lbr_draw_start(seed, STARTS * attack + start,
+                              LBR_PURPOSE_SEARCH);
   for (size_t i = 0; i < c->n_knobs; i++) {
     double place = start == 0 ? 0 : start == 1 ? 1 : start == 2 ? -1 : 0;
     if (start > 2) place = lbr_draw_spread(&d);

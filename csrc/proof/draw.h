@@ -1,18 +1,18 @@
-/* Keyed random numbers: number `index` of trial `trial` under seed `seed`, no
- * matter what was drawn before or by whom. */
+/* The numbers of a trial, drawn one after the other from a keyed stream: they
+ * depend on seed, trial and purpose alone. */
 #ifndef LBR_PROOF_DRAW_H
 #define LBR_PROOF_DRAW_H
 
-#include <stdint.h>
+#include "base/random.h"
 
 typedef struct lbr_draw {
-  uint64_t key;   /* made of seed and trial */
+  lbr_key key;
   uint64_t index; /* the next number to be drawn */
 } lbr_draw;
 
-lbr_draw lbr_draw_start(uint64_t seed, uint64_t trial);
+lbr_draw lbr_draw_start(uint64_t seed, uint64_t trial, lbr_purpose purpose);
 
-/* Uniform in [0, 1). */
+/* Uniform in (0, 1). */
 double lbr_draw_unit(lbr_draw *draw);
 
 /* In [-1, 1]: uniform, but one time in four at an end. */

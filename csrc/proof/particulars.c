@@ -37,14 +37,15 @@ void lbr_particulars_free(lbr_particulars *p) {
   free(p);
 }
 
-/* Sources of one driver wander together: depth and phase are the driver's,
- * drawn with a key of their own so that order does not matter. */
+#define WANDER_NUMBERS ((uint64_t)1 << 32) /* where theirs begin */
+
+/* Sources of one driver wander together: depth and phase are the driver's. */
 static void draw_wander(const lbr_proof *proof, uint64_t seed, uint64_t trial,
                         lbr_particulars *p) {
   for (size_t i = 0; i < proof->scene->n_sources; i++) {
     const lbr_source *s = &proof->scene->sources[i];
-    lbr_draw d = lbr_draw_start(~seed, trial);
-    d.index = 4 * (uint64_t)s->driver;
+    lbr_draw d = lbr_draw_start(seed, trial, LBR_PURPOSE_TRIAL);
+    d.index = WANDER_NUMBERS + 4 * (uint64_t)s->driver;
     double depth = fabs(lbr_draw_spread(&d));
     p->actual[i].wander = depth * s->wander;
     p->actual[i].wander_phase = TAU * lbr_draw_unit(&d);
@@ -55,7 +56,7 @@ void lbr_particulars_draw(const lbr_proof *proof, uint64_t seed,
                           uint64_t trial, lbr_particulars *p) {
   const lbr_scene *scene = proof->scene;
   const lbr_front_end *front = proof->front;
-  lbr_draw d = lbr_draw_start(seed, trial);
+  lbr_draw d = lbr_draw_start(seed, trial, LBR_PURPOSE_TRIAL);
   p->timebase = front->timebase * lbr_draw_spread(&d);
   p->accuracy = front->accuracy * lbr_draw_spread(&d);
   p->offset = scene->offset * lbr_draw_spread(&d);

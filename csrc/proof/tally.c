@@ -49,9 +49,8 @@ void lbr_tallier_free(lbr_tallier *t) {
 
 static lbr_status run_one(void *context, size_t task, unsigned worker) {
   lbr_tallier *t = context;
-  lbr_trial_run(t->benches[worker], t->seed, t->first + task, t->noise,
-                t->outcomes + task * t->proof->scene->n_lines);
-  return LBR_OK;
+  return lbr_trial_run(t->benches[worker], t->seed, t->first + task, t->noise,
+                       t->outcomes + task * t->proof->scene->n_lines);
 }
 
 static void add(lbr_tally *tally, const lbr_outcome *o, uint64_t trial,

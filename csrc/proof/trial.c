@@ -86,17 +86,20 @@ void lbr_bench_read(lbr_bench *b, lbr_outcome *outcomes) {
     judge(b, i, reach, &outcomes[i]);
 }
 
-void lbr_trial_run(lbr_bench *b, uint64_t seed, uint64_t trial, int noise,
-                   lbr_outcome *outcomes) {
+lbr_status lbr_trial_run(lbr_bench *b, uint64_t seed, uint64_t trial,
+                         int noise, lbr_outcome *outcomes) {
   const lbr_proof *proof = b->proof;
   lbr_particulars_draw(proof, seed, trial, b->particulars);
   lbr_bench_read(b, outcomes);
-  if (!noise) return;
-  lbr_front_record(b->front, b->particulars, seed, trial, b->clean, b->noisy);
+  if (!noise) return LBR_OK;
+  lbr_status status =
+      lbr_front_record(b->front, b->particulars, seed, trial, b->noisy);
+  if (status != LBR_OK) return status;
   lbr_tracker_run(b->tracker, b->noisy, b->tones);
   for (size_t i = 0; i < proof->scene->n_lines; i++) {
     const lbr_claim *claim = &proof->claims[i];
     double shift = b->tones[i].amplitude / claim->gain - outcomes[i].read;
     outcomes[i].deviation = claim->sigma > 0 ? shift / claim->sigma : 0;
   }
+  return LBR_OK;
 }

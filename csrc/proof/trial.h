@@ -34,7 +34,8 @@ void lbr_bench_read(lbr_bench *bench, lbr_outcome *outcomes);
 
 /* Trial `trial` of `seed`: draws, makes, reads; with noise also the record as
  * the digitizer gives it. */
-void lbr_trial_run(lbr_bench *bench, uint64_t seed, uint64_t trial, int noise,
-                   lbr_outcome *outcomes);
+LBR_CHECKED lbr_status lbr_trial_run(lbr_bench *bench, uint64_t seed,
+                                     uint64_t trial, int noise,
+                                     lbr_outcome *outcomes);
 
 #endif
