@@ -12,6 +12,12 @@ local function compile(entry)
   return assert(load(source, "@" .. entry.file:gsub("^%./", ""), "t", env))
 end
 
+-- Where it went wrong, without the frames of the test runner below it.
+local function explain(message)
+  local frames = debug.traceback(message, 2)
+  return (frames:gsub("\n\t%[C%]: in function 'xpcall'.*$", ""))
+end
+
 describe("usage example of", function()
   for _, page in ipairs(docstrings.pages(".", core)) do
     for _, entry in ipairs(page.entries) do
@@ -19,7 +25,7 @@ describe("usage example of", function()
         it(entry.name, function()
           local chunk = compile(entry)
           local started = core.base.clock()
-          local ok, message = xpcall(chunk, debug.traceback, lb, core)
+          local ok, message = xpcall(chunk, explain, lb, core)
           assert(ok, message)
           assert(core.base.clock() - started < 2, "an example takes less than a moment")
         end)
