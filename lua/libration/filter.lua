@@ -3,26 +3,10 @@
 -- for its gain. It takes part wherever a filter's description is asked for.
 
 local core = require "libration.core"
+local fields = require "libration.digitizer.fields"
+local options = require "libration.options"
 
 local M = {}
-
-local fields = {
-  shape = "string", order = "number", corner = "number", corner_of_rate = "boolean",
-  ripple_db = "number", stop_db = "number", points = "table", flatness = "number",
-}
-local field_names = "shape, order, corner, corner_of_rate, ripple_db, stop_db, points, flatness"
-
--- Which fields a shape is made of, besides shape and flatness.
-local poles = { order = true, corner = true, corner_of_rate = true }
-local of_shape = {
-  none = {},
-  butterworth = poles,
-  bessel = poles,
-  chebyshev = { order = true, corner = true, corner_of_rate = true, ripple_db = true },
-  elliptic = { order = true, corner = true, corner_of_rate = true, ripple_db = true,
-               stop_db = true },
-  points = { points = true, corner_of_rate = true },
-}
 
 local Filter = {}
 Filter.__index = Filter
@@ -45,7 +29,7 @@ end
 -- @param rate number: sample rate, S/s; needed when the corner is a share of it
 -- @return number: |F(hz)|; 1 is the full pass band
 -- @usage
--- local f = lb.filter { shape = "butterworth", order = 4, corner = 100 }
+-- local f = lb.filter { shape = "butterworth", order = 4, corner = "100 Hz" }
 -- assert(math.abs(f:gain(100) ^ 2 - 0.5) < 1e-12)
 function Filter:gain(hz, rate)
   return core.filter.gain(designed(self), hz, rate)
@@ -56,7 +40,7 @@ end
 -- @param rate number: sample rate, S/s; needed when the corner is a share of it
 -- @return number: 20 lg |F(hz)|, dB; -math.huge where nothing passes
 -- @usage
--- local f = lb.filter { shape = "butterworth", order = 8, corner = 0.4, corner_of_rate = true }
+-- local f = lb.filter { shape = "butterworth", order = 8, corner = "0.4 rate" }
 -- assert(math.abs(f:gain_db(800, 1000) + 48.1649) < 1e-3)
 function Filter:gain_db(hz, rate)
   return 20 * math.log(core.filter.gain(designed(self), hz, rate), 10)
@@ -68,7 +52,7 @@ end
 -- @return number: real part
 -- @return number: imaginary part
 -- @usage
--- local f = lb.filter { shape = "butterworth", order = 2, corner = 100 }
+-- local f = lb.filter { shape = "butterworth", order = 2, corner = "100 Hz" }
 -- local re, im = f:response(100)
 -- assert(math.abs(re) < 1e-12 and math.abs(im + math.sqrt(0.5)) < 1e-12)
 function Filter:response(hz, rate)
@@ -83,7 +67,7 @@ end
 -- @return number: no gain in the interval is below this
 -- @return number: no gain in the interval is above this
 -- @usage
--- local f = lb.filter { shape = "bessel", order = 4, corner = 100 }
+-- local f = lb.filter { shape = "bessel", order = 4, corner = "100 Hz" }
 -- local low, high = f:range(50, 100)
 -- assert(math.abs(low ^ 2 - 0.5) < 1e-9 and high > low and high < 1)
 function Filter:range(hz1, hz2, rate)
@@ -95,7 +79,7 @@ end
 -- @param rate number: sample rate, S/s; needed when the corner is a share of it
 -- @return number: Hz; math.huge when the gain never settles below the level
 -- @usage
--- local f = lb.filter { shape = "butterworth", order = 8, corner = 1000 }
+-- local f = lb.filter { shape = "butterworth", order = 8, corner = "1000 Hz" }
 -- assert(math.abs(f:edge(1e-4) - 3162.28) < 0.01)
 function Filter:edge(level, rate)
   return core.filter.edge(designed(self), level, rate)
@@ -122,20 +106,14 @@ function Filter:__tostring()
   return table.concat(parts, ", ")
 end
 
-local function check_fields(spec)
-  for key, value in pairs(spec) do
-    if not fields[key] then
-      error(("filter: unknown field %s; a filter has %s"):format(tostring(key), field_names), 3)
-    elseif type(value) ~= fields[key] then
-      error(("filter: %s is %s; it must be a %s"):format(key, tostring(value), fields[key]), 3)
-    end
+-- What a person writes as what rooms exchange; all mistakes in one error.
+local function read(spec)
+  local mistakes = options.mistakes()
+  local filter = fields.filter()(spec, "", mistakes)
+  if mistakes.count > 0 then
+    error(mistakes:message "filter", 3)
   end
-  local allowed = of_shape[spec.shape]
-  for key in pairs(allowed and spec or {}) do
-    if not (allowed[key] or key == "shape" or key == "flatness") then
-      error(("filter: %s has no meaning for shape %s"):format(key, spec.shape), 3)
-    end
-  end
+  return filter
 end
 
 local function copy(spec)
@@ -148,29 +126,27 @@ local function copy(spec)
   return setmetatable(out, Filter)
 end
 
---- Makes a filter from its description.
+--- Makes a filter from its description, the same as in a digitizer.
 -- Butterworth and Bessel corners are where the power is halved; Chebyshev and elliptic corners
 -- are the edge of the ripple. A table of points is interpolated in dB over log frequency, flat
 -- outside. A misspelt, missing or meaningless field is an error that says what is valid.
 -- @param spec table: shape ("none", "butterworth", "chebyshev", "bessel", "elliptic", "points"),
---   order (1 to 16), corner (Hz, or a share of the rate with corner_of_rate = true), ripple_db
---   (chebyshev, elliptic), stop_db (elliptic), points = { { at =, db = }, ... } (Hz or share,
---   0 dB passes), flatness (relative, stated deviation in the pass band)
+--   order (1 to 16), corner ("10 kHz" or "0.4 rate"), ripple (dB,
+--   chebyshev and elliptic), stop (dB, elliptic), points = { { "1 kHz", "-0.1 dB" }, ... } (0 dB
+--   passes), flatness (relative, the deviation stated for the pass band); or the filter of a
+--   digitizer
 -- @return table: the filter, with methods gain, gain_db, response, range, edge
 -- @usage
--- local f = lb.filter { shape = "elliptic", order = 6, corner = 1000, ripple_db = 0.1,
---   stop_db = 80 }
+-- local f = lb.filter { shape = "elliptic", order = 6, corner = "1 kHz", ripple = "0.1 dB",
+--   stop = "80 dB" }
 -- assert(math.abs(f:gain_db(2000) + 66.21) < 0.01)
 function M.new(spec)
-  if type(spec) ~= "table" then
-    error(("filter: the description is a table, not %s"):format(type(spec)), 2)
-  end
-  check_fields(spec)
-  local ok, message = pcall(core.filter.prepare, spec)
+  local filter = copy(type(spec) == "table" and spec.corner_of_rate ~= nil and spec or read(spec))
+  local ok, message = pcall(designed, filter)
   if not ok then
     error("filter: " .. (message:match("^bad argument.-%((.*)%)$") or message), 2)
   end
-  return copy(spec)
+  return filter
 end
 
 M.Filter = Filter
