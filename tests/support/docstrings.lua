@@ -256,8 +256,7 @@ end
 
 -- Folders whose modules are public; those of other folders serve the module
 -- that the folder is named after.
-local public_folders = { libration = true, ["libration/study"] = true, ["libration/rig"] = true,
-                         ["libration/report"] = true }
+local public_folders = { libration = true }
 
 --- All pages: Lua modules first, then the C module.
 function M.pages(root, core)
