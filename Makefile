@@ -52,8 +52,17 @@ test: all probe ## run the whole suite, spec files side by side
 CLANG_COMPLEX = '-DCMPLX(re,im)=__builtin_complex((double)(re),(double)(im))' \
   '-DCMPLXL(re,im)=__builtin_complex((long double)(re),(long double)(im))'
 
-lint-c:
-	$(CLANG) -fsyntax-only $(CLANG_COMPLEX) $(LANGUAGE) $(WARN) $(INCLUDE) $(SOURCES)
+LINTED := $(SOURCES:csrc/%.c=$(BUILD)/lint/%.ok)
+
+lint-c: $(LINTED)
+
+$(BUILD)/lint/%.ok: csrc/%.c
+	@mkdir -p $(@D)
+	$(CLANG) -fsyntax-only -MMD -MP -MF $(@:.ok=.d) -MT $@ $(CLANG_COMPLEX) \
+	  $(LANGUAGE) $(WARN) $(INCLUDE) $<
+	@touch $@
+
+-include $(LINTED:.ok=.d)
 
 lint: all lint-c ## all checks of the sources: both compilers' warnings, Lua, arrows, words
 	luacheck -q lua tests $(LUA_SCRIPTS) $(wildcard examples)

@@ -151,6 +151,15 @@ describe("docstring rules", function()
     end
   end)
 
+  it("tell classes that are handed out, which have a name, from the others", function()
+    assert.are.equal("", complaints("--- Purpose.\nlocal Part = {}\nfunction Part:f()\nend\n"))
+    for _, class in ipairs { 'local Part = { __name = "x" }\n',
+                             'local Part = {}\nPart.__name = "x"\n' } do
+      assert.has_match("Part:f has no docstring",
+        complaints("--- Purpose.\n" .. class .. "function Part:f()\nend\n"), 1, true)
+    end
+  end)
+
   it("leave local functions and names with an underscore alone", function()
     assert.are.equal("", complaints("--- Purpose.\nlocal M = {}\nlocal function a() end\n"
       .. "function M._b()\nend\nfunction M:__tostring()\nend\nreturn M, a\n"))

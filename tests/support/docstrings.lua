@@ -133,9 +133,27 @@ local function exported(lines)
   return names
 end
 
+-- Tables of a file whose functions nobody outside sees: local classes that
+-- have no __name.
+local function private_classes(text)
+  local private = {}
+  for name in text:gmatch("\nlocal (%u[%w_]+)%s*=%s*{") do
+    private[name] = true
+  end
+  for name, body in text:gmatch("\nlocal (%u[%w_]+)%s*=%s*(%b{})") do
+    if body:match("__name%s*=") or text:match("\n" .. name .. "%.__name%s*=")
+        or text:match("\nreturn " .. name .. "%s") then
+      private[name] = nil
+    end
+  end
+  private.M = nil
+  return private
+end
+
 --- The page of one Lua module.
 function M.lua_page(path, module)
-  local lines = tree.lines(tree.read(path))
+  local text = tree.read(path)
+  local lines, private = tree.lines(text), private_classes(text)
   local short = module:match("([^.]+)$")
   local entries, aliases = {}, exported(lines)
   for number, line in ipairs(lines) do
@@ -143,7 +161,7 @@ function M.lua_page(path, module)
     if hidden then
       name = aliases[name]
     end
-    if name and is_public(name) then
+    if name and is_public(name) and not private[name:match("^[%w_]+")] then
       local shown = name:gsub("^M([.:])", short .. "%1")
       entries[#entries + 1] = lua_entry(lines, number, path, shown, lua_block_above(lines, number))
     end
