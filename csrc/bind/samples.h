@@ -7,6 +7,7 @@
 #include "bind/bind.h"
 
 #define LBR_SAMPLES_CLASS "libration.samples"
+#define LBR_RAW_CLASS "libration.raw"
 
 typedef struct lbr_view {
   double *data; /* first sample of the view */
@@ -17,7 +18,26 @@ typedef struct lbr_view {
  * had.  The pointer stays valid while the view is reachable from Lua. */
 double *lbr_push_samples(lua_State *L, size_t n);
 
+/* The same with whatever the memory held: the caller writes every sample. */
+double *lbr_push_unset_samples(lua_State *L, size_t n);
+
 /* Argument `arg` as samples; raises an argument error otherwise. */
 const double *lbr_check_samples(lua_State *L, int arg, size_t *n);
+
+/* The same for a function that writes into them. */
+double *lbr_check_writable_samples(lua_State *L, int arg, size_t *n);
+
+/* Arguments first and last (both may be absent, negative ones count from the
+ * end) as a range of a sequence of n: *from counts from 0, *count may be 0.
+ * Raises when they leave 1 .. n. */
+void lbr_check_range(lua_State *L, int first, int last, size_t n, size_t *from,
+                     size_t *count);
+
+/* Methods that live in samples_math.c, NULL-ended, and their metamethods. */
+extern const luaL_Reg lbr_samples_math_methods[];
+extern const luaL_Reg lbr_samples_math_meta[];
+
+/* Registers the raw class; its functions go into the table at the top. */
+void lbr_open_raw(lua_State *L);
 
 #endif

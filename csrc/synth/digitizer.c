@@ -73,7 +73,8 @@ static lbr_tone at_converter(const lbr_record_model *m,
     double c0 = cos(t->swing_phase);
     out.swing = t->swing_hz / true_rate;
     out.beat = 1 / (t->swing_s * true_rate);
-    out.swing_phase = t->swing_phase + TURN * whole_turns_off(late / t->swing_s);
+    out.swing_phase =
+        t->swing_phase + TURN * whole_turns_off(late / t->swing_s);
     turns += t->swing_hz * t->swing_s / TURN * (c0 - cos(out.swing_phase));
   }
   if (m->filter && m->filter->shape != LBR_FILTER_NONE) {

@@ -7,13 +7,11 @@
 
 #include "base/checked.h"
 #include "base/cycles.h"
-#include "base/workers.h"
 #include "synth/bank.h"
 
 #define BATCH 64     /* tones whose phases are held at once */
 #define ABREAST 4    /* blocks computed together */
 #define HALF (LBR_TONE_BLOCK / 2)
-#define TASK (64 * LBR_TONE_BLOCK) /* samples of one task */
 #define ALIGNMENT 64
 
 typedef double vec __attribute__((vector_size(LBR_TILE * sizeof(double))));
@@ -250,26 +248,4 @@ void lbr_bank_add(const lbr_bank *bank, uint64_t first, double *out,
   lbr_bank_add_derivative(bank, 0, first, out, n);
   for (size_t t = bank->steady; t < bank->count; t++)
     lbr_ready_add(&bank->ready[t], first, NULL, out, n);
-}
-
-typedef struct spread {
-  const lbr_bank *bank;
-  uint64_t first;
-  double *out;
-  size_t n;
-} spread;
-
-static lbr_status add_task(void *context, size_t task, unsigned worker) {
-  const spread *s = context;
-  size_t from = task * TASK, left = s->n - from;
-  (void)worker;
-  lbr_bank_add(s->bank, s->first + from, s->out + from,
-               left < TASK ? left : TASK);
-  return LBR_OK;
-}
-
-lbr_status lbr_bank_add_threads(const lbr_bank *bank, uint64_t first,
-                                double *out, size_t n, unsigned workers) {
-  spread s = {bank, first, out, n};
-  return lbr_workers_run(add_task, &s, n / TASK + (n % TASK != 0), workers);
 }

@@ -6,7 +6,7 @@
  * with |error| <= 1e-12 of the sum of amplitudes for n < 2^40: phases are
  * reduced modulo one cycle in 128-bit fixed point.  Samples are computed in
  * blocks that start at multiples of LBR_TONE_BLOCK, so that x[n] has the same
- * bits whatever is asked for around it, on any number of threads.
+ * bits whatever is asked for around it.
  */
 #ifndef LBR_SYNTH_TONES_H
 #define LBR_SYNTH_TONES_H
@@ -59,10 +59,5 @@ void lbr_bank_add_derivative(const lbr_bank *bank, int k, uint64_t first,
 void lbr_bank_add_shifted(const lbr_bank *bank, uint64_t first,
                           const double *shift, double *out, size_t n,
                           int moving_only);
-
-/* lbr_bank_add on several threads (0: one per core); the same bits. */
-LBR_CHECKED lbr_status lbr_bank_add_threads(const lbr_bank *bank,
-                                            uint64_t first, double *out,
-                                            size_t n, unsigned workers);
 
 #endif
