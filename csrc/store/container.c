@@ -26,6 +26,7 @@ static uint64_t little(const unsigned char *bytes, int n) {
 
 /* What a walk through the chunks has found so far. */
 typedef struct walk {
+  lbr_layout *layout;   /* filled when the data have been checked */
   uint64_t frame_bytes; /* from the fmt chunk, 0: not seen */
   uint64_t data_64;     /* from the ds64 chunk */
   bool has_64;
@@ -48,6 +49,7 @@ static lbr_status check_data(source s, const walk *w, int64_t start,
                        "number of frames of %llu bytes",
                        (unsigned long long)claimed,
                        (unsigned long long)w->frame_bytes);
+  *w->layout = (lbr_layout){start, (int64_t)claimed, (int64_t)w->frame_bytes};
   return LBR_OK;
 }
 
@@ -56,8 +58,9 @@ static lbr_status no_data(lbr_why *why) {
 }
 
 /* RIFF and RF64: chunks of id, 32-bit size, data, padded to even length. */
-static lbr_status check_riff(source s, bool wide, lbr_why *why) {
-  walk w = {0, 0, false};
+static lbr_status check_riff(source s, bool wide, lbr_layout *layout,
+                             lbr_why *why) {
+  walk w = {layout, 0, 0, false};
   int64_t at = 12;
   for (int i = 0; i < MOST_CHUNKS; i++) {
     unsigned char head[8], body[24];
@@ -81,8 +84,8 @@ static lbr_status check_riff(source s, bool wide, lbr_why *why) {
 
 /* Wave64: 16-byte identifiers that begin with the RIFF names, 64-bit sizes
  * that count the 24 bytes of the chunk's own head, padded to 8 bytes. */
-static lbr_status check_wave64(source s, lbr_why *why) {
-  walk w = {0, 0, true};
+static lbr_status check_wave64(source s, lbr_layout *layout, lbr_why *why) {
+  walk w = {layout, 0, 0, true};
   int64_t at = 40;
   for (int i = 0; i < MOST_CHUNKS; i++) {
     unsigned char head[24], body[16];
@@ -99,15 +102,17 @@ static lbr_status check_wave64(source s, lbr_why *why) {
   return no_data(why);
 }
 
-lbr_status lbr_container_check(int fd, int64_t size, lbr_why *why) {
+lbr_status lbr_container_check(int fd, int64_t size, lbr_layout *layout,
+                               lbr_why *why) {
   source s = {fd, size};
   unsigned char head[12];
+  *layout = (lbr_layout){0, 0, 0};
   if (!read_at(s, 0, head, sizeof head))
     return lbr_because(why, LBR_FORMAT, "is too short for a sound file");
-  if (memcmp(head, "RIFF", 4) == 0) return check_riff(s, false, why);
+  if (memcmp(head, "RIFF", 4) == 0) return check_riff(s, false, layout, why);
   if (memcmp(head, "RF64", 4) == 0 || memcmp(head, "BW64", 4) == 0)
-    return check_riff(s, true, why);
-  if (memcmp(head, "riff", 4) == 0) return check_wave64(s, why);
+    return check_riff(s, true, layout, why);
+  if (memcmp(head, "riff", 4) == 0) return check_wave64(s, layout, why);
   if (memcmp(head, "OggS", 4) == 0) return lbr_ogg_check(fd, size, why);
   return LBR_OK;
 }

@@ -10,6 +10,7 @@
 
 #include "base/checked.h"
 #include "store/container.h"
+#include "store/plain.h"
 
 #define BLOCK_SAMPLES 16384 /* of all channels, read at once */
 #define MOST_EXPANSION 65536 /* frames that one stored byte can stand for */
@@ -17,8 +18,9 @@
 struct lbr_sound {
   SNDFILE *file;
   lbr_sound_facts facts;
-  int64_t at; /* next frame */
-  int shift;  /* from the 32-bit codes of the library to those stored */
+  int64_t at;      /* next frame */
+  lbr_plain plain; /* how to read without the library, where that can be */
+  int shift;       /* from the 32-bit codes of the library to those stored */
   size_t block_frames;
   union {
     int *codes;
@@ -100,14 +102,15 @@ static lbr_status make_block(lbr_sound *s) {
 
 /* Opened without waiting, so that a FIFO cannot hold us up. */
 static lbr_status open_regular(const char *path, int *fd, int64_t *bytes,
-                               lbr_why *why) {
+                               lbr_layout *layout, lbr_why *why) {
   struct stat facts;
   *fd = open(path, O_RDONLY | O_NONBLOCK | O_CLOEXEC | O_NOCTTY);
   if (*fd < 0) return lbr_because_errno(why, errno);
   if (fstat(*fd, &facts) != 0) return lbr_because_errno(why, errno);
   *bytes = facts.st_size;
   lbr_status status = lbr_regular(&facts, why);
-  return status == LBR_OK ? lbr_container_check(*fd, *bytes, why) : status;
+  if (status != LBR_OK) return status;
+  return lbr_container_check(*fd, *bytes, layout, why);
 }
 
 /* Compressed files can only be believed after their last frame was read. */
@@ -127,8 +130,20 @@ static lbr_status try_last_frame(lbr_sound *s, lbr_why *why) {
   return lbr_sound_seek(s, 0, why);
 }
 
+/* Samples are read in place only where both readings of the headers agree. */
+static void find_plain(lbr_sound *s, int fd, const lbr_layout *layout) {
+  const lbr_sound_facts *f = &s->facts;
+  lbr_plain plain = {fd, layout->data_at, (size_t)f->channels, f->bits,
+                     f->is_integer};
+  bool agree = layout->frame_bytes == (int64_t)f->channels * f->bits / 8 &&
+               layout->frame_bytes > 0 &&
+               layout->data_bytes / layout->frame_bytes == f->frames;
+  if (agree && lbr_plain_can(&plain)) s->plain = plain;
+}
+
 /* The library takes the descriptor over, and closes it also on failure. */
-static lbr_status start(lbr_sound *s, int fd, int64_t bytes, lbr_why *why) {
+static lbr_status start(lbr_sound *s, int fd, int64_t bytes,
+                        const lbr_layout *layout, lbr_why *why) {
   SF_INFO info = {0};
   if (lseek(fd, 0, SEEK_SET) != 0) {
     int number = errno;
@@ -143,6 +158,7 @@ static lbr_status start(lbr_sound *s, int fd, int64_t bytes, lbr_why *why) {
   if (status != LBR_OK) return status;
   status = make_block(s);
   if (status != LBR_OK) return lbr_because(why, status, "does not fit memory");
+  find_plain(s, fd, layout);
   return try_last_frame(s, why);
 }
 
@@ -150,7 +166,8 @@ lbr_status lbr_sound_open(const char *path, lbr_sound **out,
                           lbr_sound_facts *facts, lbr_why *why) {
   int fd = -1;
   int64_t bytes = 0;
-  lbr_status status = open_regular(path, &fd, &bytes, why);
+  lbr_layout layout;
+  lbr_status status = open_regular(path, &fd, &bytes, &layout, why);
   if (status != LBR_OK) {
     if (fd >= 0) close(fd);
     return status;
@@ -160,7 +177,7 @@ lbr_status lbr_sound_open(const char *path, lbr_sound **out,
     close(fd);
     return lbr_because(why, LBR_NO_MEMORY, "does not fit memory");
   }
-  status = start(s, fd, bytes, why);
+  status = start(s, fd, bytes, &layout, why);
   if (status != LBR_OK) {
     lbr_sound_close(s);
     return status;
@@ -192,6 +209,25 @@ static bool fill(lbr_sound *s, size_t frames) {
   return got == (sf_count_t)frames && sf_error(s->file) == SF_ERR_NO_ERROR;
 }
 
+static lbr_status damaged(const lbr_sound *s, size_t frames, lbr_why *why) {
+  return lbr_because(why, LBR_FORMAT, "is damaged in the %zu frames from %lld "
+                     "on", frames, (long long)s->at);
+}
+
+static lbr_status read_decoded(lbr_sound *s, size_t count, size_t wanted,
+                               const int *channel, double *const *out,
+                               lbr_why *why) {
+  for (size_t done = 0; done < count;) {
+    size_t left = count - done;
+    size_t frames = left < s->block_frames ? left : s->block_frames;
+    if (!fill(s, frames)) return damaged(s, frames, why);
+    spread(s, frames, done, wanted, channel, out);
+    s->at += (int64_t)frames;
+    done += frames;
+  }
+  return LBR_OK;
+}
+
 lbr_status lbr_sound_read(lbr_sound *s, size_t count, size_t wanted,
                           const int *channel, double *const *out,
                           lbr_why *why) {
@@ -202,17 +238,11 @@ lbr_status lbr_sound_read(lbr_sound *s, size_t count, size_t wanted,
   if (count > (uint64_t)(s->facts.frames - s->at))
     return lbr_because(why, LBR_DOMAIN, "has %lld frames from here, not %zu",
                        (long long)(s->facts.frames - s->at), count);
-  for (size_t done = 0; done < count;) {
-    size_t left = count - done;
-    size_t frames = left < s->block_frames ? left : s->block_frames;
-    if (!fill(s, frames))
-      return lbr_because(why, LBR_FORMAT,
-                         "is damaged in the %zu frames from %lld on", frames,
-                         (long long)s->at);
-    spread(s, frames, done, wanted, channel, out);
-    s->at += (int64_t)frames;
-    done += frames;
-  }
+  if (s->plain.data_at == 0)
+    return read_decoded(s, count, wanted, channel, out, why);
+  if (lbr_plain_read(&s->plain, s->at, count, wanted, channel, out) != LBR_OK)
+    return damaged(s, count, why);
+  s->at += (int64_t)count;
   return LBR_OK;
 }
 
@@ -220,7 +250,8 @@ lbr_status lbr_sound_seek(lbr_sound *s, int64_t frame, lbr_why *why) {
   if (frame < 0 || frame > s->facts.frames)
     return lbr_because(why, LBR_DOMAIN, "has frames 0 to %lld, not %lld",
                        (long long)s->facts.frames, (long long)frame);
-  if (frame != s->at && sf_seek(s->file, frame, SEEK_SET) != frame)
+  if (s->plain.data_at == 0 && frame != s->at &&
+      sf_seek(s->file, frame, SEEK_SET) != frame)
     return lbr_because(why, LBR_FORMAT, "cannot be wound to frame %lld",
                        (long long)frame);
   s->at = frame;
