@@ -7,7 +7,7 @@
 #include "window/cosine.h"
 
 #define ROW(name, title, source, terms, ...)                        \
-  {name, title, source, terms, {__VA_ARGS__}, NULL, 0, 0, 0, NULL, NULL}
+  {name, title, source, terms, {__VA_ARGS__}, NULL, 0, 0, 0, NULL, NULL, NULL}
 
 static const lbr_window_shape rows[] = {
     ROW("rectangular", "Rectangular",

@@ -13,7 +13,7 @@ static lbr_status fill(const lbr_window *window, double *out, size_t n) {
 }
 
 /* cos^p = 2^(1 - p) sum_j C(p, j) cos((p - 2 j) pi u), half of it at p = 2 j */
-static void expand(const lbr_window *window, lbr_series *out) {
+static lbr_status expand(const lbr_window *window, lbr_series *out) {
   size_t power = (size_t)lround(window->parameter);
   double term = ldexp(1, 1 - (int)power);
   for (size_t j = 0; 2 * j <= power; j++) {
@@ -26,8 +26,10 @@ static void expand(const lbr_window *window, lbr_series *out) {
   }
   out->whole.terms = power % 2 ? 0 : power / 2 + 1;
   out->half.terms = power % 2 ? (power + 1) / 2 : 0;
+  out->misfit = 0;
+  return LBR_OK;
 }
 
 const lbr_window_shape lbr_cosine_power_shape = {
     "cosine_power", "Power of a cosine lobe", "Harris 1978, Table I", 0, {0},
-    "power", 1, 12, 1, fill, expand};
+    "power", 1, 12, 1, fill, expand, NULL};

@@ -76,8 +76,7 @@ static int settled(const walk *w, size_t first, double high, int slope,
   if (w->point % LBR_GRID || w->point > w->last) return 0;
   lbr_model_beyond(w->kernel, (double)w->point / LBR_GRID, &value, &steep);
   *bound = slope ? steep : value;
-  return *bound <= high || (w->point - first > SEARCH * LBR_GRID &&
-                            *bound < INFINITY);
+  return *bound <= high || w->point - first > SEARCH * LBR_GRID;
 }
 
 static void range_over(const lbr_kernel *k, stretch over, double *low,
@@ -115,7 +114,7 @@ double lbr_kernel_gain(const lbr_kernel *k, double x) {
   stretch at[3];
   fold_interval(k->n, x, x, at);
   double real = lbr_model_real(k, at[0].from);
-  double edge = k->series.edge * lbr_sin_pi(at[0].from);
+  double edge = k->edge * lbr_sin_pi(at[0].from);
   return hypot(real, edge);
 }
 

@@ -39,18 +39,26 @@ static spread spread_of(const lbr_series *s, size_t points) {
   return sum;
 }
 
+/* Closed forms serve all lengths for which the samples have no short series. */
+static int is_closed(const lbr_kernel *k, size_t n) {
+  return k->window.shape->closed && (n == 0 || n > LBR_SERIES_EXACT);
+}
+
 static void bound_derivatives(lbr_kernel *k) {
   const double h = 1.0 / LBR_GRID, turn = 2 * LBR_PI, half = LBR_PI;
   int probe = k->n == 0 || k->n > PROBE;
-  spread sum = spread_of(&k->series, probe ? PROBE : k->n);
+  int closed = is_closed(k, k->n);
+  /* shapes in closed form fall from the middle: no wider than a rectangle */
+  spread sum = closed ? (spread){1, 0.25, 1.0 / 448}
+                      : spread_of(&k->series, probe ? PROBE : k->n);
   double more = probe ? 1.25 : 1.0 + 1e-9;
-  double edge = fabs(k->series.edge);
+  double edge = fabs(k->edge), misfit = closed ? 0 : k->series.misfit;
   double real = pow(turn, 6) * (sum.sixth * more + 1e-6);
-  double sixth = real + edge * pow(half, 6);
+  double sixth = real + 2 * edge * pow(half, 6);
   k->sixth = sixth;
-  k->value_slack = sixth * pow(h, 6) / 46080 + k->misfit + 2e-13;
-  k->slope_slack = 2.88e-4 * sixth * pow(h, 5) + LBR_PI * k->misfit + 1e-11;
-  k->bend_slack = real * pow(h, 4) / 96 + 10 * k->misfit + 1e-9;
+  k->value_slack = sixth * pow(h, 6) / 46080 + misfit + 2e-13;
+  k->slope_slack = 2.88e-4 * sixth * pow(h, 5) + LBR_PI * misfit + 1e-11;
+  k->bend_slack = real * pow(h, 4) / 96 + 10 * misfit + 1e-9;
   k->slope_most = turn * (sum.first * more + 1e-6) + edge * half;
   k->absolute = sum.none;
 }
@@ -74,30 +82,45 @@ static void take_terms(lbr_kernel *k) {
   memcpy(k->series.whole.shape, shape->terms_of, sizeof shape->terms_of);
 }
 
-/* The series of the window at length n: its own terms, an exact expansion, or
- * for short records the transform of the samples. */
+/* The series of the window at length n: its own terms, an expansion for any
+ * length, or for short records the transform of the samples. */
 static lbr_status take_series(lbr_kernel *k, size_t n) {
   const lbr_window_shape *shape = k->window.shape;
-  k->misfit = 0;
+  int own = shape->terms || (shape->expand && (n == 0 || n > LBR_SERIES_EXACT));
+  if (own && k->expanded) return LBR_OK;
+  k->expanded = own;
+  k->series.misfit = 0;
   if (shape->terms) {
     take_terms(k);
     return LBR_OK;
   }
-  if (n == 0 || n > LBR_SERIES_EXACT) {
-    if (!shape->expand) return LBR_DOMAIN;
-    shape->expand(&k->window, &k->series);
-    return LBR_OK;
-  }
+  if (own) return shape->expand(&k->window, &k->series);
   lbr_status status = sample(k, n);
   if (status == LBR_OK) lbr_series_from_samples(&k->series, k->work, n);
   return status;
 }
 
-lbr_status lbr_kernel_resize(lbr_kernel *k, size_t n) {
-  if (n != 0 && n < 4) return LBR_DOMAIN;
+/* How the transform is had at length n. */
+static lbr_status take_transform(lbr_kernel *k, size_t n) {
+  const lbr_closed *closed = k->window.shape->closed;
+  if (is_closed(k, n)) {
+    if (n == 0 && !closed->limit) return LBR_DOMAIN;
+    k->edge = closed->edge(&k->window, n);
+    return LBR_OK;
+  }
   lbr_status status = take_series(k, n);
   if (status == LBR_OK) status = lbr_series_resize(&k->series, n);
-  if (status != LBR_OK) return status;
+  k->edge = k->series.edge;
+  return status;
+}
+
+lbr_status lbr_kernel_resize(lbr_kernel *k, size_t n) {
+  if (n != 0 && n < 4) return LBR_DOMAIN;
+  lbr_status status = take_transform(k, n);
+  if (status != LBR_OK) {
+    k->expanded = 0;
+    return status;
+  }
   k->n = n;
   k->peak = 0;
   bound_derivatives(k);
@@ -125,27 +148,41 @@ void lbr_kernel_free(lbr_kernel *k) {
 }
 
 void lbr_model_node(const lbr_kernel *k, size_t point, lbr_node *out) {
-  lbr_series_jet(&k->series, point, out->real);
-  double edge = k->series.edge;
+  if (is_closed(k, k->n))
+    k->window.shape->closed->jet(&k->window, k->n, (double)point / LBR_GRID,
+                                 out->real);
+  else
+    lbr_series_jet(&k->series, point, out->real);
   double sine = lbr_grid_sin(point), cosine = lbr_grid_sin(point + 8);
-  out->edge[0] = edge * sine;
-  out->edge[1] = edge * LBR_PI * cosine;
-  out->edge[2] = -edge * LBR_PI * LBR_PI * sine;
+  out->edge[0] = k->edge * sine;
+  out->edge[1] = k->edge * LBR_PI * cosine;
+  out->edge[2] = -k->edge * LBR_PI * LBR_PI * sine;
 }
 
 double lbr_model_real(const lbr_kernel *k, double x) {
-  return lbr_series_real(&k->series, x);
+  double jet[3];
+  if (!is_closed(k, k->n)) return lbr_series_real(&k->series, x);
+  k->window.shape->closed->jet(&k->window, k->n, x, jet);
+  return jet[0];
 }
 
 void lbr_model_beyond(const lbr_kernel *k, double x, double *value,
                       double *slope) {
-  double edge = fabs(k->series.edge);
-  lbr_series_beyond(&k->series, x, value, slope);
-  *value = hypot(*value, edge) + k->misfit;
-  *slope = hypot(*slope, edge * LBR_PI) + LBR_PI * k->misfit;
+  double edge = fabs(k->edge);
+  if (is_closed(k, k->n)) {
+    k->window.shape->closed->beyond(&k->window, k->n, x, value, slope);
+  } else {
+    lbr_series_beyond(&k->series, x, value, slope);
+    *value += k->series.misfit;
+    *slope += LBR_PI * k->series.misfit;
+  }
+  *value = fmin(hypot(*value, edge), k->absolute);
+  *slope = fmin(hypot(*slope, edge * LBR_PI), k->slope_most);
 }
 
 double lbr_kernel_noise_bandwidth(const lbr_kernel *k) {
+  if (is_closed(k, k->n))
+    return k->window.shape->closed->bandwidth(&k->window, k->n);
   return lbr_series_noise_bandwidth(&k->series);
 }
 

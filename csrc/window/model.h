@@ -4,6 +4,7 @@
 #define LBR_WINDOW_MODEL_H
 
 #include "window/cell.h"
+#include "window/closed.h"
 #include "window/kernel.h"
 #include "window/series.h"
 
@@ -11,13 +12,14 @@ struct lbr_kernel {
   lbr_window window;
   size_t n;           /* length, 0: limit */
   lbr_series series;  /* the transform, where the shape has a series */
-  double misfit;      /* most that the series is off the shape, |R| / R(0) */
+  double edge;        /* E / R(0) */
   double sixth;       /* bound of the sixth derivative of R / R(0) */
   double value_slack; /* remainder of a cell's quintics, and rounding */
   double slope_slack, bend_slack; /* the same for first, second derivative */
   double absolute;    /* sum |w| / |sum w| */
   double slope_most;  /* bound of |W'| / |W(0)| anywhere */
   double peak;        /* bound of |W| / |W(0)|, 0: not known yet */
+  int expanded;       /* the series is the shape's, good for any length */
   double *work;       /* samples, for shapes that need them */
   size_t work_size;   /* samples that fit */
 };

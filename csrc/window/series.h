@@ -40,6 +40,7 @@ typedef struct lbr_series {
   size_t n;          /* length, 0: limit */
   double m;          /* N / pi, 0 in the limit */
   double sum;        /* R(0) / N before the division */
+  double misfit;     /* most that the sum is off the shape, over its mean */
   double edge;       /* E / R(0): size of the imaginary part */
   lbr_poles whole;   /* shifts 0, 1, 2, ... */
   lbr_poles half;    /* shifts 1/2, 3/2, ... */

@@ -16,6 +16,7 @@
 typedef struct lbr_window lbr_window;
 
 struct lbr_series; /* window/series.h */
+struct lbr_closed; /* window/closed.h */
 
 typedef struct lbr_window_shape {
   const char *name;    /* "hann" */
@@ -27,9 +28,10 @@ typedef struct lbr_window_shape {
   double parameter_least, parameter_most, parameter_default;
   /* fills n periodic samples; NULL for cosine sums (common code) */
   lbr_status (*fill)(const lbr_window *window, double *out, size_t n);
-  /* writes the exact cosine series of the shape; NULL where there is none (or
-   * where it is terms_of itself) */
-  void (*expand)(const lbr_window *window, struct lbr_series *out);
+  /* one of these two for shapes with a fill: the cosine series of the shape,
+   * the same for every length; or the transform in closed form */
+  lbr_status (*expand)(const lbr_window *window, struct lbr_series *out);
+  const struct lbr_closed *closed;
 } lbr_window_shape;
 
 struct lbr_window {
