@@ -3,6 +3,7 @@
 #include <math.h>
 
 #define BLOCK LBR_PHASOR_BLOCK
+#define ROW 8   /* of the table: BLOCK is a multiple of it */
 #define LANES 8 /* independent partial sums: what vector units want */
 #define TAU 6.283185307179586476925286766559
 /* On static functions only: the linker would export the others. */
@@ -15,12 +16,40 @@ double complex lbr_phasor_at(double f, double t) {
   return CMPLX(cos(TAU * turns), -sin(TAU * turns));
 }
 
-static void fill_table(double f, double *restrict c, double *restrict s) {
-  for (size_t k = 0; k < BLOCK; k++) {
-    double complex z = lbr_phasor_at(f, (double)k);
-    c[k] = creal(z);
-    s[k] = cimag(z);
+/* Complex product without the library's care for infinities. */
+static inline double complex times(double complex a, double complex b) {
+  return CMPLX(creal(a) * creal(b) - cimag(a) * cimag(b),
+               creal(a) * cimag(b) + cimag(a) * creal(b));
+}
+
+void lbr_phasor_table(double f, double c[BLOCK], double s[BLOCK]) {
+  double complex near[ROW];
+  for (size_t k = 0; k < ROW; k++) near[k] = lbr_phasor_at(f, (double)k);
+  for (size_t row = 0; row < BLOCK; row += ROW) {
+    double complex far = lbr_phasor_at(f, (double)row);
+    for (size_t k = 0; k < ROW; k++) {
+      double complex z = times(far, near[k]);
+      c[row + k] = creal(z);
+      s[row + k] = cimag(z);
+    }
   }
+}
+
+void lbr_phasor_walk_start(lbr_phasor_walk *walk, double f, double start) {
+  walk->f = f;
+  walk->start = start;
+  walk->block = 0;
+  for (size_t k = 0; k < LBR_PHASOR_GROUP; k++)
+    walk->step[k] = lbr_phasor_at(f, (double)(k * BLOCK));
+}
+
+double complex lbr_phasor_walk_next(lbr_phasor_walk *walk) {
+  size_t in_group = walk->block % LBR_PHASOR_GROUP;
+  if (in_group == 0)
+    walk->base = lbr_phasor_at(
+        walk->f, walk->start + (double)(walk->block * BLOCK));
+  walk->block++;
+  return times(walk->base, walk->step[in_group]);
 }
 
 /* A full block against the table: sum y c and sum y s. */
@@ -48,24 +77,18 @@ static double complex tail_sum(const double *y, size_t n, const double *c,
   return CMPLX(re, im);
 }
 
-/* Complex product without the library's care for infinities. */
-static inline double complex times(double complex a, double complex b) {
-  return CMPLX(creal(a) * creal(b) - cimag(a) * cimag(b),
-               creal(a) * cimag(b) + cimag(a) * creal(b));
-}
-
 FAST static double complex sum_at(const double *y, size_t n, double f) {
   double c[BLOCK], s[BLOCK];
   double middle = 0.5 * ((double)n - 1);
   double complex sum = 0;
+  lbr_phasor_walk walk;
   size_t at = 0;
-  fill_table(f, c, s);
+  lbr_phasor_table(f, c, s);
+  lbr_phasor_walk_start(&walk, f, -middle);
   for (; at + BLOCK <= n; at += BLOCK)
-    sum += times(block_sum(y + at, c, s),
-                 lbr_phasor_at(f, (double)at - middle));
+    sum += times(block_sum(y + at, c, s), lbr_phasor_walk_next(&walk));
   if (at < n)
-    sum += times(tail_sum(y + at, n - at, c, s),
-                 lbr_phasor_at(f, (double)at - middle));
+    sum += times(tail_sum(y + at, n - at, c, s), lbr_phasor_walk_next(&walk));
   return sum;
 }
 
@@ -100,7 +123,9 @@ FAST static void moments_at(const double *y, size_t n, double f,
   double c[BLOCK], s[BLOCK], a[BLOCK], b[BLOCK], u[BLOCK];
   double re[LBR_PHASOR_MOMENTS], im[LBR_PHASOR_MOMENTS];
   double middle = 0.5 * ((double)n - 1), scale = 1.0 / (double)n;
-  fill_table(f, c, s);
+  lbr_phasor_walk walk;
+  lbr_phasor_table(f, c, s);
+  lbr_phasor_walk_start(&walk, f, -middle);
   for (size_t p = 0; p < LBR_PHASOR_MOMENTS; p++) m[p] = 0;
   for (size_t at = 0; at < n; at += BLOCK) {
     size_t count = n - at < BLOCK ? n - at : BLOCK;
@@ -112,7 +137,7 @@ FAST static void moments_at(const double *y, size_t n, double f,
       u[k] = (start + (double)k) * scale;
     }
     block_moments(a, b, u, re, im);
-    double complex anchor = lbr_phasor_at(f, start);
+    double complex anchor = lbr_phasor_walk_next(&walk);
     for (size_t p = 0; p < LBR_PHASOR_MOMENTS; p++)
       m[p] += times(CMPLX(re[p], im[p]), anchor);
   }

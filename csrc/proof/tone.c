@@ -8,15 +8,6 @@
 #define TAU 6.283185307179586476925286766559
 #define FAST __attribute__((target_clones("avx512f", "avx2", "default")))
 
-/* c + i s = exp(+ 2 pi i f k) for the k of a block. */
-static void fill_table(double f, double *c, double *s) {
-  for (size_t k = 0; k < BLOCK; k++) {
-    double complex z = lbr_phasor_at(-f, (double)k);
-    c[k] = creal(z);
-    s[k] = cimag(z);
-  }
-}
-
 /* y[k] += a c[k] - b s[k] */
 FAST static void add_block(double *restrict y, const double *restrict c,
                            const double *restrict s, double a, double b,
@@ -33,9 +24,11 @@ static void add_steady(const lbr_proof_tone *tone, double *x, size_t n) {
   double middle = 0.5 * ((double)n - 1);
   double re = tone->amplitude * cos(tone->phase);
   double im = tone->amplitude * sin(tone->phase);
-  fill_table(tone->frequency, c, s);
+  lbr_phasor_walk walk;
+  lbr_phasor_table(-tone->frequency, c, s);
+  lbr_phasor_walk_start(&walk, -tone->frequency, -middle);
   for (size_t at = 0; at < n; at += BLOCK) {
-    double complex z = lbr_phasor_at(-tone->frequency, (double)at - middle);
+    double complex z = lbr_phasor_walk_next(&walk);
     double a = re * creal(z) - im * cimag(z);
     double b = re * cimag(z) + im * creal(z);
     add_block(x + at, c, s, a, b, n - at < BLOCK ? n - at : BLOCK);
@@ -76,13 +69,15 @@ static void add_wandering(const lbr_proof_tone *tone, double *x, size_t n) {
   double middle = 0.5 * ((double)n - 1), slow = 1 / (double)n;
   double re = -tone->index / TAU * cos(tone->wander_phase);
   double im = -tone->index / TAU * sin(tone->wander_phase);
-  fill_table(slow, c, s);
+  lbr_phasor_walk walk;
+  lbr_phasor_table(-slow, c, s);
+  lbr_phasor_walk_start(&walk, -slow, -middle);
   for (size_t k = 0; k < BLOCK; k++)
     turns[k] = turns_of(tone->frequency, (double)k);
   for (size_t at = 0; at < n; at += BLOCK) {
     size_t count = n - at < BLOCK ? n - at : BLOCK;
     double t = (double)at - middle;
-    double complex z = lbr_phasor_at(-slow, t);
+    double complex z = lbr_phasor_walk_next(&walk);
     double start = turns_of(tone->frequency, t) + tone->phase / TAU;
     for (size_t k = 0; k < BLOCK; k++) y[k] = swing[k] = 0;
     add_block(swing, c, s, re * creal(z) - im * cimag(z),
