@@ -8,7 +8,7 @@
 
 local core = require "libration.core"
 local record = require "libration.record"
-local window = require "libration.window"
+local window = require("libration.window").window
 
 local M = {}
 
@@ -165,9 +165,19 @@ function record.Record:measure(plan, options)
   return M.measure(self, plan, options)
 end
 
+-- A value to the second significant digit of its uncertainty (JCGM 100:2008, 7.2.6).
+local function to_digits(value, uncertainty)
+  if not (uncertainty > 0 and uncertainty < math.huge) then
+    return ("%.6g"):format(value)
+  end
+  local places = 1 - math.floor(math.log(uncertainty, 10))
+  return places > 0 and places < 12 and ("%." .. places .. "f"):format(value)
+    or ("%.6g"):format(value)
+end
+
 local function hz_text(line)
   if not line.tracked then return ("%.6g (bin)"):format(line.hz) end
-  return line.hz_bound and ("%.6f +- %.2g"):format(line.hz, line.hz_bound)
+  return line.hz_bound and ("%s +- %.2g"):format(to_digits(line.hz, line.hz_bound), line.hz_bound)
     or ("%.6f"):format(line.hz)
 end
 
@@ -183,8 +193,8 @@ function M.text(m)
       "U (k=2)", "frequency, Hz"),
   }
   for _, l in ipairs(m.lines) do
-    rows[#rows + 1] = ("  %-20s %12.6g %11.3g %11.3g %11.3g  %s"):format(l.name, l.amplitude,
-      l.bound, l.standard, l.expanded, hz_text(l))
+    rows[#rows + 1] = ("  %-20s %12s %11.2g %11.2g %11.2g  %s"):format(l.name,
+      to_digits(l.amplitude, l.expanded), l.bound, l.standard, l.expanded, hz_text(l))
   end
   rows[#rows + 1] = ("worst: systematic bound and %g standard deviations; u: JCGM 100 style")
     :format(m.coverage)

@@ -7,7 +7,7 @@
 
 local core = require "libration.core"
 local record = require "libration.record"
-local window = require "libration.window"
+local window = require("libration.window").window
 
 local M = {}
 
