@@ -102,7 +102,8 @@ describe("a measurement", function()
 
   it("prints as a table", function()
     local text = tostring(make():measure(plan()))
-    assert.matches("Measured by plan 0123456789ab: 1000 S/s, 1000 samples, 1 average, unit m/s", text)
+    local head = "Measured by plan 0123456789ab: 1000 S/s, 1000 samples, 1 average, unit m/s"
+    assert.matches(head, text)
     assert.matches("shaft +2%.000 +0%.025 +0%.012 +0%.024", text)
     assert.matches("50%.250 %+%- 0%.08", text)
     assert.matches("120 %(bin%)", text)

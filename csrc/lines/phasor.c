@@ -5,6 +5,9 @@
 #define BLOCK LBR_PHASOR_BLOCK
 #define ROW 8   /* of the table: BLOCK is a multiple of it */
 #define LANES 8 /* independent partial sums: what vector units want */
+#define MOMENTS LBR_PHASOR_MOMENTS
+#define LONG 16384        /* samples from which blocks are short: 2^-8 */
+#define SHORT_MOMENTS 5   /* then enough: 1e-13 at half a bin */
 #define TAU 6.283185307179586476925286766559
 /* On static functions only: the linker would export the others. */
 #define FAST __attribute__((target_clones("avx512f", "avx2", "default")))
@@ -100,11 +103,12 @@ static inline double fold_lanes(const double *a) {
   return ((a[0] + a[4]) + (a[2] + a[6])) + ((a[1] + a[5]) + (a[3] + a[7]));
 }
 
-/* re[p] = sum a u^p, im[p] = sum b u^p over a block; a and b are used up. */
+/* re[p] = sum a u^p, im[p] = sum b u^p over a block, p < count; a and b are
+ * used up. */
 static inline void block_moments(double *restrict a, double *restrict b,
-                                 const double *restrict u, double *restrict re,
-                                 double *restrict im) {
-  for (size_t p = 0; p < LBR_PHASOR_MOMENTS; p++) {
+                                 const double *restrict u, size_t count,
+                                 double *restrict re, double *restrict im) {
+  for (size_t p = 0; p < count; p++) {
     double ra[LANES] = {0}, ia[LANES] = {0};
     for (size_t k = 0; k < BLOCK; k += LANES)
       for (size_t l = 0; l < LANES; l++) {
@@ -118,34 +122,85 @@ static inline void block_moments(double *restrict a, double *restrict b,
   }
 }
 
+/* m[p] += anchor sum_q binomial(p, q) centre^(p-q) (re[q] + i im[q]): from
+ * moments about the middle of a block to those about the record's centre. */
+static inline void add_moments(double complex *m, double complex anchor,
+                               double centre, size_t count, const double *re,
+                               const double *im) {
+  double row[MOMENTS] = {1}; /* binomial(p, q) centre^(p-q) */
+  for (size_t p = 0; p < MOMENTS; p++) {
+    double a = 0, b = 0;
+    size_t last = p < count ? p + 1 : count;
+    for (size_t q = 0; q < last; q++) {
+      a += row[q] * re[q];
+      b += row[q] * im[q];
+    }
+    m[p] += times(CMPLX(a, b), anchor);
+    for (size_t q = count; q-- > 0;)
+      row[q] = row[q] * centre + (q ? row[q - 1] : 0);
+  }
+}
+
+/* Inside a block, powers of the distance from its middle beyond `count` do
+ * not matter when blocks are short against the record: the first one left out
+ * of X(f + v / N) is below (pi |v| BLOCK / N)^count / count! of sum |y|. */
 FAST static void moments_at(const double *y, size_t n, double f,
                             double complex *m) {
   double c[BLOCK], s[BLOCK], a[BLOCK], b[BLOCK], u[BLOCK];
-  double re[LBR_PHASOR_MOMENTS], im[LBR_PHASOR_MOMENTS];
+  double re[MOMENTS], im[MOMENTS];
   double middle = 0.5 * ((double)n - 1), scale = 1.0 / (double)n;
+  double half = 0.5 * (BLOCK - 1);
+  size_t count = n >= LONG ? SHORT_MOMENTS : MOMENTS;
   lbr_phasor_walk walk;
   lbr_phasor_table(f, c, s);
   lbr_phasor_walk_start(&walk, f, -middle);
-  for (size_t p = 0; p < LBR_PHASOR_MOMENTS; p++) m[p] = 0;
+  for (size_t k = 0; k < BLOCK; k++) u[k] = ((double)k - half) * scale;
+  for (size_t p = 0; p < MOMENTS; p++) m[p] = 0;
   for (size_t at = 0; at < n; at += BLOCK) {
-    size_t count = n - at < BLOCK ? n - at : BLOCK;
-    double start = (double)at - middle;
+    size_t present = n - at < BLOCK ? n - at : BLOCK;
     for (size_t k = 0; k < BLOCK; k++) {
-      double value = k < count ? y[at + k] : 0;
+      double value = k < present ? y[at + k] : 0;
       a[k] = value * c[k];
       b[k] = value * s[k];
-      u[k] = (start + (double)k) * scale;
     }
-    block_moments(a, b, u, re, im);
-    double complex anchor = lbr_phasor_walk_next(&walk);
-    for (size_t p = 0; p < LBR_PHASOR_MOMENTS; p++)
-      m[p] += times(CMPLX(re[p], im[p]), anchor);
+    block_moments(a, b, u, count, re, im);
+    add_moments(m, lbr_phasor_walk_next(&walk),
+                ((double)at - middle + half) * scale, count, re, im);
   }
 }
 
 void lbr_phasor_moments(const double *y, size_t n, double f,
                         double complex m[LBR_PHASOR_MOMENTS]) {
   moments_at(y, n, f, m);
+}
+
+/* The block sums of coarse powers, phases of the middle of each block. */
+FAST static void sum_blocks(const double *y, size_t n, double f,
+                            double complex *sums) {
+  double c[BLOCK], s[BLOCK];
+  lbr_phasor_walk walk;
+  size_t at = 0;
+  lbr_phasor_table(f, c, s);
+  lbr_phasor_walk_start(&walk, f, -0.5 * ((double)n - 1));
+  for (; at + BLOCK <= n; at += BLOCK)
+    *sums++ = times(block_sum(y + at, c, s), lbr_phasor_walk_next(&walk));
+  if (at < n)
+    *sums = times(tail_sum(y + at, n - at, c, s), lbr_phasor_walk_next(&walk));
+}
+
+void lbr_phasor_blocks(const double *y, size_t n, double f,
+                       double complex *sums) {
+  sum_blocks(y, n, f, sums);
+}
+
+double lbr_phasor_coarse(const double complex *sums, size_t n, double shift) {
+  size_t blocks = (n + BLOCK - 1) / BLOCK;
+  double complex turn = lbr_phasor_at(shift, BLOCK), z = 1, total = 0;
+  for (size_t b = 0; b < blocks; b++) {
+    total += times(sums[b], z);
+    z = times(z, turn);
+  }
+  return creal(total) * creal(total) + cimag(total) * cimag(total);
 }
 
 void lbr_phasor_expand(const double complex m[LBR_PHASOR_MOMENTS], double v,

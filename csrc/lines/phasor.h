@@ -44,6 +44,14 @@ double complex lbr_phasor_sum(const double *y, size_t n, double f);
 void lbr_phasor_moments(const double *y, size_t n, double f,
                         double complex m[LBR_PHASOR_MOMENTS]);
 
+/* Sums over the blocks of a long record, ceil(n / LBR_PHASOR_BLOCK) of them,
+ * and from them |X(f + shift)|^2, quickly and nearly: the phase that `shift`
+ * turns inside a block is left out, an error of X below
+ * (pi shift LBR_PHASOR_BLOCK)^2 / 6 of sum |y|. */
+void lbr_phasor_blocks(const double *y, size_t n, double f,
+                       double complex *sums);
+double lbr_phasor_coarse(const double complex *sums, size_t n, double shift);
+
 /* X(f + v / N) and its derivatives with respect to v from the moments. */
 void lbr_phasor_expand(const double complex m[LBR_PHASOR_MOMENTS], double v,
                        double complex *x, double complex *slope,

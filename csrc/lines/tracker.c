@@ -11,6 +11,9 @@
 #define FINE 8        /* direct evaluation: points a bin */
 #define PADDED 4      /* padded transform: points a bin, at least */
 #define TRUSTED 0.0625 /* bins from the centre of an expansion, 2e-14 off */
+#define COARSE 0.004   /* cycles a block up to which block sums find maxima:
+                          3e-5 of sum |y| off, far below what FINE_SHARE
+                          allows for */
 #define ROUNDS 12     /* recentrings of an expansion */
 #define STEPS 80      /* safeguarded Newton steps in one expansion */
 
@@ -25,6 +28,7 @@ struct lbr_tracker {
   double *w, *y; /* n: the window; the windowed record */
   lbr_search *searches;
   double *at, *power;        /* the grid of one search, most_points */
+  double complex *blocks;    /* block sums of one search */
   lbr_transform *transform;  /* NULL: grids are evaluated directly */
   double *padded;            /* its record */
   double complex *bins;      /* its transform */
@@ -39,12 +43,17 @@ static size_t direct_points(const lbr_tracker *t, const lbr_search *s) {
   return (size_t)ceil(width_bins(t, s) * FINE) + 2;
 }
 
-/* One padded transform costs about as much as 3 log2(points) direct sums. */
+static bool is_coarse(const lbr_search *s) {
+  return 0.5 * (s->hi - s->lo) * LBR_PHASOR_BLOCK <= COARSE;
+}
+
+/* One padded transform costs about as much as 3 log2(points) direct sums;
+ * a whole coarse search costs about as much as two. */
 static bool wants_transform(const lbr_tracker *t, size_t points) {
   double total = 0;
-  if (points > LBR_TRANSFORM_MOST) return false;
   for (size_t i = 0; i < t->count; i++)
-    total += (double)direct_points(t, &t->searches[i]);
+    total += is_coarse(&t->searches[i])
+                 ? 2 : (double)direct_points(t, &t->searches[i]);
   return total > 3 * log2((double)points);
 }
 
@@ -92,7 +101,8 @@ static lbr_status fill(lbr_tracker *t, const double *w,
   }
   t->at = lbr_alloc(t->most_points, sizeof *t->at);
   t->power = lbr_alloc(t->most_points, sizeof *t->power);
-  if (!t->at || !t->power) return LBR_NO_MEMORY;
+  t->blocks = lbr_alloc(t->n / LBR_PHASOR_BLOCK + 1, sizeof *t->blocks);
+  if (!t->at || !t->power || !t->blocks) return LBR_NO_MEMORY;
   return make_transform(t);
 }
 
@@ -122,6 +132,7 @@ void lbr_tracker_free(lbr_tracker *t) {
   free(t->searches);
   free(t->at);
   free(t->power);
+  free(t->blocks);
   lbr_transform_put(t->transform);
   lbr_transform_drop(t->padded);
   lbr_transform_drop(t->bins);
@@ -139,9 +150,19 @@ static void put_direct(const lbr_tracker *t, size_t i, double f) {
 
 static size_t direct_grid(const lbr_tracker *t, const lbr_search *s) {
   size_t points = direct_points(t, s);
+  double middle = 0.5 * (s->lo + s->hi);
   double step = (s->hi - s->lo) / (double)(points - 1);
-  for (size_t i = 0; i < points; i++)
-    put_direct(t, i, i + 1 < points ? s->lo + (double)i * step : s->hi);
+  bool coarse = is_coarse(s);
+  if (coarse) lbr_phasor_blocks(t->y, t->n, middle, t->blocks);
+  for (size_t i = 0; i < points; i++) {
+    double f = i + 1 < points ? s->lo + (double)i * step : s->hi;
+    if (coarse) {
+      t->at[i] = f;
+      t->power[i] = lbr_phasor_coarse(t->blocks, t->n, f - middle);
+    } else {
+      put_direct(t, i, f);
+    }
+  }
   return points;
 }
 

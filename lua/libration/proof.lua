@@ -11,7 +11,8 @@ local window = require("libration.window").window
 
 local M = {}
 
-local CHUNK = 256 -- trials between two looks at the clock
+local LOOK_S = 0.1 -- seconds between two looks at the clock, about
+local MOST_CHUNK = 4096
 local MOST_TRIALS = 10 ^ 9
 
 local Proof = {}
@@ -22,10 +23,10 @@ local function fail(level, text, ...)
   error("prove: " .. text:format(...), level + 1)
 end
 
-local valid = { adversary = "boolean", noise = "boolean", progress = "boolean", seed = "integer",
-                trials = "integer", workers = "integer" }
-local defaults = { adversary = true, noise = true, progress = true, seed = 1, trials = 10000,
-                   workers = 0 }
+local valid = { adversary = "boolean", noise_trials = "integer", progress = "boolean",
+                seed = "integer", trials = "integer", workers = "integer" }
+local defaults = { adversary = true, noise_trials = 1000, progress = true, seed = 1,
+                   trials = 10000, workers = 0 }
 
 local function kind_of(value)
   return math.type(value) == "integer" and "integer" or type(value)
@@ -54,9 +55,13 @@ local function with_defaults(options, level)
   for name, value in pairs(defaults) do
     if options[name] == nil then out[name] = value else out[name] = options[name] end
   end
-  if out.trials < 0 or out.trials > MOST_TRIALS then
-    fail(level + 1, "trials is %d; it must be between 0 and %d", out.trials, MOST_TRIALS)
-  elseif out.workers < 0 or out.workers > 256 then
+  for _, name in ipairs { "trials", "noise_trials" } do
+    if out[name] < 0 or out[name] > MOST_TRIALS then
+      fail(level + 1, "%s is %d; it must be between 0 and %d", name, out[name], MOST_TRIALS)
+    end
+  end
+  out.noise_trials = math.min(out.noise_trials, out.trials)
+  if out.workers < 0 or out.workers > 256 then
     fail(level + 1, "workers is %d; it must be between 1 and 256, or 0 for one per core",
       out.workers)
   end
@@ -110,28 +115,38 @@ local function bar(wanted, total)
   end
 end
 
+-- Trials in pieces that take about LOOK_S, so that a bar can move and the person
+-- at the keyboard can interrupt; how they are cut does not change the sums.
 local function run_trials(trial, options)
   local draw, tallies = bar(options.progress, options.trials), trial:run(options.seed, 0, 0, false)
-  local done = 0
+  local done, chunk = 0, 8
   while done < options.trials do
-    local count = math.min(CHUNK, options.trials - done)
-    tallies = trial:run(options.seed, done, count, options.noise)
+    local started, noise = core.base.clock(), done < options.noise_trials
+    local last = noise and options.noise_trials or options.trials
+    local count = math.min(chunk, last - done)
+    tallies = trial:run(options.seed, done, count, noise)
     done = done + count
     draw(done)
+    local spent = core.base.clock() - started
+    if count == chunk and spent < LOOK_S then
+      chunk = math.min(2 * chunk, MOST_CHUNK)
+    elseif spent > 4 * LOOK_S then
+      chunk = math.max(chunk // 2, 1)
+    end
   end
   return tallies
 end
 
 -- What is reported of one line: the worst of trials and attacks.
-local function line_report(plan, i, tally, high, low, noise)
+local function line_report(plan, i, tally, high, low, noise_trials)
   local out = {
     name = plan.lines[i].name, worst = tally.worst, worst_trial = tally.worst_trial,
     worst_hz = tally.worst_hz, worst_hz_trial = tally.worst_hz_trial,
     violations = tally.violations, violations_hz = tally.violations_hz, tightness = tally.worst,
   }
-  if noise and tally.trials > 0 then
-    out.rms = (tally.squares / tally.trials) ^ 0.5
-    out.exceedance = tally.beyond / tally.trials
+  if noise_trials > 0 and (plan.claims[i].sigma or 0) > 0 then
+    out.rms = (tally.squares / noise_trials) ^ 0.5
+    out.exceedance = tally.beyond / noise_trials
   end
   for side, attack in pairs { high = high, low = low } do
     out[side] = attack.reached
@@ -173,10 +188,11 @@ end
 
 --- Puts a plan on trial: `plan:prove { trials = 10000, seed = 1 }`.
 -- @param plan plan: as lb.plan returns it
--- @param options table: trials (default 10000), seed (default 1), adversary (default true), noise
---   (default true: every trial also with noise, jitter, limits and codes), workers (threads;
---   default 0, one per core), progress (default true: a bar, if standard error is a terminal)
--- @return table: the proof: trials, seed, violations (of systematic bounds; 0 when the plan
+-- @param options table: trials (default 10000), seed (default 1), adversary (default true),
+--   noise_trials (how many of them are made with noise, jitter, limits and codes too, default
+--   1000), workers (threads; default 0, one per core), progress (default true: a bar, if standard
+--   error is a terminal)
+-- @return table: the proof: trials, noise_trials, seed, violations (of systematic bounds; 0 when the plan
 --   holds), holds (boolean), tightness (largest deviation over bound), worst (line, name, ratio,
 --   of = "amplitude" or "frequency", seed, and trial or side for replay), refused (text, when
 --   the adversary could not take part), seconds, and lines[i]: name, worst, worst_trial,
@@ -187,8 +203,8 @@ function M.prove(plan, options)
   options = with_defaults(options, 2)
   local started = core.base.clock()
   local trial <close> = core.proof.new(M.setup(plan), options.workers)
-  local proof = { trials = options.trials, seed = options.seed, noise = options.noise,
-                  coverage = plan.demand.coverage, lines = {} }
+  local proof = { trials = options.trials, seed = options.seed,
+                  noise_trials = options.noise_trials, coverage = plan.demand.coverage, lines = {} }
   local attacks, message
   if options.adversary then
     attacks, message = trial:attack(options.seed)
@@ -197,7 +213,7 @@ function M.prove(plan, options)
   local tallies = run_trials(trial, options)
   for i, tally in ipairs(tallies) do
     proof.lines[i] = line_report(plan, i, tally, attacks and attacks[2 * i - 1],
-      attacks and attacks[2 * i], options.noise)
+      attacks and attacks[2 * i], options.noise_trials)
   end
   proof.seconds = core.base.clock() - started
   return sum_up(proof)
@@ -273,8 +289,8 @@ end
 -- @return string: a row per line, the verdict last
 function M.text(proof)
   local rows = {
-    ("Proof: %d random trials (seed %d), adversary %s, %.1f s"):format(proof.trials, proof.seed,
-      adversary_text(proof), proof.seconds),
+    ("Proof: %d random trials (seed %d), %d of them with noise too; adversary %s; %.1f s"):format(
+      proof.trials, proof.seed, proof.noise_trials, adversary_text(proof), proof.seconds),
     "Largest deviation over its bound (1 is the bound):",
     ("  %-20s %8s %8s %8s %8s %10s %12s"):format("line", "trials", "high", "low", "hz",
       "rms/sigma", ("beyond %gs"):format(proof.coverage or 3)),
