@@ -6,8 +6,8 @@
 #define ROW 8   /* of the table: BLOCK is a multiple of it */
 #define LANES 8 /* independent partial sums: what vector units want */
 #define MOMENTS LBR_PHASOR_MOMENTS
-#define LONG 16384        /* samples from which blocks are short: 2^-8 */
-#define SHORT_MOMENTS 5   /* then enough: 1e-13 at half a bin */
+#define LONG 3072         /* samples from which blocks are short */
+#define SHORT_MOMENTS 5   /* then enough: 1e-14 of sum |y| at 1/16 bin */
 #define TAU 6.283185307179586476925286766559
 /* On static functions only: the linker would export the others. */
 #define FAST __attribute__((target_clones("avx512f", "avx2", "default")))
