@@ -142,28 +142,11 @@ static int store_digest(lua_State *L) {
   return 1;
 }
 
-/***
- * Codes as values of a unit: every sample times a factor, in a new block.
- * @param samples samples: a block of codes
- * @param factor number: unit per code
- * @return samples: a block of the same length
- * @usage
- * local x = core.samples.from { 1, -2 }
- * assert(core.store.rails(core.store.in_unit(x, 10), -20, 20).low == 1)
- */
-static int store_in_unit(lua_State *L) {
-  size_t n;
-  const double *x = lbr_check_samples(L, 1, &n);
-  double factor = luaL_checknumber(L, 2);
-  double *y = lbr_push_samples(L, n);
-  for (size_t i = 0; i < n; i++) y[i] = x[i] * factor;
-  return 1;
-}
-
 static const luaL_Reg functions[] = {
-    {"in_unit", store_in_unit},
-    {"write", store_write}, {"rails", store_rails},
-    {"digest", store_digest}, {NULL, NULL},
+    {"write", store_write},
+    {"rails", store_rails},
+    {"digest", store_digest},
+    {NULL, NULL},
 };
 
 int lbr_open_store(lua_State *L) {

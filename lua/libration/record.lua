@@ -237,9 +237,9 @@ local function block_of(channel, k, level)
   end
   local ok, block = true, given
   if type(given) == "table" then ok, block = pcall(core.samples.from, given) end
-  if not ok or type(block) ~= "userdata" then
+  if not ok or not core.samples.is(block) then
     fail(level + 1, "the samples of channel %d are %s; give a block or a list of numbers", k,
-      ok and type(given) or tostring(block))
+      ok and type(given) or "a list with " .. tostring(block))
   elseif #block == 0 then
     fail(level + 1, "channel %d holds no samples", k)
   end
@@ -327,7 +327,7 @@ end
 -- assert(rails.least == -10 and rails.most == 5 and r.channels[1].unit == "V")
 function Record:values(k)
   local channel = channel_of(self, k)
-  return channel.factor == 1 and channel.data or store.in_unit(channel.data, channel.factor)
+  return channel.factor == 1 and channel.data or channel.data * channel.factor
 end
 
 -- Where the rails of a channel's stored samples stand; half a code inwards, so
@@ -428,7 +428,7 @@ function Record:write(path, options)
   local blocks = {}
   for k, channel in ipairs(self.channels) do
     local factor = stored_factor(channel, spec, 2)
-    blocks[k] = factor == 1 and channel.data or store.in_unit(channel.data, factor)
+    blocks[k] = factor == 1 and channel.data or channel.data * factor
   end
   return store.write(path, spec, blocks)
 end

@@ -41,7 +41,9 @@ function M.bytes(path)
   return text
 end
 
+-- Removed first: some file systems write a shortened file to the disk at once.
 function M.write_bytes(path, text)
+  os.remove(path)
   local file = assert(io.open(path, "wb"))
   file:write(text)
   file:close()
