@@ -8,6 +8,8 @@
 
 #define BLOCKS 256 /* generator blocks in one go */
 #define GROUP 16   /* Gaussian values from eight blocks */
+#define LAST_BLOCK ((uint64_t)1 << 63)  /* indices start again there: words */
+#define LAST_GROUP ((uint64_t)1 << 60)  /* and Gaussian values */
 
 lbr_key lbr_key_make(uint64_t seed, const uint64_t *words, size_t n) {
   uint32_t state[4] = {(uint32_t)seed, (uint32_t)(seed >> 32), (uint32_t)n, 0};
@@ -26,6 +28,10 @@ lbr_key lbr_key_of(uint64_t seed, uint64_t trial, uint64_t channel,
   return lbr_key_make(seed, words, 3);
 }
 
+static size_t at_most(size_t n, uint64_t most) {
+  return n < most ? n : (size_t)most;
+}
+
 static size_t round_up(size_t n, size_t to) { return (n + to - 1) / to * to; }
 
 void lbr_random_words(const lbr_key *key, uint64_t first, uint64_t *out,
@@ -35,9 +41,9 @@ void lbr_random_words(const lbr_key *key, uint64_t first, uint64_t *out,
   while (done < n) {
     uint64_t word = first + done, block = word / 2;
     size_t skip = word % 2, left = n - done;
-    size_t blocks = left / 2 >= BLOCKS - 1 ? BLOCKS
-                                           : (left + skip + 1) / 2;
-    size_t take = 2 * blocks - skip < left ? 2 * blocks - skip : left;
+    size_t blocks = at_most(left / 2 + 1, BLOCKS);
+    blocks = at_most(blocks, LAST_BLOCK - block);
+    size_t take = at_most(left, 2 * blocks - skip);
     lbr_philox_run(key->key, key->stream, block, low, up,
                    round_up(blocks, 16));
     for (size_t i = 0; i < take; i++) {
@@ -53,21 +59,24 @@ static inline double open_unit(uint64_t word) {
   return lbr_of_bits(word >> 12 | 0x3ff0000000000000u) - (1 - 0x1p-53);
 }
 
+double lbr_random_uniform_at(const lbr_key *key, uint64_t n) {
+  uint32_t out[4], counter[4] = {(uint32_t)(n / 2), (uint32_t)(n / 2 >> 32),
+                                 key->stream[0], key->stream[1]};
+  lbr_philox(counter, key->key, out);
+  size_t half = n % 2 * 2;
+  return open_unit(out[half] | (uint64_t)out[half + 1] << 32);
+}
+
 void lbr_random_uniform(const lbr_key *key, uint64_t first, double *out,
                         size_t n) {
   uint64_t words[2 * BLOCKS];
-  for (size_t done = 0; done < n;) {
+  if (n == 1) *out = lbr_random_uniform_at(key, first);
+  for (size_t done = 0; n > 1 && done < n;) {
     size_t take = n - done < 2 * BLOCKS ? n - done : 2 * BLOCKS;
     lbr_random_words(key, first + done, words, take);
     for (size_t i = 0; i < take; i++) out[done + i] = open_unit(words[i]);
     done += take;
   }
-}
-
-double lbr_random_uniform_at(const lbr_key *key, uint64_t n) {
-  double x;
-  lbr_random_uniform(key, n, &x, 1);
-  return x;
 }
 
 /* Natural logarithm of u in (0, 1): u = 2^e m, sqrt(1/2) <= m < sqrt(2), and
@@ -121,7 +130,8 @@ void lbr_random_gaussian(const lbr_key *key, uint64_t first, double *out,
     uint64_t at = first + done;
     size_t left = n - done, skip = at % GROUP;
     if (skip == 0 && left >= GROUP) {
-      size_t groups = left / GROUP < BLOCKS / 8 ? left / GROUP : BLOCKS / 8;
+      size_t groups = at_most(left / GROUP, BLOCKS / 8);
+      groups = at_most(groups, LAST_GROUP - at / GROUP);
       whole_groups(key, at / GROUP, out + done, groups);
       done += groups * GROUP;
     } else {

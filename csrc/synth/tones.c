@@ -65,11 +65,11 @@ static lbr_ready make_ready(const lbr_tone *t) {
   return r;
 }
 
-/* cos and sin of 2 pi f k for k = i + 1/2: f = high + low with so few bits in
- * high that high * k is exact. */
+/* cos and sin of 2 pi f k for k = i + 1/2: f modulo 2, since k is half whole,
+ * as high + low with so few bits in high that high * k is exact. */
 __attribute__((target_clones("avx512f", "avx2", "default"))) static void
 fill_table(double cycles, double *restrict c, double *restrict s) {
-  double f = lbr_fraction_part(cycles);
+  double f = 2 * lbr_fraction_part(cycles / 2);
   double high = (f + 0x1.8p10) - 0x1.8p10, low = f - high;
   for (int i = 0; i < HALF; i++) {
     double k = i + 0.5;
@@ -81,7 +81,7 @@ static void tabulate(lbr_bank *bank) {
   double c[HALF], s[HALF];
   for (size_t t = 0; t < bank->steady; t++) {
     double cycles = bank->ready[t].tone.cycles;
-    fill_table(fabs(cycles) < 1 ? cycles : fmod(cycles, 1), c, s);
+    fill_table(fabs(cycles) < 2 ? cycles : fmod(cycles, 2), c, s);
     for (size_t tile = 0; tile < LBR_TILES; tile++) {
       double *row = bank->table + (tile * bank->steady + t) * 2 * LBR_TILE;
       memcpy(row, c + tile * LBR_TILE, LBR_TILE * sizeof *row);
