@@ -21,7 +21,8 @@ typedef struct lbr_digits {
 lbr_digits lbr_shortest_digits(double x);
 
 /* Shortest decimal text that reads back bit for bit, with '.' as the point and
- * an exponent where an integer of more than 15 digits would mislead; "inf", "-inf" and "nan" for what is not finite. */
+ * an exponent where an integer of more than 15 digits would mislead; "inf",
+ * "-inf" and "nan" for what is not finite. */
 void lbr_number_text(double x, char text[LBR_NUMBER_TEXT]);
 
 /* Reads n characters, all of them, as a decimal number with '.' as the point
@@ -32,7 +33,8 @@ LBR_CHECKED lbr_status lbr_number_read(const char *text, size_t n,
                                        double *out);
 
 /* Characters of the decimal number at the start of text, 0 when none:
- * [+-] digits [. digits] [e [+-] digits], digits on at least one side of the point. */
+ * [+-] digits [. digits] [e [+-] digits], digits on at
+ * least one side of the point. */
 size_t lbr_decimal_length(const char *text, size_t n);
 
 #endif

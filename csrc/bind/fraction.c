@@ -150,21 +150,41 @@ static int to_text(lua_State *L) {
   return 1;
 }
 
+/*** Nearest double to a fraction.
+ * @return number: correctly rounded, ties to even
+ * @usage
+ * assert(core.base.fraction(1, 3):number() == 1 / 3)
+ */
 static int number(lua_State *L) {
   lua_pushnumber(L, lbr_fraction_to_double(lbr_check_fraction(L, 1)));
   return 1;
 }
 
+/*** Largest integer that is not above a fraction.
+ * @return integer: rounded towards minus infinity
+ * @usage
+ * assert(core.base.fraction(-7, 2):floor() == -4)
+ */
 static int floor_of(lua_State *L) {
   lua_pushinteger(L, lbr_fraction_floor(lbr_check_fraction(L, 1)));
   return 1;
 }
 
+/*** Integer nearest to a fraction.
+ * @return integer: halves are rounded away from zero
+ * @usage
+ * assert(core.base.fraction(-7, 2):round() == -4)
+ */
 static int round_of(lua_State *L) {
   lua_pushinteger(L, lbr_fraction_round(lbr_check_fraction(L, 1)));
   return 1;
 }
 
+/*** Size of a fraction without its sign.
+ * @return fraction: >= 0; raises on overflow
+ * @usage
+ * assert(core.base.fraction(-7, 2):abs() == core.base.fraction(7, 2))
+ */
 static int absolute(lua_State *L) {
   return lbr_check_fraction(L, 1).num < 0 ? negate(L) : (lua_settop(L, 1), 1);
 }
@@ -206,7 +226,7 @@ static int fraction(lua_State *L) {
   return divide(L);
 }
 
-/*** The same as fraction(value) for values that come from outside: never raises.
+/*** The same as fraction(value) for what comes from outside: never raises.
  * @param value any: number, text or fraction
  * @return fraction: or nil, message, code ("format", "overflow", "domain")
  * @usage

@@ -245,7 +245,9 @@ function M.read(input, mistakes)
     demand[name] = read[name]
   end
   demand.unit = unit
-  demand.source = M.plain_copy(input)
+  if mistakes.count == 0 then -- only then is there no circle in it
+    demand.source = M.plain_copy(input)
+  end
   return demand
 end
 

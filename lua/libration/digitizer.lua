@@ -2,6 +2,7 @@
 -- A digitizer is plain data in the words of its data sheet, checked in one go
 -- and turned into one normal form that planning works on.
 
+local core = require "libration.core"
 local demand = require "libration.demand"
 local fields = require "libration.digitizer.fields"
 local fraction_text = require("libration.fraction").text
@@ -187,7 +188,6 @@ local function check_together(read, mistakes)
 end
 
 local function check_filter(filter, mistakes)
-  local core = require "libration.core"
   local ok, message = pcall(core.filter.prepare, filter)
   if not ok then
     message = tostring(message)

@@ -5,6 +5,7 @@
 -- caller are never run, and only as deep as the schema goes.
 
 local base = require("libration.core").base
+local units = require "libration.units"
 
 local M = {}
 
@@ -91,6 +92,10 @@ Mistakes.__index = Mistakes
 --- Reports a mistake: keeps it with its path.
 -- @param path string: where
 -- @param reason string: the value, what is wrong with it, the valid choices
+-- @usage
+-- local mistakes = require("libration.options").mistakes()
+-- mistakes:add("bits", "99 is out of range; give at most 32")
+-- assert(mistakes.count == 1)
 function Mistakes:add(path, reason)
   self.count = self.count + 1
   if self.count <= MOST_MISTAKES then
@@ -101,6 +106,10 @@ end
 --- All mistakes as one message, in the order found.
 -- @param what string: of what they are, "demand"
 -- @return string: a line per mistake
+-- @usage
+-- local mistakes = require("libration.options").mistakes()
+-- mistakes:add("bits", "missing")
+-- assert(mistakes:message "digitizer" == "digitizer: 1 mistake\n  bits: missing")
 function Mistakes:message(what)
   local lines = { ("%s: %d mistake%s"):format(what, self.count, self.count == 1 and "" or "s") }
   for _, mistake in ipairs(self) do
@@ -300,7 +309,6 @@ end
 -- local options = require "libration.options"
 -- assert(options.integer(1, 64)("24", "bits", options.mistakes()) == 24)
 function M.integer(least, most)
-  local units = require "libration.units"
   return M.quantity(units.count, { least = least, most = most })
 end
 
@@ -323,14 +331,14 @@ end
 
 -- Length of a table that is a plain list, or nil.
 local function list_length(value)
-  local count = 0
-  for key in next, value do
+  local count, n = 0, 0
+  for _ in next, value do
     count = count + 1
-    if math.type(key) ~= "integer" or key < 1 then
-      return nil
-    end
   end
-  return count == rawlen(value) and rawget(value, count + 1) == nil and count or nil
+  while rawget(value, n + 1) ~= nil do
+    n = n + 1
+  end
+  return count == n and n or nil
 end
 
 --- Kind: a list whose items are of one kind.

@@ -368,8 +368,11 @@ end
 function M.orders(value)
   local items, list, seen = {}, {}, {}
   if type(value) == "table" then
-    for i = 1, math.min(rawlen(value), MOST_ORDERS) do
-      items[i] = rawget(value, i)
+    for key in next, value do
+      if math.type(key) ~= "integer" or key < 1 or key > MOST_ORDERS then
+        return nil, 'a list of orders has no named fields; give { 1, 2, "7/2" }'
+      end
+      items[key] = rawget(value, key)
     end
   elseif type(value) == "string" then
     for item in (value .. ","):gmatch "%s*([^,]-)%s*," do

@@ -223,6 +223,12 @@ function Expansion:check_interval(item, node)
   end
 end
 
+-- How many lines an entry becomes, known before any is made.
+local function lines_of(entry)
+  local sides = entry.sidebands and entry.sidebands.orders or {}
+  return (entry.orders and #entry.orders or 1) * (1 + 2 * #sides)
+end
+
 --- Expands entries into lines and says where each stands.
 -- @param entries table: lines and interferers as read, each with path (text) and
 -- given (set of the names of its fields)
@@ -238,9 +244,13 @@ end
 function M.expand(entries, mistakes)
   local expansion = setmetatable({ names = {}, drivers = {}, chain = {}, failed = {},
     mistakes = mistakes }, Expansion)
-  local all = {}
+  local all, count = {}, 0
   for _, entry in ipairs(entries) do
-    if not check_place(entry, mistakes) or entry.broken then
+    count = count + lines_of(entry)
+    if count > MOST_LINES then
+      mistakes:add(entry.path, ("more than %d lines after expansion"):format(MOST_LINES))
+      return {}, {}
+    elseif not check_place(entry, mistakes) or entry.broken then
       entry.broken = true
       expansion:register(product(expansion, entry, entry.name or "", function() end))
     else
@@ -248,10 +258,6 @@ function M.expand(entries, mistakes)
         expansion:register(item)
         all[#all + 1] = item
       end
-    end
-    if #all > MOST_LINES then
-      mistakes:add(entry.path, ("more than %d lines after expansion"):format(MOST_LINES))
-      return {}, {}
     end
   end
   local placed = {}
