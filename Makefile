@@ -92,6 +92,11 @@ check-san: ## the suite under the address and undefined-behaviour sanitizers
 	$(MAKE) -s BUILD=build/san OPT="-O1 -g -fno-omit-frame-pointer" \
 	  CFLAGS="-fsanitize=address,undefined -fno-sanitize-recover=all -Wno-null-dereference" \
 	  LDFLAGS="-fsanitize=address,undefined" all probe
+	@for fault in overrun leak signed; do \
+	  if BUILD=build/san scripts/env $(SANITIZED) -e "require('probe').plant('$$fault')" \
+	    >build/san/planted.log 2>&1 || ! grep -q 'ERROR\|runtime error' build/san/planted.log; \
+	  then echo "check-san: did not see the planted fault '$$fault'"; exit 1; fi; \
+	done; echo "check-san: sees planted faults"
 	BUILD=build/san LUA="$(SANITIZED)" BUSTED_FLAGS="--exclude-tags=checks" \
 	  scripts/env $(LUA) tests/support/suite.lua $(SPECS)
 
@@ -100,6 +105,11 @@ MEMCHECK = valgrind -q --error-exitcode=99 --leak-check=full \
   --suppressions=$(CURDIR)/tests/support/valgrind.supp $(LUA)
 
 check-valgrind: all probe ## the suite, but for slow specs, under memcheck
+	@for fault in overrun leak; do \
+	  scripts/env $(MEMCHECK) -e "require('probe').plant('$$fault')" >$(BUILD)/planted.log 2>&1; \
+	  if [ $$? -ne 99 ]; then \
+	    echo "check-valgrind: did not see the planted fault '$$fault'"; exit 1; fi; \
+	done; echo "check-valgrind: sees planted faults"
 	LUA="$(MEMCHECK)" BUSTED_FLAGS="--exclude-tags=checks,slow" $(SUITE) $(SPECS)
 
 ALLOC_WRAPS = malloc calloc realloc aligned_alloc posix_memalign free strdup \
@@ -128,7 +138,7 @@ INSTALL_LIB := $(DESTDIR)$(PREFIX)/lib/lua/5.4/libration
 INSTALL_BIN := $(DESTDIR)$(PREFIX)/bin
 
 install: all ## library, module and command under PREFIX (DESTDIR is honoured)
-	for file in $$(cd lua && find libration -name '*.lua'); do \
+	for file in $$(cd lua && find libration -type f); do \
 	  install -D -m 644 lua/$$file $(INSTALL_LUA)/$$file || exit 1; \
 	done
 	install -D -m 755 $(MODULE) $(INSTALL_LIB)/core.so

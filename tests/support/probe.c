@@ -96,10 +96,27 @@ static int alloc(lua_State *L) {
   return 2;
 }
 
+/* plant(fault): does what the sanitizers and memcheck are there to see:
+ * "overrun" reads behind a block, "leak" loses one, "signed" leaves the range
+ * of an int. */
+static int plant(lua_State *L) {
+  static const char *const faults[] = {"overrun", "leak", "signed", NULL};
+  int fault = luaL_checkoption(L, 1, NULL, faults);
+  volatile int big = 0x7fffffff;
+  unsigned char *volatile block = malloc(16);
+  volatile size_t behind = 16;
+  if (block && fault == 0) lua_pushinteger(L, block[behind]);
+  if (fault == 2) lua_pushinteger(L, big + 1);
+  if (fault != 1) free(block);
+  block = NULL;
+  return 0;
+}
+
 static const luaL_Reg functions[] = {{"run", run},
                                      {"status_words", status_words},
                                      {"size", size},
                                      {"alloc", alloc},
+                                     {"plant", plant},
                                      {NULL, NULL}};
 
 __attribute__((visibility("default"))) int luaopen_probe(lua_State *L);
