@@ -113,7 +113,7 @@ describe("the spectrum of shaped noise, by scipy.signal.welch,", function()
     -- Closed form: |F|^2 = 1 / (1 + (f/fc)^(2n)); order 1 folds visibly.
     local rate, corner = 1000, 300
     local x = lb.synth.record { rate = rate, samples = 1 << 20, seed = 4, input_noise = 1,
-      filter = { shape = "butterworth", order = 1, corner = corner } }
+      filter = { shape = "butterworth", order = 1, corner = corner .. " Hz" } }
     local edges = { 5, 15, 240, 260, 480, 495 }
     local found = bands(x, rate, edges)
     for i, f in ipairs { 10, 250, 487.5 } do

@@ -4,6 +4,7 @@
 -- same samples on any number of threads, in pieces of any size.
 
 local core = require "libration.core"
+local filters = require "libration.filter"
 local options = require "libration.options"
 local units = require "libration.units"
 
@@ -214,9 +215,18 @@ function M.orders(spec)
   return tones
 end
 
+-- What lb.filter takes, or a filter that it made.
+local function filter_kind(value, path, mistakes)
+  local ok, made = pcall(filters.new, value)
+  if ok then
+    return made
+  end
+  mistakes:add(path, tostring(made))
+end
+
 local record_schema = schema_with {
   timebase = { options.number { above = -1 }, default = 0 },
-  filter = { function(value) return value end },
+  filter = { filter_kind },
   delay_s = { options.quantity(in_unit "s", { unit = "s" }), default = 0 },
   jitter_s = { seconds, default = 0 },
   gain_error = { number, default = 0 },
@@ -226,10 +236,6 @@ local record_schema = schema_with {
   bits = { options.integer(0, 32), default = 0 },
   range = { options.number { above = 0 }, default = math.huge },
 }
-
-local function has_filter(filter)
-  return type(filter) == "table" and filter.shape ~= "none"
-end
 
 --- What a digitizer makes of tones and noise.
 -- The filter acts at each tone's true frequency and shapes the noise at its
@@ -246,7 +252,7 @@ end
 -- @usage
 -- local x, clipped = lb.synth.record { rate = 1000, samples = 500, bits = 16, range = 5,
 --   tones = { { hz = 50, amplitude = 3 } },
---   filter = { shape = "butterworth", order = 4, corner = 400 } }
+--   filter = { shape = "butterworth", order = 4, corner = "400 Hz" } }
 -- assert(clipped == 0 and math.abs(x:peak() - 3) < 0.01)
 function M.record(spec)
   local read = options.take(record_schema, spec, "record")
@@ -254,7 +260,7 @@ function M.record(spec)
     error("record: range is missing; bits = " .. read.bits .. " needs it", 0)
   end
   local x = target(read, "record")
-  if has_filter(read.filter) and read.input_noise > 0 then
+  if read.filter and read.filter.shape ~= "none" and read.input_noise > 0 then
     read.input_shape = core.synth.input_shape(read.filter, read.rate, read.noise_taps)
   end
   return x, core.synth.record(x, read)

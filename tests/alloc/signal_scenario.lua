@@ -11,7 +11,7 @@ return "signal", function()
   assert(synth.tones(spec) == synth.tones(spec))
   local record, clipped = synth.record { rate = 1000, samples = 300, bits = 8, range = 1,
     jitter_s = 1e-6, input_noise = 1e-3, noise_taps = 8, tones = { { hz = 50, amplitude = 1.5 } },
-    filter = { shape = "butterworth", order = 2, corner = 400 } }
+    filter = { shape = "butterworth", order = 2, corner = "400 Hz" } }
   assert(#record == 300 and clipped > 0)
   assert(not pcall(synth.record, { rate = 1000, samples = 10, bits = 8 }))
 end
