@@ -48,6 +48,21 @@ describe("a record from a file", function()
     assert.equal(1, r:rails(2).high)
   end)
 
+  -- ITU-T E.180 (1998) recommends 425 Hz for these tones; the files are the package's own.
+  it("holds the telephone tone that the standard asks for", function()
+    local r = assert(lb.record.read(sounds.of_package("sound-theme-freedesktop",
+      "/phone-outgoing-calling.oga")))
+    local x, best, at = r:values():totable(), 0, nil
+    for tenth = 4150, 4350 do
+      local step, re, im = 2 * math.pi * tenth / 10 / r.rate:number(), 0, 0
+      for i = 1, #x do
+        re, im = re + x[i] * math.cos(step * i), im + x[i] * math.sin(step * i)
+      end
+      if re * re + im * im > best then best, at = re * re + im * im, tenth / 10 end
+    end
+    assert.near(425, at, 0.5)
+  end)
+
   it("takes an exact rate that the header could only round", function()
     local r = assert(lb.record.read(front, { rate = "48000.25 S/s" }))
     assert.equal("192001/4", tostring(r.rate))
