@@ -4,6 +4,7 @@
 
 #include "bind/bind.h"
 #include "bind/samples.h"
+#include "window/figures.h"
 #include "window/kernel.h"
 #include "window/window.h"
 
@@ -191,6 +192,58 @@ static int absolute(lua_State *L) {
   return 1;
 }
 
+static void set_number(lua_State *L, const char *name, double value) {
+  if (isnan(value)) return;
+  lua_pushnumber(L, value);
+  lua_setfield(L, -2, name);
+}
+
+/*** The figures of merit.
+ * In the limit of long records, or at .length where the shape has none.
+ * @return table: length (0: limit), coherent_gain, noise_bandwidth (bins),
+ *   noise_bandwidth_db, scalloping_db, flatness_db, worst_loss_db,
+ *   width_half_power, width_3db, width_6db, width_half (bins), first_null
+ *   (bins), side_lobe_db, side_lobe_at (bins), decay_db_octave, overlap_50,
+ *   overlap_75 (correlations), overlap (recommended, share), and there
+ *   amplitude_flatness, power_flatness, correlation; a field is absent where
+ *   the window has no such figure
+ * @usage
+ * local f = core.window.new("hann"):figures()
+ * assert(f.noise_bandwidth == 1.5 and f.overlap == 0.5)
+ */
+static int figures(lua_State *L) {
+  lbr_figures f;
+  lbr_status status = lbr_figures_of(&check_holder(L)->window, &f);
+  if (status != LBR_OK) return lbr_raise(L, status, "window figures");
+  const struct { const char *name; double value; } fields[] = {
+      {"coherent_gain", f.coherent_gain},
+      {"noise_bandwidth", f.noise_bandwidth},
+      {"noise_bandwidth_db", f.noise_bandwidth_db},
+      {"scalloping_db", f.scalloping_db},
+      {"flatness_db", f.flatness_db},
+      {"worst_loss_db", f.worst_loss_db},
+      {"width_half_power", f.width_half_power},
+      {"width_3db", f.width_3db},
+      {"width_6db", f.width_6db},
+      {"width_half", f.width_half},
+      {"first_null", f.first_null},
+      {"side_lobe_db", f.side_lobe_db},
+      {"side_lobe_at", f.side_lobe_at},
+      {"decay_db_octave", f.decay_db_octave},
+      {"overlap_50", f.overlap_50},
+      {"overlap_75", f.overlap_75},
+      {"overlap", f.overlap},
+      {"amplitude_flatness", f.amplitude_flatness},
+      {"power_flatness", f.power_flatness},
+      {"correlation", f.correlation}};
+  lua_newtable(L);
+  lua_pushinteger(L, (lua_Integer)f.length);
+  lua_setfield(L, -2, "length");
+  for (size_t i = 0; i < sizeof fields / sizeof *fields; i++)
+    set_number(L, fields[i].name, fields[i].value);
+  return 1;
+}
+
 /* Pushes a table of what a row says. */
 static void push_shape(lua_State *L, const lbr_window_shape *shape) {
   lua_newtable(L);
@@ -235,7 +288,8 @@ static int shapes(lua_State *L) {
 
 static const luaL_Reg methods[] = {
     {"absolute", absolute}, {"curvature", curvature},
-    {"gain", gain},         {"noise_bandwidth", noise_bandwidth},
+    {"figures", figures},   {"gain", gain},
+    {"noise_bandwidth", noise_bandwidth},
     {"peak", peak},         {"range", range},
     {"reach", reach},       {"samples", samples},
     {"slope", slope},       {NULL, NULL}};

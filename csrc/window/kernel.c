@@ -163,7 +163,7 @@ double lbr_kernel_peak(lbr_kernel *k) {
   if (k->peak > 0) return k->peak;
   double low, high, far = k->n ? (double)k->n / 2 : 2 * SEARCH;
   lbr_kernel_range(k, 0, far, &low, &high);
-  k->peak = k->absolute <= 1 + 1e-12 ? 1 : fmax(1, high);
+  k->peak = lbr_kernel_absolute(k) <= 1 + 1e-12 ? 1 : fmax(1, high);
   return k->peak;
 }
 

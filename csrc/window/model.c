@@ -11,10 +11,6 @@
  * points; longer windows take that value with a quarter added. */
 #define PROBE 64
 
-typedef struct spread { /* moments of |w| over |sum w| */
-  double none, first, sixth;
-} spread;
-
 static double shape_at(const lbr_series *s, double u) {
   double sum = 0;
   for (size_t k = 0; k < s->whole.count; k++)
@@ -24,8 +20,8 @@ static double shape_at(const lbr_series *s, double u) {
   return sum;
 }
 
-static spread spread_of(const lbr_series *s, size_t points) {
-  spread sum = {0, 0, 0};
+static lbr_spread spread_of(const lbr_series *s, size_t points) {
+  lbr_spread sum = {0, 0, 0};
   for (size_t i = 0; i < points; i++) {
     double u = (double)i / (double)points - 0.5;
     double w = fabs(shape_at(s, u)), square = u * u;
@@ -49,8 +45,12 @@ static void bound_derivatives(lbr_kernel *k) {
   int probe = k->n == 0 || k->n > PROBE;
   int closed = is_closed(k, k->n);
   /* shapes in closed form fall from the middle: no wider than a rectangle */
-  spread sum = closed ? (spread){1, 0.25, 1.0 / 448}
-                      : spread_of(&k->series, probe ? PROBE : k->n);
+  if (closed)
+    k->spread = (lbr_spread){1, 0.25, 1.0 / 448};
+  else if (!probe || !k->probed)
+    k->spread = spread_of(&k->series, probe ? PROBE : k->n);
+  k->probed = probe && !closed;
+  lbr_spread sum = k->spread;
   double more = probe ? 1.25 : 1.0 + 1e-9;
   double edge = fabs(k->edge), misfit = closed ? 0 : k->series.misfit;
   double real = pow(turn, 6) * (sum.sixth * more + 1e-6);
@@ -60,7 +60,6 @@ static void bound_derivatives(lbr_kernel *k) {
   k->slope_slack = 2.88e-4 * sixth * pow(h, 5) + LBR_PI * misfit + 1e-11;
   k->bend_slack = real * pow(h, 4) / 96 + 10 * misfit + 1e-9;
   k->slope_most = turn * (sum.first * more + 1e-6) + edge * half;
-  k->absolute = sum.none;
 }
 
 /* Samples of the window into the kernel's own memory. */
@@ -89,6 +88,7 @@ static lbr_status take_series(lbr_kernel *k, size_t n) {
   int own = shape->terms || (shape->expand && (n == 0 || n > LBR_SERIES_EXACT));
   if (own && k->expanded) return LBR_OK;
   k->expanded = own;
+  k->probed = 0;
   k->series.misfit = 0;
   if (shape->terms) {
     take_terms(k);
@@ -176,7 +176,7 @@ void lbr_model_beyond(const lbr_kernel *k, double x, double *value,
     *value += k->series.misfit;
     *slope += LBR_PI * k->series.misfit;
   }
-  *value = fmin(hypot(*value, edge), k->absolute);
+  *value = hypot(*value, edge);
   *slope = fmin(hypot(*slope, edge * LBR_PI), k->slope_most);
 }
 
@@ -185,5 +185,3 @@ double lbr_kernel_noise_bandwidth(const lbr_kernel *k) {
     return k->window.shape->closed->bandwidth(&k->window, k->n);
   return lbr_series_noise_bandwidth(&k->series);
 }
-
-double lbr_kernel_absolute(const lbr_kernel *k) { return k->absolute; }

@@ -8,6 +8,11 @@
 #include "window/kernel.h"
 #include "window/series.h"
 
+/* Moments of |w| over |sum w|: of order 0, 1 and 6 in |u|. */
+typedef struct lbr_spread {
+  double none, first, sixth;
+} lbr_spread;
+
 struct lbr_kernel {
   lbr_window window;
   size_t n;           /* length, 0: limit */
@@ -16,7 +21,8 @@ struct lbr_kernel {
   double sixth;       /* bound of the sixth derivative of R / R(0) */
   double value_slack; /* remainder of a cell's quintics, and rounding */
   double slope_slack, bend_slack; /* the same for first, second derivative */
-  double absolute;    /* sum |w| / |sum w| */
+  lbr_spread spread;  /* of the samples, or of the limit for long records */
+  int probed;         /* the spread is the limit's, good for long records */
   double slope_most;  /* bound of |W'| / |W(0)| anywhere */
   double peak;        /* bound of |W| / |W(0)|, 0: not known yet */
   int expanded;       /* the series is the shape's, good for any length */

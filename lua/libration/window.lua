@@ -107,13 +107,70 @@ function Window:range(x1, x2, n)
   return self.kernel:range(x1, x2, n)
 end
 
+--- The figures of merit, in the words of Harris 1978 and Heinzel et al. 2002.
+-- In the limit of long records, or at the stated length where the shape has no
+-- limit (Dolph-Chebyshev). The recommended overlap is the one at which amplitude
+-- flatness less noise correlation is largest.
+-- @return table: length (0: the limit), coherent_gain, noise_bandwidth (bins),
+--   noise_bandwidth_db, scalloping_db, flatness_db, worst_loss_db,
+--   width_half_power, width_3db, width_6db, width_half (bins), first_null (bins),
+--   side_lobe_db, side_lobe_at (bins), decay_db_octave, overlap_50, overlap_75
+--   (correlations), overlap (recommended, share of the length), and there
+--   amplitude_flatness, power_flatness, correlation. A figure that the window
+--   does not have is absent.
+-- @usage
+-- local f = lb.window("hann"):figures()
+-- assert(math.abs(f.width_3db - 1.4382) < 1e-4 and f.decay_db_octave > 18)
+function Window:figures()
+  if not self.figures_made then
+    self.figures_made = self.kernel:figures()
+  end
+  local copy = {}
+  for name, value in pairs(self.figures_made) do
+    copy[name] = value
+  end
+  return copy
+end
+
+-- What is printed: field, label, factor, format.
+local printed = {
+  { "coherent_gain", "coherent gain", 1, "%.6f" },
+  { "noise_bandwidth", "noise bandwidth", 1, "%.5f bins" },
+  { "scalloping_db", "scalloping loss", 1, "%.4f dB" },
+  { "flatness_db", "flatness in half a bin", 1, "%+.4f dB" },
+  { "worst_loss_db", "worst processing loss", 1, "%.4f dB" },
+  { "width_half_power", "width at half power", 1, "%.4f bins" },
+  { "width_3db", "width at -3 dB", 1, "%.4f bins" },
+  { "width_6db", "width at -6 dB", 1, "%.4f bins" },
+  { "first_null", "first null", 1, "%.4f bins" },
+  { "side_lobe_db", "highest side lobe", 1, "%.2f dB" },
+  { "side_lobe_at", "  where", 1, "%.3f bins" },
+  { "decay_db_octave", "side lobe decay", 1, "%.1f dB/octave" },
+  { "overlap_50", "correlation at 50 %", 100, "%.2f %%" },
+  { "overlap_75", "correlation at 75 %", 100, "%.2f %%" },
+  { "overlap", "recommended overlap", 100, "%.2f %%" },
+  { "amplitude_flatness", "  amplitude flatness", 1, "%.4f" },
+  { "power_flatness", "  power flatness", 1, "%.4f" },
+}
+
+local function row(label, text)
+  return ("  %-24s %s"):format(label, text)
+end
+
 function Window:__tostring()
-  local lines = { ("%s (%s)"):format(self.title, self.name), "  source        " .. self.source }
+  local lines = { ("%s (%s)"):format(self.title, self.name), row("source", self.source) }
   if self.parameter_name then
-    lines[#lines + 1] = ("  %-13s %.10g"):format(self.parameter_name, self.parameter)
+    lines[#lines + 1] = row(self.parameter_name, ("%.10g"):format(self.parameter))
   end
   for k, a in ipairs(self.coefficients) do
-    lines[#lines + 1] = ("  a%-12d %.12g"):format(k - 1, a)
+    lines[#lines + 1] = row("a" .. k - 1, ("%.12g"):format(a))
+  end
+  local figures = self:figures()
+  lines[#lines + 1] = row("figures for", figures.length == 0 and "long records"
+    or ("%d samples"):format(figures.length))
+  for _, item in ipairs(printed) do
+    local value = figures[item[1]]
+    lines[#lines + 1] = row(item[2], value and item[4]:format(item[3] * value) or "none")
   end
   return table.concat(lines, "\n")
 end
