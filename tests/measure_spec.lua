@@ -13,7 +13,8 @@ local function plan(changes)
     window = { name = "hann" },
     demand = { unit = "m/s^2", coverage = 3 },
     front = { range = 10, step = 20 / 2 ^ 16 },
-    lines = { { name = "shaft", hz = fraction.new(50) }, { name = "vane", hz = fraction.new(120) } },
+    lines = { { name = "shaft", hz = fraction.new(50) },
+              { name = "vane", hz = fraction.new(120) } },
     claims = {
       { own = 0.01, others = 0.002, sigma = 0.001, hz = 0.05, sigma_hz = 0.01, f_lo = 49,
         f_hi = 51, gain = 1 },

@@ -89,7 +89,8 @@ describe("the spectrum of shaped noise, by scipy.signal.welch,", function()
     local file = assert(io.open(path, "wb"))
     file:write(x:pack())
     file:close()
-    local pipe = assert(io.popen(("env -u LD_PRELOAD /usr/bin/python3 tests/oracle/welch.py %s %.17g %s")
+    local pipe = assert(io.popen(
+      ("env -u LD_PRELOAD /usr/bin/python3 tests/oracle/welch.py %s %.17g %s")
       :format(path, rate, table.concat(edges, " "))))
     local found = {}
     for i = 1, #edges // 2 do

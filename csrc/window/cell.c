@@ -34,7 +34,8 @@ void lbr_curve_derive(const lbr_curve *curve, lbr_curve *out) {
 /* Keeps t <= at. */
 static void keep_left(double *b, int degree, double at) {
   for (int step = 1; step <= degree; step++)
-    for (int i = degree; i >= step; i--) b[i] = b[i - 1] + at * (b[i] - b[i - 1]);
+    for (int i = degree; i >= step; i--)
+      b[i] = b[i - 1] + at * (b[i] - b[i - 1]);
 }
 
 /* Keeps t >= at. */

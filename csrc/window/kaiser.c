@@ -35,5 +35,6 @@ static lbr_status expand(const lbr_window *window, lbr_series *out) {
 }
 
 const lbr_window_shape lbr_kaiser_shape = {
-    "kaiser", "Kaiser", "Kaiser and Schafer 1980; Harris 1978 (alpha = beta/pi)",
+    "kaiser", "Kaiser",
+    "Kaiser and Schafer 1980; Harris 1978 (alpha = beta/pi)",
     0, {0}, "beta", 0, 40, 8.6, fill, expand, NULL};

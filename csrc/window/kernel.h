@@ -16,7 +16,8 @@
 #include "base/status.h"
 #include "window/window.h"
 
-#define LBR_KERNEL_FLOOR 1e-9 /* most that an enclosure is widened by, absolute */
+/* most that an enclosure is widened by, absolute */
+#define LBR_KERNEL_FLOOR 1e-9
 
 typedef struct lbr_kernel lbr_kernel;
 

@@ -190,8 +190,8 @@ double lbr_grid_sin(size_t j) {
 }
 
 /* What the pair of shifts +s and -s adds at x = s, where its pole is. */
-static void add_pole(const lbr_series *s, double shift, double term, double sign,
-                     double jet[3]) {
+static void add_pole(const lbr_series *s, double shift, double term,
+                     double sign, double jet[3]) {
   double inverse = s->n ? 1 / s->m : 0;
   double bend = -LBR_PI * LBR_PI / 3 - 2.0 / 3 * inverse * inverse;
   double share = term / 2;
@@ -207,7 +207,8 @@ static void add_pole(const lbr_series *s, double shift, double term, double sign
 
 void lbr_series_jet(const lbr_series *s, size_t point, double jet[3]) {
   double x = (double)point / LBR_GRID;
-  double sine = lbr_grid_sin(point), cosine = lbr_grid_sin(point + LBR_GRID / 2);
+  double sine = lbr_grid_sin(point);
+  double cosine = lbr_grid_sin(point + LBR_GRID / 2);
   size_t whole = NONE, half = NONE, bin = point / LBR_GRID;
   if (point % LBR_GRID == 0 && bin < s->whole.count) whole = bin;
   if (point % LBR_GRID == 8 && bin < s->half.count) half = bin;

@@ -97,7 +97,8 @@ static plan plan_of(const lbr_window *window, size_t n) {
   return p;
 }
 
-/* One run of a taper: exponent y = x + side * shift, phases about its middle. */
+/* One run of a taper: exponent y = x + side * shift, phases about its
+ * middle. */
 static lbr_jet taper_run(const plan *p, size_t n, double x, int side) {
   double y = x + side * p->shift, sign = 1, count = (double)n;
   if (n && y > count / 2) {
