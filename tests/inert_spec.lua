@@ -169,8 +169,8 @@ describe("writing data", function()
     local cases = {
       { { x = { 1, { y = 1 / 0 } } }, "x[2].y: inf cannot be written" },
       { { x = 0 / 0 }, "x: nan cannot be written" }, { { x = print }, "x: a function" },
-      { { x = { [1.5] = 1 } }, "x: a number as key" },
-      { { x = { [{}] = 1 } }, "x: a table as key" },
+      { { x = { [1.5] = 1 } }, "x: a number as key" }, { { x = { [{}] = 1 } },
+        "x: a table as key" },
       { { x = loop }, "too deep, or contain themselves" }, { { 1 }, "the name 1 cannot" },
       { { ["a b"] = 1 }, "the name a b cannot" }, { { x = { [true] = 1 } }, "a boolean as key" },
     }

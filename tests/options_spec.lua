@@ -32,7 +32,7 @@ describe("option tables", function()
     assert.is_false(ok)
     for _, part in ipairs {
       "plan options: 8 mistakes",
-      'trails: no such field (did you mean "trials"?); fields: lengths, reading, side, trials, within',
+      'trails: no such field (did you mean "trials"?); fields: lengths, reading, side, trials',
       "[3]: no such field; fields:", "trials: 0 is out of range; give at least 1 and at most 1000",
       'reading: "tracket" is not one of bin, tracked (did you mean "tracked"?)',
       "lengths: 4 items; give 1 to 3", "side.by: missing", "side.bye: no such field",
@@ -68,13 +68,16 @@ describe("option tables", function()
   end)
 
   it("stop listing after fifty, and say how many more there are", function()
-    local input = {}
+    local many, list = {}, {}
     for i = 1, 80 do
-      input["field" .. i] = i
+      many["field" .. i], list[i] = i, 0
     end
-    local _, message = pcall(options.take, {}, input, "options")
+    local numbers = { n = { options.list(options.integer(1, 9), 1, 99) } }
+    local _, message = pcall(options.take, numbers, { n = list }, "options")
     assert.matches("options: 80 mistakes", message, 1, true)
     assert.matches("and 30 more", message, 1, true)
+    _, message = pcall(options.take, numbers, many, "options")
+    assert.matches("80 fields that there are not; fields: n", message, 1, true)
   end)
 
   it("never run, follow or trip over what a caller's table hides", function()

@@ -27,7 +27,8 @@ end
 local function read_digitizers(data, mistakes)
   local list = data.digitizers
   if list == nil then
-    return data.digitizer and { part(data.digitizer, "digitizer", digitizer.read, mistakes) }
+    return data.digitizer ~= nil
+      and { part(data.digitizer, "digitizer", digitizer.read, mistakes) } or nil
   elseif type(list) ~= "table" or data.digitizer ~= nil then
     mistakes:add("digitizers", "give digitizer = { ... } or digitizers = { { ... }, ... }")
     return nil

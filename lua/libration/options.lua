@@ -103,6 +103,15 @@ function Mistakes:add(path, reason)
   end
 end
 
+--- Whether there are more mistakes than a message shows, so that no more need
+-- be worded with care.
+-- @return boolean: true from the 50th on
+-- @usage
+-- assert(not require("libration.options").mistakes():enough())
+function Mistakes:enough()
+  return self.count >= MOST_MISTAKES
+end
+
 --- All mistakes as one message, in the order found.
 -- @param what string: of what they are, "demand"
 -- @return string: a line per mistake
@@ -149,9 +158,14 @@ local function report_unknown(schema, input, path, mistakes)
       unknown[#unknown + 1] = key
     end
   end
+  if #unknown > MOST_MISTAKES then
+    mistakes:add(path, ("%d fields that there are not; fields: %s"):format(#unknown,
+      table.concat(names, ", ")))
+    return
+  end
   table.sort(unknown, function(a, b) return M.join("", a) < M.join("", b) end)
   for _, key in ipairs(unknown) do
-    local near = type(key) == "string" and M.nearest(key, names)
+    local near = type(key) == "string" and not mistakes:enough() and M.nearest(key, names)
     mistakes:add(M.join(path, key), ("no such field%s; fields: %s"):format(
       near and (' (did you mean "%s"?)'):format(near) or "", table.concat(names, ", ")))
   end

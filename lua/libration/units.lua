@@ -11,7 +11,7 @@ local symbols = require "libration.units.symbols"
 local M = {}
 
 local fraction = base.fraction
-local MOST_ORDERS = 1000
+local MOST_ORDERS, MOST_BYTES = 1000, 500
 
 -- An example for each unit that the readers are asked for.
 local examples = {
@@ -21,9 +21,13 @@ local examples = {
   ["V/(m/s^2)"] = '"100 mV/g"', ["V/Pa"] = '"50 mV/Pa"', rate = '"0.4 rate"',
 }
 
--- Spellings that mean the same everywhere.
+-- The text without blanks around it and with a plain minus sign.
 local function plain(text)
-  return (text:gsub("−", "-"):gsub("^%s+", ""):gsub("%s+$", ""))
+  local first, last = text:find "%S", #text
+  while first and text:find("^%s", last) do -- "%s+$" is slow on long blanks
+    last = last - 1
+  end
+  return first and text:sub(first, last):gsub("−", "-") or ""
 end
 
 -- Characters of the decimal number at text[at], or nil.
@@ -85,6 +89,9 @@ end
 -- local q = lb.units.parse "12.288 MHz"
 -- assert(tostring(q.exact) == "12288000" and q.unit == "MHz")
 function M.parse(text)
+  if #text > MOST_BYTES then
+    return nil, shown(text) .. " is too long for a quantity"
+  end
   local digits, rest = split(plain(text))
   if not digits then
     return nil, shown(text) .. " does not begin with a number"
@@ -327,6 +334,9 @@ end
 -- local lo, hi = lb.units.range "0.05..2 m/s^2"
 -- assert(lo == "0.05 m/s^2" and hi == "2 m/s^2")
 function M.range(text)
+  if #text > MOST_BYTES then
+    return nil
+  end
   local lo, hi = plain(text):match "^(.-)%s*%.%.%s*(.+)$"
   if not lo then
     return nil
@@ -359,6 +369,26 @@ local function add_orders(list, item)
   return reason
 end
 
+-- The items of an order list in whatever form; nil and a reason.
+local function order_items(value)
+  local items = {}
+  if type(value) == "table" then
+    for key in next, value do
+      if math.type(key) ~= "integer" or key < 1 or key > MOST_ORDERS then
+        return nil, ('a list of orders is { 1, 2, "7/2" }, at most %d of them'):format(MOST_ORDERS)
+      end
+      items[key] = rawget(value, key)
+    end
+  elseif type(value) == "string" and #value <= 10 * MOST_BYTES then
+    for item in (value .. ","):gmatch "([^,]*)," do
+      items[#items + 1] = plain(item)
+    end
+  else
+    items[1] = value
+  end
+  return items
+end
+
 --- Reads orders: "1..20", "1, 3, 7/2", 3 or a list of these.
 -- @param value string or number or fraction or table: all must be positive
 -- @return table: fractions in the order given; or nil and a reason
@@ -366,29 +396,20 @@ end
 -- local orders = lb.units.orders "1..3, 7/2"
 -- assert(#orders == 4 and tostring(orders[4]) == "7/2")
 function M.orders(value)
-  local items, list, seen = {}, {}, {}
-  if type(value) == "table" then
-    for key in next, value do
-      if math.type(key) ~= "integer" or key < 1 or key > MOST_ORDERS then
-        return nil, 'a list of orders has no named fields; give { 1, 2, "7/2" }'
-      end
-      items[key] = rawget(value, key)
+  local items, reason = order_items(value)
+  local list, seen = {}, {}
+  for _, item in ipairs(items or {}) do
+    reason = add_orders(list, item)
+    if reason or #list > MOST_ORDERS then
+      break
     end
-  elseif type(value) == "string" then
-    for item in (value .. ","):gmatch "%s*([^,]-)%s*," do
-      items[#items + 1] = item
-    end
-  else
-    items[1] = value
   end
-  for _, item in ipairs(items) do
-    local reason = add_orders(list, item)
-    if reason then
-      return nil, reason
-    end
+  if reason then
+    return nil, reason
   end
   if #list == 0 or #list > MOST_ORDERS then
-    return nil, ('%d orders; give 1 to %d, such as "1..20"'):format(#list, MOST_ORDERS)
+    return nil, ('%s orders; give 1 to %d, such as "1..20"'):format(
+      #list == 0 and "no" or "too many", MOST_ORDERS)
   end
   for _, order in ipairs(list) do
     if order <= 0 or seen[tostring(order)] then

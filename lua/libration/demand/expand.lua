@@ -73,6 +73,10 @@ function Expansion:find(name, path)
   if product then
     return product:place()
   end
+  if self.mistakes:enough() then
+    self.mistakes:add(path, "no such line")
+    return nil
+  end
   local names = {}
   for known, item in pairs(self.names) do
     if item.entry.broken and name:sub(1, #known) == known then

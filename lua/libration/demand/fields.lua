@@ -181,12 +181,24 @@ function M.tolerance_hz()
 end
 
 --- Kind of a list of orders: "1..20", { 1, "7/2" }.
+-- @param most integer: orders that all lists read by it may have together,
+-- default 5000
 -- @return function: kind giving a list of fractions
 -- @usage
 -- local fields, options = require "libration.demand.fields", require "libration.options"
 -- assert(#fields.orders()("1..20", "orders", options.mistakes()) == 20)
-function M.orders()
-  return options.quantity(units.orders)
+function M.orders(most)
+  most = most or 5000
+  local left = most
+  local read = options.quantity(units.orders)
+  return function(value, path, mistakes)
+    local orders = left >= 0 and read(value, path, mistakes) or nil
+    left = left - (orders and #orders or 0)
+    if left >= 0 then
+      return orders
+    end
+    mistakes:add(path, ("more than %d orders in all"):format(most))
+  end
 end
 
 --- Kind that notes in its table where it stood (path), whether something in it
@@ -218,10 +230,11 @@ end
 -- assert(require("libration.demand.fields").schema("V").lines.required)
 function M.schema(unit)
   local amplitude, tolerance_kind = M.amplitude(unit), M.tolerance(unit)
+  local orders = M.orders()
   local frequency = options.quantity(units.hz, { above = base.fraction(0), unit = "Hz" })
   local side = options.record {
     by = { options.text(), required = true, hint = 'name the line, by = "shaft"' },
-    orders = { M.orders(), required = true, hint = 'give orders, "1..3"' },
+    orders = { orders, required = true, hint = 'give orders, "1..3"' },
     amplitude = { amplitude }, tolerance = { tolerance_kind }, tolerance_hz = { M.tolerance_hz() },
   }
   local function source(extra)
@@ -230,7 +243,7 @@ function M.schema(unit)
       hz = { frequency }, of = { options.text() },
       times = { options.quantity(function(value) return units.exact(value, "1") end,
         { above = base.fraction(0) }) },
-      orders = { M.orders() }, sidebands = { side }, amplitude = { amplitude },
+      orders = { orders }, sidebands = { side }, amplitude = { amplitude },
       drift = { M.movement(1) }, wander = { M.movement(1) },
     }
     for name, row in pairs(extra) do

@@ -46,8 +46,9 @@ function Parser:skip()
     self.at = at
     if text:sub(at, at + 1) ~= "--" then
       return
-    elseif text:sub(at, at + 3) == "--[[" then
-      local _, stop = text:find("]]", at + 4, true)
+    elseif text:find("^%-%-%[=*%[", at) then
+      local bars = text:match("^%-%-%[(=*)", at)
+      local _, stop = text:find("]" .. bars .. "]", at + 4 + #bars, true)
       if not stop then
         self:mistake(at, "this comment is not closed")
       end
@@ -69,18 +70,22 @@ end
 
 -- After a mistake: on to the comma or closing brace of this level.
 function Parser:recover()
-  local depth = 0
-  while self.at <= #self.text do
-    local mark = self.text:sub(self.at, self.at)
-    if depth == 0 and mark:find "[,;}]" then
+  local depth, text = 0, self.text
+  while true do
+    local at = text:find("[,;{}\"'-]", self.at)
+    local mark = at and text:sub(at, at)
+    self.at = at or #text + 1
+    if not at or depth == 0 and mark:find "[,;}]" then
       return
     elseif mark == '"' or mark == "'" then
-      local _, stop = self.text:find("^[^\n" .. mark .. "]*" .. mark .. "?", self.at + 1)
-      self.at = stop
+      local _, stop = text:find("^[^\n" .. mark .. "]*" .. mark .. "?", at + 1)
+      self.at = stop + 1
+    elseif text:find("^%-%-", at) then
+      self:skip()
+    else
+      depth = depth + (mark == "{" and 1 or mark == "}" and -1 or 0)
+      self.at = at + 1
     end
-    depth = depth + (mark == "{" and 1 or mark == "}" and -1 or 0)
-    self.at = self.at + 1
-    self:skip()
   end
 end
 
