@@ -113,6 +113,10 @@ describe("check-symbols #checks", function()
     compile("int luaopen_x(void) { return 1; } int helper(void) { return 2; }", "exports helper")
   end)
 
+  it("sees what nothing defines", function()
+    compile("int lbr_x(void); int luaopen_x(void) { return lbr_x(); }", "nothing defines lbr_x")
+  end)
+
   it("lets tables of constants be", function()
     compile('static const char *const names[] = {"a", "b"};\n'
       .. "int luaopen_x(int i) { return names[i][0]; }")

@@ -54,7 +54,7 @@ local function setup(arguments, environment)
     folder, folder, environment or "", arguments or ""))
 end
 
-describe("scripts/setup", function()
+describe("scripts/setup #checks", function()
   before_each(function()
     folder = os.tmpname()
     os.remove(folder)

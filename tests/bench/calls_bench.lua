@@ -1,6 +1,7 @@
 -- W9: what it costs to come in, and what a call costs.
 
 local core = require "libration.core"
+local lb = require "libration"
 
 -- A new process each time: requiring again in this one would find everything
 -- loaded. The child tells the processor time that it took; that of starting
@@ -15,17 +16,27 @@ local function import(code)
   end
 end
 
-local rooms = 'local lb = require "libration"; local _ = lb.units, lb.filter'
-local x = core.samples.new(64)
+local rooms = 'local lb = require "libration" local _ = lb.units, lb.filter, lb.window, lb.demand'
+local values = {}
+for i = 1, 64 do
+  values[i] = math.sin(2.385 * i) + 0.1 * math.cos(0.917 * i * i)
+end
+local x = core.samples.from(values)
+local w = lb.window("hann"):samples(64)
 
 return {
   { name = "W9 import", work = "require the library, fresh state", goal = 5e-3,
     ours = import 'require "libration"', peer = "w9_import.py" },
-  { name = "W9 import and use", work = "two rooms loaded too", goal = 5e-3,
+  { name = "W9 import and use", work = "four rooms loaded too",
     ours = import(rooms), peer = "w9_import.py" },
-  { name = "W9 call", work = "a call on 64 samples (length)", goal = 0.5e-6, times = 100000,
-    peer = "w9_call.py", peer_times = 200,
+  { name = "W9 call", work = "effective value of 64 samples", goal = 0.5e-6, times = 100000,
+    peer = "w9_rms.py", peer_times = 2000,
     ours = function()
-      local _ = #x
+      x:rms()
+    end },
+  { name = "W9 windowed", work = "windowed transform of 64 samples", times = 10000,
+    peer = "w9_windowed.py", peer_times = 2000,
+    ours = function()
+      core.spectrum.windowed(x, w)
     end },
 }

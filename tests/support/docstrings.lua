@@ -235,10 +235,10 @@ end
 -- What the C compiler calls "functions" is public under the room's name in
 -- Lua; every other table holds the methods of a class.
 local function c_name(row, stem, core)
-  if row.list:match("methods") then
-    return stem .. ":" .. row.name
-  end
   local room = room_of(stem, core)
+  if row.list:match("methods") then
+    return room .. ":" .. row.name
+  end
   if core[room] and core[room][row.name] then
     return "core." .. room .. "." .. row.name
   end
