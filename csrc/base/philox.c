@@ -1,6 +1,7 @@
+/* LBR_NO_WIDE leaves the hand-made AVX-512 loop out, to compare with. */
 #include "base/philox.h"
 
-#if defined(__x86_64__)
+#if defined(__x86_64__) && !defined(LBR_NO_WIDE)
 #include <immintrin.h>
 #endif
 
@@ -49,7 +50,7 @@ run_plain(const uint32_t key[2], const uint32_t high[2], uint64_t first,
     }
 }
 
-#if defined(__x86_64__)
+#if defined(__x86_64__) && !defined(LBR_NO_WIDE)
 /* Eight counters in 64-bit lanes.  Only the low halves of the lanes count:
  * the multiplication does not see what the shifts and xors leave above. */
 __attribute__((target("avx512f"))) static void
@@ -86,7 +87,7 @@ run_wide(const uint32_t key[2], const uint32_t high[2], uint64_t first,
 
 void lbr_philox_run(const uint32_t key[2], const uint32_t high[2],
                     uint64_t first, uint64_t *low, uint64_t *up, size_t n) {
-#if defined(__x86_64__)
+#if defined(__x86_64__) && !defined(LBR_NO_WIDE)
   if (__builtin_cpu_supports("avx512f")) {
     run_wide(key, high, first, low, up, n);
     return;

@@ -27,7 +27,7 @@ local PYTHON = "/usr/bin/python3"
 local function median(list)
   table.sort(list)
   local n = #list
-  return n == 0 and nil or (list[(n + 1) // 2] + list[n // 2 + 1]) / 2
+  return n > 0 and (list[(n + 1) // 2] + list[n // 2 + 1]) / 2 or nil
 end
 
 -- Seconds of one go, however the work tells them.
