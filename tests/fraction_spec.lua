@@ -194,6 +194,16 @@ for line in sys.stdin:
     end
   end)
 
+  it("compare with numbers and texts, but equal only fractions", function()
+    assert.is_true(f(7, 2) < 3.6 and 3.4 < f(7, 2) and f(7, 2) <= "7/2" and f(1, 3) > 0.3333)
+    assert.is_false(f(1, 2) == 0.5)
+    assert.equal(f(5, 6), f(1, 2) + "1/3")
+    assert.equal(f(3, 2), 0.5 + f(1))
+    assert.is_true(base.is_fraction(f(1)) and not base.is_fraction {})
+    assert.has_error(function() return f(1) < {} end)
+    assert.has_error(function() return f(1).number(5, 6) < "x" end)
+  end)
+
   it("write decimals that read back", function()
     assert.equal("24.6", fraction.decimal "123/5")
     assert.equal("-0.5", fraction.decimal(f(-1, 2)))
@@ -265,6 +275,12 @@ assert(base.number_text(0.1) == "0.1" and base.number_text(1.5e-300) == "1.5e-30
 assert(base.number_read "1.5" == 1.5 and base.number_read "1,5" == nil)
 assert(tostring(base.fraction(24.6)) == "123/5")
 assert(tostring(base.fraction "0.3") == "3/10" and base.fraction(1, 3):number() == 1 / 3)
+local lb, inert = require "libration", require "libration.inert"
+assert(tostring(lb.units.hz "24.6 Hz") == "123/5" and lb.units.text(0.25) == "0.25")
+assert(inert.read("x = 1.5").x == 1.5 and inert.write { x = 1.5 } == "x = 1.5\n")
+local demand = lb.demand { unit = "V", lines = { { name = "a", hz = 24.6, drift = "0.1 %",
+  amplitude = { 0.5, 1.5 }, tolerance = 0.015 } } }
+assert(not tostring(demand):find "%d,%d" and tostring(demand):find("0.5..1.5", 1, true))
 print "same"
 ]])
     assert(file:close())
