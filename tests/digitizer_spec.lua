@@ -57,6 +57,20 @@ describe("the quantiser", function()
     end
   end)
 
+  it("gives the codes on request: value = code * step, ends included", function()
+    for _, bits in ipairs { 1, 3, 12, 24, 32 } do
+      local x, _, codes = record { rate = 1000, samples = 3000, bits = bits, range = 1.7,
+        codes = true, tones = { { hz = 33.3, amplitude = 1.9 } } }
+      local step, most = 1.7 / 2 ^ (bits - 1), 2 ^ (bits - 1)
+      assert(x == codes * step and codes:max() == most - 1 and codes:min() == -most)
+      for i = 1, 3000, 17 do
+        local v = 1.9 * math.cos(TAU * 33.3 * (i - 1) / 1000)
+        local held = math.max(-most, math.min(most - 1, v / step))
+        assert(codes[i] == math.floor(codes[i]) and math.abs(codes[i] - held) <= 0.5 + 1e-5)
+      end
+    end
+  end)
+
   it("counts what the rails changed: 1 % over-drive, 9 % of the samples", function()
     -- Share of a sine above 1 / 1.01 of its peak, both sides: 2 acos(1/1.01) / pi.
     local n = 100000
@@ -189,6 +203,7 @@ describe("a model", function()
     raises("range is missing; bits = 8 needs it", record, { rate = 1, samples = 1, bits = 8 })
     raises("give samples (how many) or into", record, { rate = 1 })
     raises("bits", record, { rate = 1, samples = 1, bits = 33, range = 1 })
+    raises("bits is missing", record, { rate = 1, samples = 1, codes = true })
     raises("shape", record, { rate = 1, samples = 1, filter = { shape = "brick" } })
   end)
 
@@ -207,6 +222,7 @@ describe("a model", function()
     raises("domain", core.synth.record, x, { rate = 1, jitter_s = -1 })
     raises("domain", core.synth.record, x, { rate = 1, tones = { { hz = -1 } } })
     raises("domain", core.synth.record, x, { rate = 1, tones = { { hz = 1, swing_hz = 1 } } })
+    raises("codes is not samples", core.synth.record, x, { rate = 1, codes = core.samples.new(3) })
     raises("bits is outside", core.synth.record, x, { rate = 1, bits = 64 })
     raises("rate is not finite", core.synth.record, x, { rate = 1 / 0 })
   end)

@@ -1,6 +1,6 @@
 /* Signals and records from option tables. */
 #include <math.h>
-#include <string.h>
+#include <stdbool.h>
 
 #include "bind/filter.h"
 #include "bind/samples.h"
@@ -11,8 +11,10 @@
 #define BANK_CLASS "libration.synth.bank"
 #define WORK_CLASS "libration.synth.work"
 
-double lbr_field_or_infinite(lua_State *L, int table, const char *name,
-                             double absent) {
+/* Field of the table at `table` (absolute index) as a number that may be
+ * infinite; absent: the default.  Raises an error that names the field. */
+static double loose_field(lua_State *L, int table, const char *name,
+                          double absent) {
   lua_pushstring(L, name);
   int kind = lua_rawget(L, table);
   double value = lua_tonumber(L, -1);
@@ -23,14 +25,15 @@ double lbr_field_or_infinite(lua_State *L, int table, const char *name,
   return value;
 }
 
-double lbr_field(lua_State *L, int table, const char *name, double absent) {
-  double value = lbr_field_or_infinite(L, table, name, absent);
+static double field(lua_State *L, int table, const char *name,
+                    double absent) {
+  double value = loose_field(L, table, name, absent);
   if (!isfinite(value)) luaL_error(L, "%s is not finite", name);
   return value;
 }
 
-lua_Integer lbr_whole_field(lua_State *L, int table, const char *name,
-                            lua_Integer absent) {
+static lua_Integer whole_field(lua_State *L, int table, const char *name,
+                               lua_Integer absent) {
   int whole;
   lua_pushstring(L, name);
   int kind = lua_rawget(L, table);
@@ -42,7 +45,9 @@ lua_Integer lbr_whole_field(lua_State *L, int table, const char *name,
   return value;
 }
 
-size_t lbr_list_field(lua_State *L, int table, const char *name, size_t most) {
+/* Pushes a field that is a list or nil, returns its length. */
+static size_t list_field(lua_State *L, int table, const char *name,
+                         size_t most) {
   lua_pushstring(L, name);
   int kind = lua_rawget(L, table);
   if (kind == LUA_TNIL) return 0;
@@ -54,13 +59,15 @@ size_t lbr_list_field(lua_State *L, int table, const char *name, size_t most) {
   return n;
 }
 
-void lbr_push_item(lua_State *L, size_t i, const char *name) {
+/* Pushes item i (from 1) of the list at the top. */
+static void push_item(lua_State *L, size_t i, const char *name) {
   if (lua_rawgeti(L, -1, (lua_Integer)i) != LUA_TTABLE)
     luaL_error(L, "%s[%I] is not a table", name, (LUAI_UACINT)i);
 }
 
-bool lbr_shape_field(lua_State *L, int table, const char *name,
-                     lbr_shape *shape) {
+/* A field that is the taps of a shape, or nil (false). */
+static bool shape_field(lua_State *L, int table, const char *name,
+                        lbr_shape *shape) {
   lua_pushstring(L, name);
   int kind = lua_rawget(L, table);
   const lbr_view *view = luaL_testudata(L, -1, LBR_SAMPLES_CLASS);
@@ -93,23 +100,23 @@ static const luaL_Reg work_meta[] = {{"__gc", close_work}, {NULL, NULL}};
 
 static lbr_tone tone_at_top(lua_State *L) {
   int t = lua_gettop(L);
-  return (lbr_tone){.amplitude = lbr_field(L, t, "amplitude", 0),
-                    .cycles = lbr_field(L, t, "cycles", 0),
-                    .phase = lbr_field(L, t, "phase", 0),
-                    .ramp = lbr_field(L, t, "ramp", 0),
-                    .swing = lbr_field(L, t, "swing", 0),
-                    .beat = lbr_field(L, t, "beat", 0),
-                    .swing_phase = lbr_field(L, t, "swing_phase", 0)};
+  return (lbr_tone){.amplitude = field(L, t, "amplitude", 0),
+                    .cycles = field(L, t, "cycles", 0),
+                    .phase = field(L, t, "phase", 0),
+                    .ramp = field(L, t, "ramp", 0),
+                    .swing = field(L, t, "swing", 0),
+                    .beat = field(L, t, "beat", 0),
+                    .swing_phase = field(L, t, "swing_phase", 0)};
 }
 
 /* Pushes a handle that holds a bank of the tones of the table at `table`;
  * their memory until then is a userdata as well. */
 static lbr_bank **push_bank(lua_State *L, int table) {
-  size_t n = lbr_list_field(L, table, "tones", LBR_MOST_TONES);
+  size_t n = list_field(L, table, "tones", LBR_MOST_TONES);
   lbr_tone *tones = lua_newuserdatauv(L, n * sizeof *tones + 1, 0);
   lua_insert(L, -2);
   for (size_t i = 0; i < n; i++) {
-    lbr_push_item(L, i + 1, "tones");
+    push_item(L, i + 1, "tones");
     tones[i] = tone_at_top(L);
     lua_pop(L, 1);
   }
@@ -125,14 +132,14 @@ static lbr_bank **push_bank(lua_State *L, int table) {
 
 static lbr_key key_fields(lua_State *L, int table) {
   return lbr_key_of(
-      (uint64_t)lbr_whole_field(L, table, "seed", 0),
-      (uint64_t)lbr_whole_field(L, table, "trial", 0),
-      (uint64_t)lbr_whole_field(L, table, "channel", 0),
-      (uint64_t)lbr_whole_field(L, table, "purpose", LBR_PURPOSE_INPUT_NOISE));
+      (uint64_t)whole_field(L, table, "seed", 0),
+      (uint64_t)whole_field(L, table, "trial", 0),
+      (uint64_t)whole_field(L, table, "channel", 0),
+      (uint64_t)whole_field(L, table, "purpose", LBR_PURPOSE_INPUT_NOISE));
 }
 
 static unsigned workers_field(lua_State *L, int table) {
-  lua_Integer workers = lbr_whole_field(L, table, "workers", 0);
+  lua_Integer workers = whole_field(L, table, "workers", 0);
   if (workers < 0 || workers > 256)
     luaL_error(L, "workers is outside 0 .. 256");
   return (unsigned)workers;
@@ -158,12 +165,12 @@ static int synth_fill(lua_State *L) {
   lbr_shape shape;
   double *x = lbr_check_writable_samples(L, 1, &n);
   luaL_checktype(L, 2, LUA_TTABLE);
-  lbr_signal s = {.offset = lbr_field(L, 2, "offset", 0),
-                  .sigma = lbr_field(L, 2, "sigma", 0),
+  lbr_signal s = {.offset = field(L, 2, "offset", 0),
+                  .sigma = field(L, 2, "sigma", 0),
                   .key = key_fields(L, 2)};
-  uint64_t first = (uint64_t)lbr_whole_field(L, 2, "first", 0);
+  uint64_t first = (uint64_t)whole_field(L, 2, "first", 0);
   unsigned workers = workers_field(L, 2);
-  if (lbr_shape_field(L, 2, "taps", &shape)) s.shape = &shape;
+  if (shape_field(L, 2, "taps", &shape)) s.shape = &shape;
   lbr_bank **bank = push_bank(L, 2);
   s.bank = *bank;
   lbr_status status = lbr_signal_fill(&s, first, x, n, workers);
@@ -176,22 +183,22 @@ static int synth_fill(lua_State *L) {
 
 static lbr_input_tone input_tone_at_top(lua_State *L) {
   int t = lua_gettop(L);
-  return (lbr_input_tone){.hz = lbr_field(L, t, "hz", 0),
-                          .amplitude = lbr_field(L, t, "amplitude", 0),
-                          .phase = lbr_field(L, t, "phase", 0),
-                          .ramp = lbr_field(L, t, "ramp", 0),
-                          .swing_hz = lbr_field(L, t, "swing_hz", 0),
-                          .swing_s = lbr_field(L, t, "swing_s", 0),
-                          .swing_phase = lbr_field(L, t, "swing_phase", 0)};
+  return (lbr_input_tone){.hz = field(L, t, "hz", 0),
+                          .amplitude = field(L, t, "amplitude", 0),
+                          .phase = field(L, t, "phase", 0),
+                          .ramp = field(L, t, "ramp", 0),
+                          .swing_hz = field(L, t, "swing_hz", 0),
+                          .swing_s = field(L, t, "swing_s", 0),
+                          .swing_phase = field(L, t, "swing_phase", 0)};
 }
 
 /* Leaves the memory of the tones on the stack. */
 static void push_input_tones(lua_State *L, int table, lbr_record_model *m) {
-  size_t n = lbr_list_field(L, table, "tones", LBR_MOST_TONES);
+  size_t n = list_field(L, table, "tones", LBR_MOST_TONES);
   lbr_input_tone *tones = lua_newuserdatauv(L, n * sizeof *tones + 1, 0);
   lua_insert(L, -2);
   for (size_t i = 0; i < n; i++) {
-    lbr_push_item(L, i + 1, "tones");
+    push_item(L, i + 1, "tones");
     tones[i] = input_tone_at_top(L);
     lua_pop(L, 1);
   }
@@ -201,21 +208,33 @@ static void push_input_tones(lua_State *L, int table, lbr_record_model *m) {
 }
 
 static void model_fields(lua_State *L, int t, lbr_record_model *m) {
-  lua_Integer bits = lbr_whole_field(L, t, "bits", 0);
+  lua_Integer bits = whole_field(L, t, "bits", 0);
   if (bits < 0 || bits > 32) luaL_error(L, "bits is outside 0 .. 32");
   m->bits = (int)bits;
-  m->offset = lbr_field(L, t, "offset", 0);
-  m->rate = lbr_field(L, t, "rate", 0);
-  m->timebase = lbr_field(L, t, "timebase", 0);
-  m->delay_s = lbr_field(L, t, "delay_s", 0);
-  m->jitter_s = lbr_field(L, t, "jitter_s", 0);
-  m->gain_error = lbr_field(L, t, "gain_error", 0);
-  m->input_noise = lbr_field(L, t, "input_noise", 0);
-  m->own_noise = lbr_field(L, t, "own_noise", 0);
-  m->range = lbr_field_or_infinite(L, t, "range", INFINITY);
-  m->seed = (uint64_t)lbr_whole_field(L, t, "seed", 0);
-  m->trial = (uint64_t)lbr_whole_field(L, t, "trial", 0);
-  m->channel = (uint64_t)lbr_whole_field(L, t, "channel", 0);
+  m->offset = field(L, t, "offset", 0);
+  m->rate = field(L, t, "rate", 0);
+  m->timebase = field(L, t, "timebase", 0);
+  m->delay_s = field(L, t, "delay_s", 0);
+  m->jitter_s = field(L, t, "jitter_s", 0);
+  m->gain_error = field(L, t, "gain_error", 0);
+  m->input_noise = field(L, t, "input_noise", 0);
+  m->own_noise = field(L, t, "own_noise", 0);
+  m->range = loose_field(L, t, "range", INFINITY);
+  m->seed = (uint64_t)whole_field(L, t, "seed", 0);
+  m->trial = (uint64_t)whole_field(L, t, "trial", 0);
+  m->channel = (uint64_t)whole_field(L, t, "channel", 0);
+}
+
+/* Pushes room for n codes where the field `codes`, samples, asks for them. */
+static int32_t *push_codes(lua_State *L, int table, size_t n, double **codes) {
+  lua_pushliteral(L, "codes");
+  int kind = lua_rawget(L, table);
+  const lbr_view *view = luaL_testudata(L, -1, LBR_SAMPLES_CLASS);
+  if (kind == LUA_TNIL) return NULL;
+  if (!view || view->n != n)
+    luaL_error(L, "codes is not samples, as many as the record has");
+  *codes = view->data;
+  return lua_newuserdatauv(L, n * sizeof(int32_t) + 1, 0);
 }
 
 static lbr_record_work **push_work(lua_State *L, size_t tones) {
@@ -235,7 +254,8 @@ static lbr_record_work **push_work(lua_State *L, size_t tones) {
  *   (relative); filter (as core.filter.prepare takes it); delay_s; jitter_s;
  *   gain_error (relative); input_noise, own_noise (unit/sqrt(Hz)); input_shape
  *   (taps of core.synth.input_shape); bits (0: no quantiser); range; seed,
- *   trial, channel (integers); first (number of the first sample)
+ *   trial, channel (integers); first (number of the first sample); codes
+ *   (samples, as many: filled with the integer codes; needs bits)
  * @return integer: samples that the rails changed; raises where a field is out
  *   of range
  * @usage
@@ -249,21 +269,23 @@ static int synth_record(lua_State *L) {
   lbr_shape shape;
   lbr_filter filter;
   lbr_record_facts facts = {0};
-  double *x = lbr_check_writable_samples(L, 1, &n);
+  double *codes = NULL, *x = lbr_check_writable_samples(L, 1, &n);
   luaL_checktype(L, 2, LUA_TTABLE);
   lbr_record_model m = {0};
   model_fields(L, 2, &m);
-  uint64_t first = (uint64_t)lbr_whole_field(L, 2, "first", 0);
-  if (lbr_shape_field(L, 2, "input_shape", &shape)) m.input_shape = &shape;
+  uint64_t first = (uint64_t)whole_field(L, 2, "first", 0);
+  if (shape_field(L, 2, "input_shape", &shape)) m.input_shape = &shape;
   lua_getfield(L, 2, "filter");
   lbr_check_filter(L, lua_gettop(L), &filter);
   m.filter = &filter;
   push_input_tones(L, 2, &m);
+  int32_t *whole = push_codes(L, 2, n, &codes);
   lbr_record_work **work = push_work(L, m.n_tones);
-  lbr_status status = lbr_synth_record(&m, first, x, NULL, n, *work, &facts);
+  lbr_status status = lbr_synth_record(&m, first, x, whole, n, *work, &facts);
   lbr_record_work_free(*work);
   *work = NULL;
   if (status != LBR_OK) return lbr_raise(L, status, "record");
+  for (size_t i = 0; whole && i < n; i++) codes[i] = whole[i];
   lua_pushinteger(L, (lua_Integer)facts.clipped);
   return 1;
 }

@@ -235,6 +235,7 @@ local record_schema = schema_with {
   noise_taps = { options.integer(0, 2048), default = 128 },
   bits = { options.integer(0, 32), default = 0 },
   range = { options.number { above = 0 }, default = math.huge },
+  codes = { options.boolean(), default = false },
 }
 
 --- What a digitizer makes of tones and noise.
@@ -246,9 +247,10 @@ local record_schema = schema_with {
 -- channel as in tones; timebase (relative), filter (as lb.filter takes it),
 -- delay_s, jitter_s, gain_error (relative), input_noise and own_noise
 -- (unit/sqrt(Hz)), noise_taps (of the shaping, 128), bits (0: no quantiser),
--- range (largest |value|, needed with bits)
+-- range (largest |value|, needed with bits), codes (true: integer codes too)
 -- @return samples: the record, in the tones' unit
 -- @return integer: how many samples the rails changed
+-- @return samples: the integer codes, where asked for
 -- @usage
 -- local x, clipped = lb.synth.record { rate = 1000, samples = 500, bits = 16, range = 5,
 --   tones = { { hz = 50, amplitude = 3 } },
@@ -258,12 +260,15 @@ function M.record(spec)
   local read = options.take(record_schema, spec, "record")
   if read.bits > 0 and read.range == math.huge then
     error("record: range is missing; bits = " .. read.bits .. " needs it", 0)
+  elseif read.bits == 0 and read.codes then
+    error("record: bits is missing; codes = true needs it", 0)
   end
   local x = target(read, "record")
+  read.codes = read.codes and core.samples.new(#x) or nil
   if read.filter and read.filter.shape ~= "none" and read.input_noise > 0 then
     read.input_shape = core.synth.input_shape(read.filter, read.rate, read.noise_taps)
   end
-  return x, core.synth.record(x, read)
+  return x, core.synth.record(x, read), read.codes
 end
 
 return M
