@@ -94,8 +94,9 @@ static void solve(const fit *f, lbr_series *out) {
 double lbr_fit_value(const lbr_series *s, double u) {
   double sum = 0;
   for (size_t k = 0; k < s->whole.terms; k++)
-    sum += s->whole.shape[k] * cos(2 * LBR_PI * (double)k * u) +
-           s->half.shape[k] * cos(LBR_PI * (double)(2 * k + 1) * u);
+    sum += s->whole.shape[k] * cos(2 * LBR_PI * (double)k * u);
+  for (size_t k = 0; k < s->half.terms; k++)
+    sum += s->half.shape[k] * cos(LBR_PI * (double)(2 * k + 1) * u);
   return sum;
 }
 

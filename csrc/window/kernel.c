@@ -69,11 +69,12 @@ static void walk_cell(walk *w, lbr_curve *curve, double *t1, double *t2) {
   w->point++;
 }
 
-/* True at whole bins where nothing farther out can exceed `high`. */
+/* True at whole bins where nothing farther out can exceed `high`, with at
+ * least one more bin, and so a zero of any far response, to come. */
 static int settled(const walk *w, size_t first, double high, int slope,
                    double *bound) {
   double value, steep;
-  if (w->point % LBR_GRID || w->point > w->last) return 0;
+  if (w->point % LBR_GRID || w->point + LBR_GRID > w->last) return 0;
   lbr_model_beyond(w->kernel, (double)w->point / LBR_GRID, &value, &steep);
   *bound = slope ? steep : value;
   return *bound <= high || w->point - first > SEARCH * LBR_GRID;
