@@ -147,6 +147,25 @@ describe("the transform", function()
   end)
 end)
 
+describe("lb.spectrum", function()
+  local lb = require "libration"
+
+  it("transforms, pads, windows and comes back", function()
+    local x, w = core.samples.from(values(20, 0.37)), core.samples.from(values(20, 0.91))
+    local t = lb.spectrum.transform(x, { window = w, points = 32 })
+    local re, im = spectrum.windowed(x, w, 32)
+    assert.are.same({ 17, 32, 20 }, { #t.re, t.points, t.samples })
+    for k = 1, 17 do assert.are.same({ re[k], im[k] }, { t.re[k], t.im[k] }) end
+    local y = t:inverse()
+    for i = 1, 32 do
+      assert.is_true(math.abs(y[i] - (i <= 20 and x[i] * w[i] or 0)) < 1e-15)
+    end
+    assert.are.equal(spectrum.fast_length(77), lb.spectrum.fast_length(77))
+    assert.has_error(function() lb.spectrum.transform(x, { pionts = 1 }) end,
+      "transform: unknown option pionts; valid are points, window")
+  end)
+end)
+
 describe("misuse of the transform", function()
   local x = core.samples.from { 1, 2, 3, 4 }
 

@@ -16,6 +16,12 @@ typedef struct handle {
   lbr_search *searches;
 } handle;
 
+/*** Gives back all memory; a closed tracker reads nothing more.
+ * Closing again does nothing; collection closes too.
+ * @usage
+ * local w = core.samples.from { 1, 1, 1, 1 }
+ * core.lines.tracker(w, {}):close()
+ */
 static int tracker_close(lua_State *L) {
   handle *h = luaL_checkudata(L, 1, TRACKER_CLASS);
   lbr_tracker_free(h->tracker);

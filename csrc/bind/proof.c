@@ -24,6 +24,17 @@ typedef struct handle {
   lbr_attack *attacks;    /* 2 n_lines */
 } handle;
 
+/*** Gives back all memory; a closed proof runs nothing more.
+ * Closing again does nothing; collection closes too.
+ * @usage
+ * local w = core.samples.from { 1, 1, 1, 1 }
+ * local proof = core.proof.new {
+ *   rate = 4, window = w, spread = { 0 }, front = {},
+ *   sources = { { hz = 1, least = 1, most = 2, driver = 1 } },
+ *   claims = { { own = 0.1, others = 0, f_lo = 1, f_hi = 1, gain = 1 } },
+ * }
+ * proof:close()
+ */
 static int proof_close(lua_State *L) {
   handle *h = luaL_checkudata(L, 1, PROOF_CLASS);
   lbr_tallier_free(h->tallier);

@@ -16,6 +16,7 @@ local rooms = {
   report = { "libration.report" },
   samples = { "libration.samples" },
   synth = { "libration.synth" },
+  spectrum = { "libration.spectrum" },
   units = { "libration.units" },
   window = { "libration.window", "window" },
   windows = { "libration.window", "windows" },

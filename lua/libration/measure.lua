@@ -57,6 +57,12 @@ end
 -- @return integer: the channel to be read; or nil, message, code: "which_channel",
 --   "wrong_channel", "wrong_rate", "too_short", "wrong_unit", "not_finite" or "clipped"
 -- @return samples: its values in the demand's unit
+-- @usage
+-- local demand = lb.demand { unit = "V", lines = {
+--   { name = "tone", hz = 100, amplitude = "1 V", tolerance = "1 %" } } }
+-- local plan = lb.plan(demand, lb.digitizer { rates = { "1 kHz" } })
+-- local record = plan:replay { trial = 1 }
+-- assert(require("libration.measure").check(record, plan) == 1)
 function M.check(rec, plan, k)
   local channel, message, code = check_channel(rec, k)
   if not channel then return nil, message, code end
@@ -139,6 +145,13 @@ end
 --   (where the line was read) with hz_bound (tracked lines), phase (rad, of the cosine at the
 --   centre of the first record, as the digitizer shows it), tracked; print shows it as a table;
 --   or nil, message, code when the record breaks its plan
+-- @usage
+-- local demand = lb.demand { unit = "V", lines = {
+--   { name = "tone", hz = 100, amplitude = "1 V", tolerance = "1 %" } } }
+-- local plan = lb.plan(demand, lb.digitizer { rates = { "1 kHz" } })
+-- local record = plan:replay { trial = 1 }
+-- local m = assert(record:measure(plan))
+-- assert(m.lines[1].name == "tone" and m.lines[1].bound < 0.01)
 function M.measure(rec, plan, options)
   for key in pairs(options or {}) do
     if key ~= "channel" then
@@ -161,6 +174,14 @@ end
 -- @param plan plan: the plan it was recorded by
 -- @param options table: channel (integer; needed when the record has several)
 -- @return table: the measurement; or nil, message, code when the record breaks its plan
+-- @usage
+-- local demand = lb.demand { unit = "V", lines = {
+--   { name = "tone", hz = 100, amplitude = "1 V", tolerance = "1 %" } } }
+-- local plan = lb.plan(demand, lb.digitizer { rates = { "1 kHz" } })
+-- local record = plan:replay { trial = 1 }
+-- local short = lb.record.new { rate = 1000, samples = { 0, 0 }, unit = "V" }
+-- local m, message, code = short:measure(plan)
+-- assert(m == nil and code == "too_short" and record:measure(plan).unit == "V")
 function record.Record:measure(plan, options)
   return M.measure(self, plan, options)
 end
@@ -184,6 +205,12 @@ end
 --- A measurement as a table that a person reads.
 -- @param m table: as measure returns it
 -- @return string: a row per line
+-- @usage
+-- local demand = lb.demand { unit = "V", lines = {
+--   { name = "tone", hz = 100, amplitude = "1 V", tolerance = "1 %" } } }
+-- local plan = lb.plan(demand, lb.digitizer { rates = { "1 kHz" } })
+-- local record = plan:replay { trial = 1 }
+-- assert(tostring(record:measure(plan)):find "tone")
 function M.text(m)
   local rows = {
     ("Measured by plan %s: %s S/s, %d samples, %d average%s, unit %s"):format(

@@ -6,6 +6,7 @@
 -- deviations are compared with their standard deviation.
 
 local core = require "libration.core"
+local plans = require "libration.plan"
 local record = require "libration.record"
 local window = require("libration.window").window
 
@@ -87,6 +88,11 @@ end
 -- Volts of the digitizer become units of the demand through its sensitivity.
 -- @param plan plan: as lb.plan returns it; its `claims` are what is put on trial
 -- @return table: rate, coverage, window, spread, sources, offset, noise, front, claims
+-- @usage
+-- local demand = lb.demand { unit = "V", lines = {
+--   { name = "tone", hz = 100, amplitude = "1 V", tolerance = "1 %" } } }
+-- local plan = lb.plan(demand, lb.digitizer { rates = { "1 kHz" } })
+-- assert(#require("libration.proof").setup(plan).window == plan.samples)
 function M.setup(plan)
   local demand, spread = plan.demand, {}
   for i, driver in ipairs(demand.drivers) do spread[i] = driver.spread end
@@ -199,6 +205,11 @@ end
 --   worst_hz (random trials), high, low (adversary), tightness, violations, violations_hz, rms
 --   (of random deviations, in standard deviations), exceedance (share beyond the demand's
 --   coverage); print shows it as a table
+-- @usage
+-- local demand = lb.demand { unit = "V", lines = {
+--   { name = "tone", hz = 100, amplitude = "1 V", tolerance = "1 %" } } }
+-- local plan = lb.plan(demand, lb.digitizer { rates = { "1 kHz" } })
+-- assert(plan:prove({ trials = 50, noise_trials = 0 }).violations == 0)
 function M.prove(plan, options)
   options = with_defaults(options, 2)
   local started = core.base.clock()
@@ -241,6 +252,12 @@ end
 -- @return table: particulars: timebase, accuracy, offset, deviation (per driver), sources (hz,
 --   amplitude, phase, gain, wander ...), lines (amplitude, read, read_hz, ratio, ratio_hz,
 --   deviation)
+-- @usage
+-- local demand = lb.demand { unit = "V", lines = {
+--   { name = "tone", hz = 100, amplitude = "1 V", tolerance = "1 %" } } }
+-- local plan = lb.plan(demand, lb.digitizer { rates = { "1 kHz" } })
+-- local record, particulars = plan:replay { seed = 1, trial = 3 }
+-- assert(record.samples == plan.samples and particulars.sources[1].hz == 100)
 function M.replay(plan, options)
   check_options(options, replay_kinds, 2)
   local seed, noise = options.seed or 1, options.noise ~= false
@@ -287,10 +304,16 @@ end
 --- A proof as a table that a person reads.
 -- @param proof table: as plan:prove returns it
 -- @return string: a row per line, the verdict last
+-- @usage
+-- local demand = lb.demand { unit = "V", lines = {
+--   { name = "tone", hz = 100, amplitude = "1 V", tolerance = "1 %" } } }
+-- local plan = lb.plan(demand, lb.digitizer { rates = { "1 kHz" } })
+-- local text = tostring(plan:prove { trials = 10, adversary = false })
+-- assert(text:find "holds: no bound passed")
 function M.text(proof)
   local rows = {
-    ("Proof: %d random trials (seed %d), %d of them with noise too; adversary %s; %.1f s"):format(
-      proof.trials, proof.seed, proof.noise_trials, adversary_text(proof), proof.seconds),
+    ("Proof: %d random trials (seed %d), %d of them with noise too; adversary %s; %.1f s")
+      :format(proof.trials, proof.seed, proof.noise_trials, adversary_text(proof), proof.seconds),
     "Largest deviation over its bound (1 is the bound):",
     ("  %-20s %8s %8s %8s %8s %10s %12s"):format("line", "trials", "high", "low", "hz",
       "rms/sigma", ("beyond %gs"):format(proof.coverage or 3)),
@@ -304,5 +327,8 @@ function M.text(proof)
 end
 
 Proof.__tostring = M.text
+
+plans.Plan.prove = M.prove
+plans.Plan.replay = M.replay
 
 return M
