@@ -14,7 +14,8 @@
 #define COARSE 0.004   /* cycles a block up to which block sums find maxima:
                           3e-5 of sum |y| off, far below what FINE_SHARE
                           allows for */
-#define ROUNDS 12     /* recentrings of an expansion */
+#define STRIDE 0.25    /* bins that one expansion may be climbed */
+#define ROUNDS 24     /* recentrings of an expansion */
 #define STEPS 80      /* safeguarded Newton steps in one expansion */
 
 /* A maximum can stand this far above the grid point next to it: |X| falls by
@@ -224,17 +225,20 @@ static double guess(const lbr_tracker *t, size_t g, size_t points) {
   return t->at[g] + 0.5 * a * (below - above) / bend;
 }
 
-/* The highest point near grid maximum g: its frequency and transform. */
+/* The highest point near grid maximum g: its frequency and transform.  The
+ * climb is bounded by the interval alone, not by the grid point's neighbours:
+ * a coarse grid may have the highest of nearly equal points wrong. */
 static double complex refine(const lbr_tracker *t, size_t g, size_t points,
                              double *frequency) {
-  double lo = t->at[g ? g - 1 : 0], hi = t->at[g + 1 < points ? g + 1 : g];
+  double lo = t->at[0], hi = t->at[points - 1];
   double f = fmin(fmax(guess(t, g, points), lo), hi), v = 0;
   double bins = (double)t->n;
   double complex m[LBR_PHASOR_MOMENTS], x, d, c;
   for (int i = 0; i < ROUNDS; i++) {
     f = fmin(fmax(f + v / bins, lo), hi);
     lbr_phasor_moments(t->y, t->n, f, m);
-    v = climb(m, fmax((lo - f) * bins, -0.5), fmin((hi - f) * bins, 0.5));
+    v = climb(m, fmax((lo - f) * bins, -STRIDE),
+              fmin((hi - f) * bins, STRIDE));
     if (fabs(v) <= TRUSTED) break;
   }
   lbr_phasor_expand(m, v, &x, &d, &c);
