@@ -69,17 +69,35 @@ void lbr_noise_add_white(const lbr_key *key, double sigma, uint64_t first,
   }
 }
 
-/* out[i] += sigma * sum_k tap[|k|] g[i + half + k], n a multiple of LANES. */
+static inline const vec *at(const double *p) {
+  return (const vec *)(const void *)p;
+}
+
+/* out[i] += sigma * sum_k tap[|k|] g[i + half + k], n a multiple of LANES.
+ * Four vectors side by side hide the latency of the sums; each output is
+ * summed in the same order either way. */
 __attribute__((target_clones("avx512f", "avx2", "default"))) static void
 convolve(const lbr_shape *shape, double sigma, const double *g, double *out,
          size_t n) {
-  size_t half = shape->half;
-  for (size_t i = 0; i < n; i += LANES) {
-    const double *centre = g + i + half;
-    vec sum = shape->tap[0] * *(const vec *)(const void *)centre;
-    for (size_t k = 1; k <= half; k++)
-      sum += shape->tap[k] * (*(const vec *)(const void *)(centre - k) +
-                              *(const vec *)(const void *)(centre + k));
+  const double *tap = shape->tap, *centre = g + shape->half;
+  size_t i = 0;
+  for (; i + 4 * LANES <= n; i += 4 * LANES) {
+    const vec *c = at(centre + i);
+    vec a = tap[0] * c[0], b = tap[0] * c[1];
+    vec d = tap[0] * c[2], e = tap[0] * c[3];
+    for (size_t k = 1; k <= shape->half; k++) {
+      const vec *low = at(centre + i - k), *high = at(centre + i + k);
+      a += tap[k] * (low[0] + high[0]), b += tap[k] * (low[1] + high[1]);
+      d += tap[k] * (low[2] + high[2]), e += tap[k] * (low[3] + high[3]);
+    }
+    vec *to = (vec *)(void *)(out + i);
+    to[0] += sigma * a, to[1] += sigma * b;
+    to[2] += sigma * d, to[3] += sigma * e;
+  }
+  for (; i < n; i += LANES) {
+    vec sum = tap[0] * *at(centre + i);
+    for (size_t k = 1; k <= shape->half; k++)
+      sum += tap[k] * (*at(centre + i - k) + *at(centre + i + k));
     *(vec *)(void *)(out + i) += sigma * sum;
   }
 }
