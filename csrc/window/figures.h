@@ -33,7 +33,8 @@ typedef struct lbr_figures {
   double overlap_50;          /* correlation of the noise of records that */
   double overlap_75;          /* overlap by 50 %, by 75 % */
   double overlap;             /* recommended: largest amplitude flatness less
-                               * correlation, share of the length */
+                               * correlation, share of the length; overlaps
+                               * that are even by themselves alone left out */
   double amplitude_flatness;  /* there: least over most of the sum of windows */
   double power_flatness;      /* root of least over most of summed squares */
   double correlation;         /* and the correlation */

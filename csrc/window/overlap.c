@@ -2,6 +2,7 @@
  * on the samples of one length that many overlaps divide. */
 #include <math.h>
 #include <stdlib.h>
+#include <string.h>
 
 #include "base/checked.h"
 #include "window/figures.h"
@@ -9,7 +10,8 @@
 
 #define LENGTH 10080 /* divisible by 2 .. 10; a sample is 0.01 % */
 #define COARSE 42    /* first search; 1/2, 2/3, 3/4, 4/5, 5/6 are on it */
-#define STARTS 3     /* best places of it that are searched finely */
+#define PLACES (LENGTH / COARSE)
+#define STARTS 2     /* best places of it that are searched finely */
 
 static double correlation_sampled(const double *w, size_t lag) {
   double cross = 0, power = 0;
@@ -50,7 +52,7 @@ static lbr_status fixed_overlaps(const lbr_window *window, const double *w,
   lbr_series *s = lbr_alloc(1, sizeof *s);
   if (!s) return LBR_NO_MEMORY;
   s->whole.terms = shape->terms;
-  for (size_t k = 0; k < shape->terms; k++) s->whole.shape[k] = shape->terms_of[k];
+  memcpy(s->whole.shape, shape->terms_of, sizeof shape->terms_of);
   double power = product(s, 0);
   out->overlap_50 = product(s, 0.5) / power;
   out->overlap_75 = product(s, 0.25) / power;
@@ -71,34 +73,48 @@ static double evenness(const double *w, size_t hop, int squares) {
   return least / most;
 }
 
+/* Windows with a step at their ends add up evenly at single overlaps (1/2,
+ * 2/3) that a sample more or less would miss: the worst of three counts. */
 static double merit(const double *w, size_t hop) {
-  return evenness(w, hop, 0) - correlation_sampled(w, hop);
+  double even = evenness(w, hop, 0);
+  even = fmin(even, evenness(w, hop - 1, 0));
+  even = fmin(even, evenness(w, hop + 1, 0));
+  return even - correlation_sampled(w, hop);
 }
 
-/* Best hop of LENGTH - 1 .. down to LENGTH / 20 around `about`. */
-static size_t best_hop(const double *w, size_t about, size_t step,
-                       size_t reach, double *most, const size_t *taken,
-                       size_t count) {
+/* The best hop within reach of a place, from the value that has been found. */
+static size_t refine(const double *w, size_t about, double *most) {
   size_t best = about;
-  for (size_t hop = about > reach ? about - reach : step; hop <= about + reach;
-       hop += step) {
-    int fresh = hop >= LENGTH / 20 && hop < LENGTH;
-    for (size_t i = 0; i < count; i++)
-      if (hop <= taken[i] + step && taken[i] <= hop + step) fresh = 0;
-    double value = fresh ? merit(w, hop) : -INFINITY;
+  for (size_t hop = about - COARSE + 1; hop < about + COARSE; hop++) {
+    double value = hop == about ? *most : merit(w, hop);
     if (value > *most) *most = value, best = hop;
   }
   return best;
 }
 
+/* Number of the best place of the coarse search; it is then struck out with
+ * its neighbours. */
+static size_t take_best(double *values, double *most) {
+  size_t best = 1;
+  for (size_t i = 1; i < PLACES; i++)
+    if (values[i] > values[best]) best = i;
+  *most = values[best];
+  for (size_t i = best - 1; i <= best + 1 && i < PLACES; i++)
+    values[i] = -INFINITY;
+  return best;
+}
+
 static void recommend(const double *w, lbr_figures *out) {
-  size_t taken[STARTS], hop = LENGTH / 2;
-  double top = -INFINITY;
+  double values[PLACES], top = -INFINITY;
+  size_t hop = LENGTH / 2;
+  for (size_t i = 0; i < PLACES; i++) {
+    size_t place = i * COARSE;
+    values[i] = place < LENGTH / 20 ? -INFINITY : merit(w, place);
+  }
   for (size_t i = 0; i < STARTS; i++) {
-    double most = -INFINITY;
-    taken[i] = best_hop(w, LENGTH / 2, COARSE, LENGTH / 2 - COARSE, &most,
-                        taken, i);
-    size_t fine = best_hop(w, taken[i], 1, COARSE, &most, taken, 0);
+    double most;
+    size_t place = take_best(values, &most) * COARSE;
+    size_t fine = refine(w, place, &most);
     if (most > top) top = most, hop = fine;
   }
   out->overlap = 1 - (double)hop / LENGTH;
