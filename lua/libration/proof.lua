@@ -198,9 +198,9 @@ end
 --   noise_trials (how many of them are made with noise, jitter, limits and codes too, default
 --   1000), workers (threads; default 0, one per core), progress (default true: a bar, if standard
 --   error is a terminal)
--- @return table: the proof: trials, noise_trials, seed, violations (of systematic bounds; 0 when the plan
---   holds), holds (boolean), tightness (largest deviation over bound), worst (line, name, ratio,
---   of = "amplitude" or "frequency", seed, and trial or side for replay), refused (text, when
+-- @return table: the proof: trials, noise_trials, seed, violations (of systematic bounds; 0 when
+--   the plan holds), holds (boolean), tightness (largest deviation over bound), worst (line, name,
+--   ratio, of = "amplitude" or "frequency", seed, and trial or side for replay), refused (text, when
 --   the adversary could not take part), seconds, and lines[i]: name, worst, worst_trial,
 --   worst_hz (random trials), high, low (adversary), tightness, violations, violations_hz, rms
 --   (of random deviations, in standard deviations), exceedance (share beyond the demand's
