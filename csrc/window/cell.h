@@ -18,7 +18,8 @@ typedef struct lbr_node { /* jets at one grid point */
 } lbr_node;
 
 typedef struct lbr_curve {
-  int degree;
+  int degree; /* 3 .. 5 */
+  int real_only; /* the edge part is zero, and its coefficients not kept */
   double real[6], edge[6]; /* Bernstein coefficients over the part in use */
 } lbr_curve;
 

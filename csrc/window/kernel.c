@@ -4,6 +4,10 @@
 
 #include "window/model.h"
 
+/* fmin and fmax are calls, for the sake of values that are not numbers */
+static inline double least_of(double a, double b) { return a < b ? a : b; }
+static inline double most_of(double a, double b) { return a > b ? a : b; }
+
 #define SEARCH 256 /* bins that are looked at before a bound must do */
 
 /* An interval folded into 0 <= x <= N / 2. */
@@ -14,12 +18,16 @@ typedef struct stretch {
 /* At most three stretches whose images are the interval's. */
 static int fold_interval(size_t n, double x1, double x2, stretch out[3]) {
   double n1 = (double)n, half = n1 / 2;
+  if (x1 >= 0 && (n == 0 || x2 <= half)) {
+    out[0] = (stretch){x1, x2};
+    return 1;
+  }
   if (n == 0) {
     if (x1 < 0 && x2 > 0) {
-      out[0] = (stretch){0, fmax(-x1, x2)};
+      out[0] = (stretch){0, most_of(-x1, x2)};
       return 1;
     }
-    out[0] = x1 < 0 ? (stretch){-x2, -x1} : (stretch){x1, x2};
+    out[0] = (stretch){-x2, -x1};
     return 1;
   }
   if (!(x2 - x1 < n1)) {
@@ -29,9 +37,9 @@ static int fold_interval(size_t n, double x1, double x2, stretch out[3]) {
   double start = remainder(x1, n1), end = start + (x2 - x1);
   int count = 0;
   while (count < 3) {
-    double edge = half * (floor(start / half) + 1), stop = fmin(edge, end);
+    double edge = half * (floor(start / half) + 1), stop = least_of(edge, end);
     double a = fabs(remainder(start, n1)), b = fabs(remainder(stop, n1));
-    out[count++] = (stretch){fmin(a, b), fmax(a, b)};
+    out[count++] = (stretch){least_of(a, b), most_of(a, b)};
     if (stop >= end) break;
     start = edge;
   }
@@ -64,8 +72,8 @@ static void walk_cell(walk *w, lbr_curve *curve, double *t1, double *t2) {
   w->left = w->right;
   lbr_model_node(w->kernel, w->point + 1, &w->right);
   lbr_curve_between(&w->left, &w->right, curve);
-  *t1 = fmin(1, fmax(0, w->over.from * LBR_GRID - start));
-  *t2 = fmax(*t1, fmin(1, w->over.to * LBR_GRID - start));
+  *t1 = least_of(1, most_of(0, w->over.from * LBR_GRID - start));
+  *t2 = most_of(*t1, least_of(1, w->over.to * LBR_GRID - start));
   w->point++;
 }
 
@@ -90,14 +98,14 @@ static void range_over(const lbr_kernel *k, stretch over, double *low,
   while (w.point <= w.last) {
     if (settled(&w, first, *high, 0, &bound)) {
       *low = 0;
-      *high = fmax(*high, bound);
+      *high = most_of(*high, bound);
       return;
     }
     walk_cell(&w, &curve, &t1, &t2);
     lbr_curve_part(&curve, t1, t2);
     lbr_curve_size(&curve, &least, &most);
-    *low = fmin(*low, least);
-    *high = fmax(*high, most);
+    *low = least_of(*low, least);
+    *high = most_of(*high, most);
   }
 }
 
@@ -107,7 +115,7 @@ void lbr_kernel_range(lbr_kernel *k, double x1, double x2, double *low,
   int parts = fold_interval(k->n, x1, x2, part);
   double least = INFINITY, most = 0;
   for (int i = 0; i < parts; i++) range_over(k, part[i], &least, &most);
-  *low = fmax(0, least - k->value_slack);
+  *low = most_of(0, least - k->value_slack);
   *high = most + k->value_slack;
 }
 
@@ -126,12 +134,12 @@ static double slope_over(const lbr_kernel *k, stretch over, double most) {
   walk_start(&w, k, over);
   size_t first = w.point;
   while (w.point <= w.last) {
-    if (settled(&w, first, most, 1, &bound)) return fmax(most, bound);
+    if (settled(&w, first, most, 1, &bound)) return most_of(most, bound);
     walk_cell(&w, &curve, &t1, &t2);
     lbr_curve_derive(&curve, &steep);
     lbr_curve_part(&steep, t1, t2);
     lbr_curve_size(&steep, &low, &high);
-    most = fmax(most, high);
+    most = most_of(most, high);
   }
   return most;
 }
@@ -141,30 +149,30 @@ double lbr_kernel_slope(lbr_kernel *k, double x1, double x2) {
   int parts = fold_interval(k->n, x1, x2, part);
   double most = 0;
   for (int i = 0; i < parts; i++) most = slope_over(k, part[i], most);
-  return fmin(most + k->slope_slack, k->slope_most);
+  return least_of(most + k->slope_slack, k->slope_most);
 }
 
 double lbr_kernel_curvature(lbr_kernel *k, double radius) {
   walk w;
   lbr_curve curve, steep, bend;
   double t1, t2, least = INFINITY;
-  if (k->n) radius = fmin(radius, (double)k->n / 2);
-  walk_start(&w, k, (stretch){0, fmax(radius, 0)});
+  if (k->n) radius = least_of(radius, (double)k->n / 2);
+  walk_start(&w, k, (stretch){0, most_of(radius, 0)});
   while (w.point <= w.last && least > 0) {
     walk_cell(&w, &curve, &t1, &t2);
     lbr_curve_derive(&curve, &steep);
     lbr_curve_derive(&steep, &bend);
     lbr_curve_part(&bend, t1, t2);
-    for (int i = 0; i <= bend.degree; i++) least = fmin(least, -bend.real[i]);
+    for (int i = 0; i <= bend.degree; i++) least = least_of(least, -bend.real[i]);
   }
-  return fmax(0, least - k->bend_slack);
+  return most_of(0, least - k->bend_slack);
 }
 
 double lbr_kernel_peak(lbr_kernel *k) {
   if (k->peak > 0) return k->peak;
   double low, high, far = k->n ? (double)k->n / 2 : 2 * SEARCH;
   lbr_kernel_range(k, 0, far, &low, &high);
-  k->peak = lbr_kernel_absolute(k) <= 1 + 1e-12 ? 1 : fmax(1, high);
+  k->peak = lbr_kernel_absolute(k) <= 1 + 1e-12 ? 1 : most_of(1, high);
   return k->peak;
 }
 
