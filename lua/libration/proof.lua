@@ -145,12 +145,15 @@ end
 
 -- What is reported of one line: the worst of trials and attacks.
 local function line_report(plan, i, tally, high, low, noise_trials)
+  local claim = plan.claims[i]
   local out = {
     name = plan.lines[i].name, worst = tally.worst, worst_trial = tally.worst_trial,
-    worst_hz = tally.worst_hz, worst_hz_trial = tally.worst_hz_trial,
     violations = tally.violations, violations_hz = tally.violations_hz, tightness = tally.worst,
   }
-  if noise_trials > 0 and (plan.claims[i].sigma or 0) > 0 then
+  if claim.f_hi > claim.f_lo then
+    out.worst_hz, out.worst_hz_trial = tally.worst_hz, tally.worst_hz_trial
+  end
+  if noise_trials > 0 and (claim.sigma or 0) > 0 then
     out.rms = (tally.squares / noise_trials) ^ 0.5
     out.exceedance = tally.beyond / noise_trials
   end
@@ -199,12 +202,12 @@ end
 --   1000), workers (threads; default 0, one per core), progress (default true: a bar, if standard
 --   error is a terminal)
 -- @return table: the proof: trials, noise_trials, seed, violations (of systematic bounds; 0 when
---   the plan holds), holds (boolean), tightness (largest deviation over bound), worst (line, name,
---   ratio, of = "amplitude" or "frequency", seed, and trial or side for replay), refused (text, when
---   the adversary could not take part), seconds, and lines[i]: name, worst, worst_trial,
---   worst_hz (random trials), high, low (adversary), tightness, violations, violations_hz, rms
---   (of random deviations, in standard deviations), exceedance (share beyond the demand's
---   coverage); print shows it as a table
+--   the plan holds), holds (boolean), tightness (largest deviation over bound), worst (line,
+--   name, ratio, of = "amplitude" or "frequency", seed, and trial or side for replay), refused
+--   (text, when the adversary could not take part), seconds, and lines[i]: name, worst,
+--   worst_trial, worst_hz (random trials; nil where no frequency is claimed), high, low
+--   (adversary), tightness, violations, violations_hz, rms (of random deviations, in standard
+--   deviations), exceedance (share beyond the demand's coverage); print shows it as a table
 -- @usage
 -- local demand = lb.demand { unit = "V", lines = {
 --   { name = "tone", hz = 100, amplitude = "1 V", tolerance = "1 %" } } }
@@ -264,6 +267,7 @@ function M.replay(plan, options)
   local trial <close> = core.proof.new(M.setup(plan), 1)
   local x, particulars, lines
   if options.side then
+    noise = false
     check_attack(options, plan, 2)
     x, particulars, lines = trial:replay_attack(seed, options.line, options.side)
     if not x then return nil, particulars, lines end
@@ -273,7 +277,10 @@ function M.replay(plan, options)
     fail(2, "trial is %s; it must be an integer from 0", tostring(options.trial))
   end
   particulars.lines = lines
-  return record.new { rate = plan.rate, samples = x, unit = plan.demand.unit }, particulars
+  local front, bits = plan.front, plan.digitizer and plan.digitizer.bits
+  return record.new { rate = plan.rate, samples = x, unit = plan.demand.unit,
+                      full_scale = noise and front.range or nil,
+                      bits = noise and front.range and bits or nil }, particulars
 end
 
 local function percent(share)
