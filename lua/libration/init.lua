@@ -4,7 +4,8 @@
 
 local M = { version = "0.1.0" }
 
--- Public names and where they live: module, and field (absent: the module).
+-- Public names and where they live: module, field (absent: the module), and
+-- modules that add methods to what it makes.
 local rooms = {
   load = { "libration.load", "load" },
   digitizer = { "libration.digitizer", "digitizer" },
@@ -17,6 +18,9 @@ local rooms = {
   samples = { "libration.samples" },
   synth = { "libration.synth" },
   spectrum = { "libration.spectrum" },
+  load_plan = { "libration.plan", "load", "libration.proof", "libration.measure" },
+  plan = { "libration.plan", "plan", "libration.proof", "libration.measure" },
+  plans = { "libration.plan", "plans", "libration.proof", "libration.measure" },
   units = { "libration.units" },
   window = { "libration.window", "window" },
   windows = { "libration.window", "windows" },
@@ -27,6 +31,9 @@ return setmetatable(M, {
     local room = rooms[key]
     if not room then
       return nil
+    end
+    for i = 3, #room do
+      require(room[i])
     end
     local value = require(room[1])
     if room[2] then

@@ -101,7 +101,8 @@ local function random_plans()
   while #plans < DEMANDS do
     tried = tried + 1
     assert(tried < 20 * DEMANDS, "too few random demands are feasible")
-    local plan = lb.plan(random_demand(random), random_digitizer(random), { within = "6 s" })
+    local plan = lb.plan(random_demand(random), random_digitizer(random),
+      { within = "6 s", effort_s = 1 })
     if plan and plan.samples <= 8192 then plans[#plans + 1] = plan end
   end
   return plans
