@@ -202,12 +202,21 @@ end
 --   1000), workers (threads; default 0, one per core), progress (default true: a bar, if standard
 --   error is a terminal)
 -- @return table: the proof: trials, noise_trials, seed, violations (of systematic bounds; 0 when
+<<<<<<< Updated upstream
 --   the plan holds), holds (boolean), tightness (largest deviation over bound), worst (line,
 --   name, ratio, of = "amplitude" or "frequency", seed, and trial or side for replay), refused
 --   (text, when the adversary could not take part), seconds, and lines[i]: name, worst,
 --   worst_trial, worst_hz (random trials; nil where no frequency is claimed), high, low
 --   (adversary), tightness, violations, violations_hz, rms (of random deviations, in standard
 --   deviations), exceedance (share beyond the demand's coverage); print shows it as a table
+=======
+--   the plan holds), holds (boolean), tightness (largest deviation over bound), worst (line, name,
+--   ratio, of = "amplitude" or "frequency", seed, and trial or side for replay), refused (text,
+--   when the adversary could not take part), seconds, and lines[i]: name, worst, worst_trial,
+--   worst_hz (random trials), high, low (adversary), tightness, violations, violations_hz, rms
+--   (of random deviations, in standard deviations), exceedance (share beyond the demand's
+--   coverage); print shows it as a table
+>>>>>>> Stashed changes
 -- @usage
 -- local demand = lb.demand { unit = "V", lines = {
 --   { name = "tone", hz = 100, amplitude = "1 V", tolerance = "1 %" } } }
