@@ -123,7 +123,8 @@ static void beyond(const lbr_window *window, size_t n, double x, double *value,
   *value = *slope = INFINITY;
   if (!(q > 0)) return;
   double root = sqrt(q * (2 - q)), flat = (1 + p.rise) * sin(LBR_PI * x / p.n);
-  *value = (1 / p.ratio + p.edge) / (1 - p.edge);
+  /* |T - E exp(i pi x)| <= |T| + E, of which E sin is added at right angles */
+  *value = sqrt(1 / p.ratio * (1 / p.ratio + 2 * p.edge)) / (1 - p.edge);
   *slope = LBR_PI * (flat / root / p.ratio + p.edge) / (1 - p.edge);
 }
 

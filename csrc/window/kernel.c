@@ -77,7 +77,8 @@ static void walk_cell(walk *w, lbr_curve *curve, double *t1, double *t2) {
   w->point++;
 }
 
-/* True at whole bins where nothing farther out can exceed `high`, with at
+/* True at whole bins where nothing farther out can exceed `high` by more than
+ * one part in a thousand, with at
  * least one more bin, and so a zero of any far response, to come. */
 static int settled(const walk *w, size_t first, double high, int slope,
                    double *bound) {
@@ -85,7 +86,7 @@ static int settled(const walk *w, size_t first, double high, int slope,
   if (w->point % LBR_GRID || w->point + LBR_GRID > w->last) return 0;
   lbr_model_beyond(w->kernel, (double)w->point / LBR_GRID, &value, &steep);
   *bound = slope ? steep : value;
-  return *bound <= high || w->point - first > SEARCH * LBR_GRID;
+  return *bound <= high * 1.001 || w->point - first > SEARCH * LBR_GRID;
 }
 
 static void range_over(const lbr_kernel *k, stretch over, double *low,
