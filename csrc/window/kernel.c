@@ -164,7 +164,8 @@ double lbr_kernel_curvature(lbr_kernel *k, double radius) {
     lbr_curve_derive(&curve, &steep);
     lbr_curve_derive(&steep, &bend);
     lbr_curve_part(&bend, t1, t2);
-    for (int i = 0; i <= bend.degree; i++) least = least_of(least, -bend.real[i]);
+    for (int i = 0; i <= bend.degree; i++)
+      least = least_of(least, -bend.real[i]);
   }
   return most_of(0, least - k->bend_slack);
 }
