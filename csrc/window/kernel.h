@@ -22,13 +22,15 @@
 typedef struct lbr_kernel lbr_kernel;
 
 /* Cheap for cosine sums (about a microsecond), up to milliseconds for shapes
- * that need a fit.  n is 0 or at least 4. */
+ * that need a fit.  n is 0 or at least 4; LBR_DOMAIN: another n, or 0 for a
+ * shape without a limit (Dolph-Chebyshev). */
 LBR_CHECKED lbr_status lbr_kernel_new(const lbr_window *window, size_t n,
                                       lbr_kernel **out);
 void lbr_kernel_free(lbr_kernel *kernel); /* NULL is fine */
 
 /* The same window at another length, reusing the memory and whatever does not
- * depend on the length. */
+ * depend on the length.  After a failure the kernel may only be resized again
+ * or freed. */
 LBR_CHECKED lbr_status lbr_kernel_resize(lbr_kernel *kernel, size_t n);
 
 /* |W(x)| / |W(0)| at one point, to 1e-12 absolute. */
@@ -52,7 +54,7 @@ double lbr_kernel_curvature(lbr_kernel *kernel, double radius);
 double lbr_kernel_peak(lbr_kernel *kernel);
 
 /* The smallest x >= 0 with |W(x)|/|W(0)| <= level, never more than the true
- * one (a lower bound good to 1e-6); level > 0. */
+ * one (a lower bound good to 1e-6); level > 0.  INFINITY: nowhere. */
 double lbr_kernel_reach(lbr_kernel *kernel, double level);
 
 /* Noise bandwidth in bins, N sum w^2 / (sum w)^2; and sum |w| / |sum w|. */
