@@ -1,3 +1,6 @@
 --- What scripts/libration runs: the command with the words of its command line.
 
-os.exit(require("libration.command").run({ ... }), true)
+local command = require "libration.command"
+local lb = require "libration"
+
+os.exit(command.run({ ... }, lb.version), true)

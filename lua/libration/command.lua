@@ -1,0 +1,400 @@
+--- The command `libration`: plan, prove and measure from a shell.
+-- Results go to standard output, messages to standard error; the exit code is 0
+-- when it holds, 1 when it does not, 2 for wrong use or a mistake in a file, 3
+-- when the system refuses. A traceback means a mistake of ours.
+
+local file = require "libration.report.file"
+local help = require "libration.command.help"
+local inputs = require "libration.command.inputs"
+local json = require "libration.json"
+local measure = require "libration.measure"
+local numbers = require "libration.report.numbers"
+local planner = require "libration.plan"
+local prover = require "libration.proof"
+local report = require "libration.report"
+local table_text = require "libration.report.table"
+local units = require "libration.units"
+local window = require "libration.window"
+local words = require "libration.command.words"
+
+local M = {}
+
+local HOLDS, FAILS, MISUSE, WORLD = inputs.HOLDS, inputs.FAILS, inputs.MISUSE, inputs.WORLD
+
+-- Ends the command with a message: raised as a table, so it is no mistake of ours.
+local function stop(message, code)
+  error({ message = message, code = code or MISUSE }, 0)
+end
+
+local function need(value, message, code)
+  if value == nil then
+    stop(message, code)
+  end
+  return value
+end
+
+local function out(text)
+  local fine, why = io.stdout:write(text, "\n")
+  if not (fine and io.stdout:flush()) then
+    stop("standard output: " .. tostring(why or "cannot be written"), WORLD)
+  end
+end
+
+local function out_json(value)
+  local text, message = json.encode(report.facts.of(value))
+  out(need(text, message, MISUSE))
+end
+
+-- Options that become options of lb.plan, checked here so that a mistake names
+-- the option as it was typed.
+local plan_options = {
+  within = { value = "TIME", text = "all records together take at most this, such as \"60 s\"" },
+  readings = { value = "LIST", text = "readings to choose from: tracked, bin, or both by comma" },
+  windows = { value = "LIST", text = "windows to choose from, by comma, or all" },
+  share = { value = "SHARE", text = "share of each tolerance that errors may take: \"80 %\"" },
+  undersample = { text = "lines may stand above half the rate" },
+}
+
+local function list_of(text)
+  local list = {}
+  for word in text:gmatch "[^,%s]+" do
+    list[#list + 1] = word
+  end
+  return list
+end
+
+local function checked(name, text, read)
+  local value, message = read(text)
+  if value == nil then
+    stop("--" .. name .. ": " .. tostring(message))
+  end
+  return value
+end
+
+local function read_plan_options(found)
+  local options = { undersample = found.undersample }
+  if found.within then
+    checked("within", found.within, units.seconds)
+    options.within = found.within
+  end
+  if found.share then
+    checked("share", found.share, units.relative)
+    options.share = found.share
+  end
+  options.readings = found.readings and list_of(found.readings)
+  options.windows = found.windows and (found.windows == "all" and "all" or list_of(found.windows))
+  return options
+end
+
+-- Calls the planner; what it says of wrong options or data is the user's.
+local function plan_one(demand, digitizer, options)
+  local fine, plan, refusal, code = pcall(planner.plan, demand, digitizer, options)
+  if not fine then
+    local text = tostring(plan)
+    local place, rest = text:match "^(.-%.lua:%d+): (.*)$"
+    if type(plan) ~= "string" or place and not place:find "command%.lua" then
+      error(plan, 0)
+    end
+    stop(rest or text)
+  elseif not plan and code ~= "infeasible" then
+    stop(tostring(refusal), inputs.exit_code(code))
+  end
+  return plan, refusal
+end
+
+-- Plans on every digitizer: the shortest plan, or the first refusal; and a
+-- table of all when there are several.
+local function plan_all(data, options)
+  local best, refused, rows = nil, nil, {}
+  for i, digitizer in ipairs(data.digitizers) do
+    local plan, refusal = plan_one(data.demand, digitizer, options)
+    refused = refused or refusal
+    if plan and (not best or plan.duration_s < best.duration_s) then
+      best = plan
+    end
+    rows[i] = { digitizer.title or "digitizer " .. i,
+      plan and numbers.time(plan.duration_s * plan.averages) or "refused",
+      plan and numbers.exact(plan.rate) or "",
+      plan and numbers.percent(1 - plan.worst, -1) or "" }
+  end
+  local overview = #rows > 1 and table.concat(table_text.layout({ { head = "digitizer" },
+    { head = "takes", align = "right" }, { head = "rate", unit = "S/s", align = "point" },
+    { head = "to spare", align = "right" } }, rows), "\n") .. "\n"
+  return best, refused, overview
+end
+
+local pictures = { ["fold-map"] = report.plot.fold_map, spectrum = report.plot.spectrum }
+
+local function draw(plan, folder)
+  need(file.folder(folder))
+  for name, picture in pairs(pictures) do
+    for _, ending in ipairs { ".svg", ".png" } do
+      local _, message, code = picture(plan, folder .. "/" .. name .. ending)
+      if message then
+        stop(message, inputs.exit_code(code))
+      end
+    end
+  end
+end
+
+local function show_plan(plan, overview, found)
+  if found.json then
+    out_json(plan)
+  elseif found.csv then
+    out((report.csv.plan(plan):gsub("\r\n$", "")))
+  else
+    out((overview and overview .. "\n" or "") .. tostring(plan))
+  end
+  if found.budget then
+    local fine, text = pcall(report.text.budget, plan, tonumber(found.budget) or found.budget)
+    if not fine then
+      stop((tostring(text):gsub("^.-%.lua:%d+: ", "--budget: ")))
+    elseif not found.json then
+      out("\n" .. text)
+    end
+  end
+end
+
+local commands = {}
+
+commands.plan = {
+  options = {
+    json = { text = "the plan or the refusal as one JSON document" },
+    csv = { text = "the plan's lines as CSV" },
+    save = { value = "FILE", text = "save the plan for prove and measure" },
+    plots = { value = "FOLDER", text = "draw fold map and predicted spectrum (SVG, PNG) there" },
+    budget = { value = "LINE", text = "also all terms of one line's error, by name or number" },
+  },
+  least = 1,
+}
+for name, option in pairs(plan_options) do
+  commands.plan.options[name] = option
+end
+
+function commands.plan.run(found, operands)
+  local data = need(inputs.data(operands))
+  local plan, refusal, overview = plan_all(data, read_plan_options(found))
+  if not plan then
+    if found.json then
+      out_json(refusal)
+    else
+      out(tostring(refusal))
+    end
+    return FAILS
+  end
+  show_plan(plan, overview, found)
+  if found.save then
+    local _, message = plan:save(found.save)
+    if message then
+      stop(message, WORLD)
+    end
+  end
+  if found.plots then
+    draw(plan, found.plots)
+  end
+  return HOLDS
+end
+
+commands.prove = {
+  options = {
+    json = { text = "the proof as one JSON document" },
+    trials = { value = "N", text = "random trials, 0 to 1000000000 (10000)" },
+    seed = { value = "N", text = "seed of all randomness (1)" },
+    workers = { value = "N", text = "threads, 1 to 256 (one a core)" },
+  },
+  least = 1,
+}
+for name, option in pairs(plan_options) do
+  commands.prove.options[name] = option
+end
+
+local function planned(found, operands)
+  if #operands == 1 and inputs.is_plan(operands[1]) then
+    return need(inputs.plan(operands[1]))
+  end
+  local plan, refusal = plan_all(need(inputs.data(operands)), read_plan_options(found))
+  return plan, refusal
+end
+
+local function whole(found, name, least, most)
+  return found[name] and need(words.whole(found[name], least, most, name))
+end
+
+function commands.prove.run(found, operands)
+  local trials = whole(found, "trials", 0, 10 ^ 9)
+  local seed = whole(found, "seed", 0, math.maxinteger)
+  local workers = whole(found, "workers", 1, 256)
+  local plan, refusal = planned(found, operands)
+  if not plan then
+    if found.json then
+      out_json(refusal)
+    else
+      out(tostring(refusal))
+    end
+    return FAILS
+  end
+  local proof = prover.prove(plan, { trials = trials, seed = seed, workers = workers })
+  if found.json then
+    local facts = report.facts.of(proof)
+    facts.kind, facts.identity = "proof", plan.identity
+    out_json(facts)
+  else
+    out(tostring(proof))
+  end
+  return proof.holds and HOLDS or FAILS
+end
+
+commands.measure = {
+  options = {
+    json = { text = "the measurement as one JSON document" },
+    channel = { value = "N", text = "channel of the file, from 1; needed when it has several" },
+    ["full-scale"] = { value = "QUANTITY", text = "largest value the file can hold: \"5 V\"" },
+  },
+  least = 2, most = 2,
+}
+
+function commands.measure.run(found, operands)
+  local channel = whole(found, "channel", 1, 10000)
+  local plan = need(inputs.plan(operands[1]))
+  local scale = found["full-scale"]
+  if scale then
+    checked("full-scale", scale, function(text)
+      return units.number(text, plan.demand.unit)
+    end)
+  end
+  local record = need(inputs.record(operands[2], plan, { channel = channel,
+    full_scale = scale }))
+  local result, message = measure.measure(record, plan)
+  if not result then
+    if found.json then
+      out_json { kind = "refused", holds = false, message = message }
+    else
+      out(message)
+    end
+    return FAILS
+  end
+  if found.json then
+    local facts = report.facts.of(result)
+    facts.kind = "measurement"
+    out_json(facts)
+  else
+    out(tostring(result))
+  end
+  return HOLDS
+end
+
+commands.windows = { options = { json = { text = "as one JSON document" } }, least = 0, most = 0 }
+
+function commands.windows.run(found)
+  local rows, list = {}, {}
+  for i, name in ipairs(window.windows()) do
+    local shape = window.window(name)
+    rows[i] = { name, shape.title, shape.source }
+    list[i] = { name = name, title = shape.title, source = shape.source,
+      parameter = shape.parameter, parameter_name = shape.parameter_name,
+      coefficients = shape.coefficients }
+  end
+  if found.json then
+    out(json.encode(list))
+  else
+    out(table.concat(table_text.layout({ { head = "name" }, { head = "title" },
+      { head = "source" } }, rows), "\n"))
+  end
+  return HOLDS
+end
+
+commands.help = { options = {}, least = 0, most = 1 }
+commands.prompt = { options = {}, least = 0, most = 0 }
+
+local function names_of(list)
+  local names = {}
+  for name in pairs(list) do
+    names[#names + 1] = name
+  end
+  table.sort(names)
+  return table.concat(names, ", ")
+end
+
+local function command_of(name)
+  if not commands[name] then
+    stop(("unknown command %q; valid: %s, or a file that ends in .lua"):format(tostring(name),
+      names_of(commands)))
+  end
+  return commands[name]
+end
+
+function commands.help.run(_, operands)
+  if operands[1] then
+    out(help.about(operands[1], command_of(operands[1]).options))
+  else
+    out(help.general)
+  end
+  return HOLDS
+end
+
+function commands.prompt.run()
+  stop("the prompt is started by scripts/libration: libration prompt, with nothing behind it")
+end
+
+local function wants_help(line)
+  for _, word in ipairs(line) do
+    if word == "--" then
+      return false
+    elseif word == "--help" or word == "-h" then
+      return true
+    end
+  end
+  return false
+end
+
+local function dispatch(line, version)
+  local name = line[1]
+  if name == "--version" then
+    out("libration " .. version)
+    return HOLDS
+  elseif name == nil or name == "--help" or name == "-h" then
+    return name and commands.help.run({}, {}) or stop("say what to do\n" .. help.general)
+  end
+  local command, rest = command_of(name), table.move(line, 2, #line, 1, {})
+  if wants_help(rest) then
+    return commands.help.run({}, { name })
+  end
+  local found, operands = words.read(rest, command.options)
+  need(found, type(operands) == "string" and operands .. " (libration help " .. name .. ")")
+  if #operands < command.least or #operands > (command.most or math.huge) then
+    stop(("libration %s: %d operands; it is:\n%s"):format(name, #operands,
+      help.about(name, command.options)))
+  end
+  return command.run(found, operands)
+end
+
+-- Tables are messages for the user; everything else is a mistake of ours.
+local function explain(problem)
+  if type(problem) == "table" and problem.message then
+    return problem
+  elseif type(problem) == "string" and problem:find "interrupted!" then
+    return { message = "stopped", code = 130 }
+  elseif problem == "not enough memory" then
+    return { message = "not enough memory", code = WORLD }
+  end
+  return { message = debug.traceback("a mistake in libration itself; please report it:\n"
+    .. tostring(problem), 2), code = 70 }
+end
+
+--- Runs a command line.
+-- @param line table: the words after the command's own name
+-- @param version string: of the library
+-- @return integer: exit code: 0 holds, 1 does not, 2 wrong use, 3 the system
+-- refused, 70 a mistake of ours, 130 stopped by Ctrl-C
+-- @usage
+-- assert(type(require("libration.command").run) == "function")
+function M.run(line, version)
+  local fine, result = xpcall(dispatch, explain, line, version)
+  if fine then
+    return result
+  end
+  io.stderr:write("libration: ", result.message, "\n")
+  return result.code
+end
+
+return M
