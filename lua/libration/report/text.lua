@@ -33,6 +33,12 @@ local function pairs_of(lines, rows)
   end
 end
 
+-- What the worst line leaves of its tolerance; a plan may use it to the end.
+local function spare(plan)
+  local left = 1 - plan.worst
+  return left < 0.001 and "less than 0.1 %" or numbers.percent(left, -1)
+end
+
 --- One line that says whether a plan holds.
 -- @param plan table: a plan
 -- @return string: "holds every tolerance with 23 % to spare", or what does not
@@ -41,7 +47,7 @@ end
 -- assert(verdict { worst = 0.767 } == "holds every tolerance with 23 % to spare")
 function M.verdict(plan)
   if plan.worst <= 1 then
-    return "holds every tolerance with " .. numbers.percent(1 - plan.worst, -1) .. " to spare"
+    return "holds every tolerance with " .. spare(plan) .. " to spare"
   end
   return "does NOT hold: the worst line takes " .. numbers.percent(plan.worst)
     .. " of its tolerance"
@@ -92,9 +98,14 @@ local function columns_of(plan, has_hz)
   return columns
 end
 
+local function bin_text(bin)
+  return bin and (math.tointeger(bin) and tostring(math.tointeger(bin)) or numbers.round(bin, 7))
+    or ""
+end
+
 local function line_row(line)
   return {
-    line.name, numbers.exact(line.hz), line.bin and numbers.round(line.bin, 7) or "",
+    line.name, numbers.exact(line.hz), bin_text(line.bin),
     amplitude(line), numbers.tolerance(line.tolerance), numbers.error(line.error),
     share(line.ratio), numbers.error(line.hz_error), share(line.hz_ratio),
   }
@@ -259,7 +270,7 @@ end
 local function plan_cells(plan)
   return {
     numbers.time(how.total(plan)), numbers.exact(plan.rate), tostring(plan.samples),
-    how.window(plan), plan.reading or "", numbers.percent(1 - plan.worst, -1),
+    how.window(plan), plan.reading or "", spare(plan),
   }
 end
 
