@@ -27,7 +27,7 @@ local demand = lb.demand {
 
 local digitizer = lb.digitizer {
   title = "24-bit digitizer, clock 12.288 MHz (invented for the demo)",
-  clock = "12.288 MHz", divider = { 128, 128 }, decimation = { 1, 2, 3, 4, 5, 6, 8, 10, 12, 16, 20, 24 },
+  clock = "12.288 MHz", divider = { 128, 128 }, decimation = { 8, 10, 12, 16, 20, 24, 32, 40 },
   bits = 24, range = "5 V", memory = "4 Mi",
   filter = { shape = "butterworth", order = 8, corner = "0.4 rate" },
   timebase = "25 ppm", jitter = "2 ns",
