@@ -22,6 +22,7 @@ local demand = lb.demand {
   },
   interferers = {
     { name = "mains", hz = 50, drift = "0.4 %", orders = "1..20", amplitude = "20 mm/s^2" },
+    { name = "inverter", hz = "16 kHz", drift = "0.1 %", amplitude = "0.5 m/s^2" },
   },
 }
 

@@ -184,6 +184,10 @@ local function view_of(plan)
   return view
 end
 
+local function half_text(rate)
+  return numbers.exact(rate / 2)
+end
+
 --- Commands that draw the fold map of a plan.
 -- @param plan table: a plan with demand and digitizer
 -- @return table: commands for gnuplot.save; or nil, message, code ("format")
@@ -196,7 +200,7 @@ function M.commands(plan)
   local view = view_of(plan)
   local title = (plan.demand.title or "Plan") .. ": fold map"
   local out, message, code = canvas.begin(title, "rate " .. numbers.exact(plan.rate)
-    .. " S/s: everything above " .. numbers.round(view.rate / 2, 6) .. " Hz folds below it")
+    .. " S/s: everything above " .. half_text(plan.rate) .. " Hz folds below it")
   if not out then
     return nil, message, code
   end
