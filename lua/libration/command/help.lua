@@ -25,8 +25,8 @@ A first plan: save these lines as pump.demand, then  libration plan pump.demand
                 amplitude = "0.05 .. 2 m/s^2", tolerance = "1 %" } },
     noise = "60 um/s^2/rtHz", sensitivity = "10 mV/(m/s^2)",
   }
-  digitizer = { clock = "12.288 MHz", divider = "128 .. 65535", bits = 24,
-                range = "5 V", timebase = "25 ppm" }
+  digitizer = { rates = { "6.4 kS/s", "12.8 kS/s" }, bits = 24, range = "5 V",
+                timebase = "25 ppm" }
 
 Exit codes: 0 it holds, 1 it does not (refused, or a bound was violated),
 2 wrong use or a mistake in a data file, 3 the world refused (a file, a disk).
