@@ -26,9 +26,10 @@ local function stop(message, code)
   error({ message = message, code = code or MISUSE }, 0)
 end
 
+-- The value, or the end of the command; codes are the library's or exit codes.
 local function need(value, message, code)
   if value == nil then
-    stop(message, code)
+    stop(message, type(code) == "string" and inputs.exit_code(code) or code)
   end
   return value
 end
@@ -129,10 +130,7 @@ local function draw(plan, folder)
   need(file.folder(folder))
   for name, picture in pairs(pictures) do
     for _, ending in ipairs { ".svg", ".png" } do
-      local _, message, code = picture(plan, folder .. "/" .. name .. ending)
-      if message then
-        stop(message, inputs.exit_code(code))
-      end
+      need(picture(plan, folder .. "/" .. name .. ending))
     end
   end
 end
@@ -171,7 +169,7 @@ for name, option in pairs(plan_options) do
   commands.plan.options[name] = option
 end
 
-function commands.plan.run(found, operands)
+local function run_plan(found, operands)
   local data = need(inputs.data(operands))
   local plan, refusal, overview = plan_all(data, read_plan_options(found))
   if not plan then
@@ -184,10 +182,7 @@ function commands.plan.run(found, operands)
   end
   show_plan(plan, overview, found)
   if found.save then
-    local _, message = plan:save(found.save)
-    if message then
-      stop(message, WORLD)
-    end
+    need(plan:save(found.save))
   end
   if found.plots then
     draw(plan, found.plots)
@@ -220,7 +215,7 @@ local function whole(found, name, least, most)
   return found[name] and need(words.whole(found[name], least, most, name))
 end
 
-function commands.prove.run(found, operands)
+local function run_prove(found, operands)
   local trials = whole(found, "trials", 0, 10 ^ 9)
   local seed = whole(found, "seed", 0, math.maxinteger)
   local workers = whole(found, "workers", 1, 256)
@@ -253,7 +248,7 @@ commands.measure = {
   least = 2, most = 2,
 }
 
-function commands.measure.run(found, operands)
+local function run_measure(found, operands)
   local channel = whole(found, "channel", 1, 10000)
   local plan = need(inputs.plan(operands[1]))
   local scale = found["full-scale"]
@@ -285,7 +280,7 @@ end
 
 commands.windows = { options = { json = { text = "as one JSON document" } }, least = 0, most = 0 }
 
-function commands.windows.run(found)
+local function run_windows(found)
   local rows, list = {}, {}
   for i, name in ipairs(window.windows()) do
     local shape = window.window(name)
@@ -323,7 +318,7 @@ local function command_of(name)
   return commands[name]
 end
 
-function commands.help.run(_, operands)
+local function run_help(_, operands)
   if operands[1] then
     out(help.about(operands[1], command_of(operands[1]).options))
   else
@@ -332,9 +327,16 @@ function commands.help.run(_, operands)
   return HOLDS
 end
 
-function commands.prompt.run()
+local function run_prompt()
   stop("the prompt is started by scripts/libration: libration prompt, with nothing behind it")
 end
+
+commands.plan.run = run_plan
+commands.prove.run = run_prove
+commands.measure.run = run_measure
+commands.windows.run = run_windows
+commands.help.run = run_help
+commands.prompt.run = run_prompt
 
 local function wants_help(line)
   for _, word in ipairs(line) do
@@ -353,11 +355,11 @@ local function dispatch(line, version)
     out("libration " .. version)
     return HOLDS
   elseif name == nil or name == "--help" or name == "-h" then
-    return name and commands.help.run({}, {}) or stop("say what to do\n" .. help.general)
+    return name and run_help({}, {}) or stop("say what to do\n" .. help.general)
   end
   local command, rest = command_of(name), table.move(line, 2, #line, 1, {})
   if wants_help(rest) then
-    return commands.help.run({}, { name })
+    return run_help({}, { name })
   end
   local found, operands = words.read(rest, command.options)
   need(found, type(operands) == "string" and operands .. " (libration help " .. name .. ")")

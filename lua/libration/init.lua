@@ -2,7 +2,7 @@
 -- The front door: a table of rooms, each loaded when it is first used. It sets
 -- no globals, and no module of the library requires it back.
 
-local M = { version = "0.1.0" }
+local M = { version = require "libration.version" }
 
 -- Public names and where they live: module, field (absent: the module), and
 -- modules that add methods to what it makes.

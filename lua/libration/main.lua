@@ -1,6 +1,6 @@
 --- What scripts/libration runs: the command with the words of its command line.
 
 local command = require "libration.command"
-local lb = require "libration"
+local version = require "libration.version"
 
-os.exit(command.run({ ... }, lb.version), true)
+os.exit(command.run({ ... }, version), true)

@@ -2,8 +2,6 @@
 -- The interpreter reads, runs and prints, goes on reading while a statement is
 -- incomplete, and stops what runs on Ctrl-C; this module only lays the table.
 
-local lb = require "libration"
-
 local M = {}
 
 local greeting = [[
@@ -41,7 +39,8 @@ end
 -- @return string: several lines
 -- @usage
 -- local about = require("libration.prompt").about
--- assert(about():find "lb.plan" and about("plan"):find "within" and about { a = 1 } == "  .a  (number)")
+-- assert(about():find "lb.plan" and about("plan"):find "within")
+-- assert(about { a = 1 } == "  .a  (number)")
 function M.about(thing)
   if thing == nil then
     local lines = {}
@@ -59,10 +58,11 @@ function M.about(thing)
 end
 
 --- Lays the table: lb and help as globals, our prompt, a greeting.
+-- @param lb table: the library
 -- @return nothing
 -- @usage
 -- assert(type(require("libration.prompt").start) == "function")
-function M.start()
+function M.start(lb)
   _G.lb = lb
   function _G.help(thing)
     print(M.about(thing))

@@ -27,7 +27,9 @@ local function add(all, data, path)
     end
     all.demand, all.demand_path = data.demand, path
   end
-  table.move(data.digitizers or {}, 1, #(data.digitizers or {}), #all.digitizers + 1, all.digitizers)
+  for _, digitizer in ipairs(data.digitizers or {}) do
+    table.insert(all.digitizers, digitizer)
+  end
   return true
 end
 
@@ -54,8 +56,9 @@ function M.data(paths)
   if #complaints > 0 then
     return nil, table.concat(complaints, "\n"), worst
   elseif not all.demand or #all.digitizers == 0 then
-    return nil, (all.demand and "no digitizer" or "no demand") .. " in " .. table.concat(paths, ", ")
-      .. ": the files together need demand = { lines = { ... } } and digitizer = { ... }", M.MISUSE
+    local lacking = all.demand and "no digitizer" or "no demand"
+    return nil, lacking .. " in " .. table.concat(paths, ", ") .. ": the files together need "
+      .. "demand = { lines = { ... } } and digitizer = { ... }", M.MISUSE
   end
   return all
 end
