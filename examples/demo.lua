@@ -50,21 +50,23 @@ say(tostring(need(plan, refusal)))
 heading("the proof", "The plan is simulated with random amplitudes, phases and frequencies "
   .. "through the\ndigitizer's model, and an adversary looks for the worst case. No systematic "
   .. "bound\nmay be passed: the count of violations must be 0.")
-local proof = require("libration.proof").prove(plan, { trials = trials, seed = 1 })
+local proof = plan:prove { trials = trials, seed = 1 }
 say(tostring(proof))
 
 heading("a record, written and read back", "One simulated record goes into a sound file and "
   .. "comes back as a recording from\nthe rig would, sample for sample.")
 need(require("libration.report.file").folder(folder))
 local path = folder .. "/pump-skid.wav"
-local simulated = need(require("libration.proof").replay(plan, { seed = 2026, trial = 0 }))
+local simulated = need(plan:replay { seed = 2026, trial = 0 })
 need(simulated:write(path))
-local record = need(lb.record.read(path, { unit = demand.unit }))
-say(("%s: %d samples at %s S/s"):format(path, record.samples, tostring(record.rate)))
+local full_scale = digitizer.range / demand.sensitivity
+local record = need(lb.record.read(path, { unit = demand.unit, full_scale = full_scale }))
+say(("%s: %d samples at %s S/s, full scale %g %s"):format(path, record.samples,
+  tostring(record.rate), full_scale, demand.unit))
 
 heading("the record, measured", "Every line is read the way the plan says, with its worst-case "
   .. "error and its\nuncertainty.")
-local result = need(require("libration.measure").measure(record, plan))
+local result = need(record:measure(plan))
 say(tostring(result))
 
 heading("pictures and files", "The fold map shows where everything stands in the record; the "

@@ -25,11 +25,12 @@ local plan = assert(lb.plan(demand, digitizer, { within = "10 s" }))
 local path, own = arg and arg[1], false
 if not path then
   path, own = os.tmpname(), true
-  local simulated = assert(require("libration.proof").replay(plan, { seed = 7, trial = 0 }))
+  local simulated = assert(plan:replay { seed = 7, trial = 0 })
   assert(simulated:write(path))
 end
 
-local record, message = lb.record.read(path, { unit = "V" })
+-- The file holds shares of the full scale: how many volts that is must be said.
+local record, message = lb.record.read(path, { unit = "V", full_scale = "2 V" })
 if own then
   os.remove(path)
 end
@@ -37,6 +38,6 @@ if not record then
   io.stderr:write(message, "\n")
   os.exit(3)
 end
-local result, why = require("libration.measure").measure(record, plan)
+local result, why = record:measure(plan)
 print(result or why)
 os.exit(result and 0 or 1)

@@ -44,4 +44,4 @@ end
 -- The same plan simulated: random amplitudes, phases and frequencies, and an
 -- adversary that looks for the worst case. No bound may be passed.
 print()
-print(require("libration.proof").prove(plan, { trials = 1000, seed = 1 }))
+print(plan:prove { trials = 1000, seed = 1 })

@@ -204,15 +204,16 @@ describe("plan, prove, measure", function()
     assert.equal(0, (run("plan", write("good.demand", good), "--save", folder .. "/tone.plan")))
     local lb = require "libration"
     local plan = assert(lb.load_plan(folder .. "/tone.plan"))
-    local proof = require "libration.proof"
-    local record = assert(proof.replay(plan, { seed = 3, trial = 0 }))
+    local record, truth = plan:replay { seed = 3, trial = 0 }
     assert(record:write(folder .. "/tone.wav"))
-    local code, out, err = run("measure", folder .. "/tone.plan", folder .. "/tone.wav",
-      "--full-scale", "1 V", "--json")
+    local code, out, err = run("measure", folder .. "/tone.plan", folder .. "/tone.wav", "--json")
     assert.same({ 0, "" }, { code, err })
     local facts = cjson.decode(out)
     assert.equal("measurement", facts.kind)
-    assert.equal("tone", facts.lines[1].name)
+    local line = facts.lines[1]
+    assert.equal("tone", line.name)
+    assert.near(truth.lines[1].amplitude, line.amplitude, line.bound)
+    assert.near(record:measure(plan).lines[1].amplitude, line.amplitude, 2 * 4 / 2 ^ 16)
     local short = lb.record.new { rate = "8 kS/s", unit = "V", samples = { 0.5, -0.5, 0.25 } }
     assert(short:write(folder .. "/short.wav"))
     code, out = run("measure", folder .. "/tone.plan", folder .. "/short.wav",
