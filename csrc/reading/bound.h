@@ -18,26 +18,11 @@
 #define LBR_READING_BOUND_H
 
 #include "base/status.h"
+#include "reading/path.h"
 #include "reading/scene.h"
 #include "window/kernel.h"
 
 typedef enum lbr_reading { LBR_READING_BIN, LBR_READING_TRACKED } lbr_reading;
-
-/* What a sample rate makes of a scene before any record length is chosen. */
-typedef struct lbr_path {
-  double rate;     /* S/s */
-  double *high;    /* n_sources: most |F| over the source's interval */
-  double *nominal; /* n_lines: |F| at the nominal frequency */
-  double *droop;   /* n_lines: most relative departure from nominal */
-  double *density; /* n_lines: noise density squared where the line is read,
-                      folds and the digitizer's own noise included */
-} lbr_path;
-
-/* Bytes of doubles an lbr_path needs, and its filling; `memory` holds
- * lbr_path_doubles(scene) doubles that stay the caller's. */
-size_t lbr_path_doubles(const lbr_scene *scene);
-void lbr_path_fill(lbr_path *path, const lbr_scene *scene,
-                   const lbr_front_end *front, double rate, double *memory);
 
 /* One combination to be judged. */
 typedef struct lbr_case {
@@ -68,6 +53,8 @@ typedef struct lbr_bound {
   double ratio;     /* error / tolerance, or frequency error / tolerance_hz,
                        whichever is larger */
   double ratio_hz;  /* the frequency part alone; 0: no such tolerance */
+  double steer;     /* tracked: most distance from the line to where it is
+                       read, bins */
 } lbr_bound;
 
 /* A lower bound of lbr_bound.ratio, in well under a microsecond a source:
@@ -84,37 +71,5 @@ void lbr_bound_line(const lbr_case *c, size_t line, double enough,
  * it (for `bin` both ends are the bin's frequency). */
 void lbr_bound_search(const lbr_case *c, size_t line, double *low,
                       double *high);
-
-typedef enum lbr_term_kind {
-  LBR_TERM_SCALLOP,      /* own droop off the bin, or main lobe over 1 */
-  LBR_TERM_IMAGE,        /* own negative-frequency image */
-  LBR_TERM_SMEAR,        /* own wander within the record */
-  LBR_TERM_DROOP,        /* filter: flatness and slope over the interval */
-  LBR_TERM_ACCURACY,     /* sensor and range tolerance */
-  LBR_TERM_JITTER_LOSS,  /* loss by aperture jitter */
-  LBR_TERM_OFFSET,       /* mean of the record */
-  LBR_TERM_LEAKAGE,      /* another source, its image and fold included */
-  LBR_TERM_PRODUCTS,     /* products of the terms above, and joint slack */
-  LBR_TERM_NOISE,        /* random from here on: noise at the input */
-  LBR_TERM_QUANTISATION, /* rounding to codes */
-  LBR_TERM_JITTER_NOISE, /* noise by aperture jitter */
-  LBR_TERM_KINDS
-} lbr_term_kind;
-
-typedef struct lbr_term {
-  lbr_term_kind kind;
-  size_t source; /* LBR_TERM_LEAKAGE: index of the other source */
-  double value;  /* demand's unit at lbr_bound.amplitude: a bound, or for
-                    random kinds coverage * sigma / sqrt(averages) */
-} lbr_term;
-
-const char *lbr_term_text(lbr_term_kind kind); /* "own image", never NULL */
-
-/* The entries of a line's budget: systematic ones add up to bound->error's
- * systematic part (joint suprema make LBR_TERM_PRODUCTS negative where single
- * suprema cannot coincide), random ones in quadrature.  `terms` has room for
- * n_sources + LBR_TERM_KINDS entries; returns the count. */
-size_t lbr_bound_budget(const lbr_case *c, size_t line,
-                        const lbr_bound *bound, lbr_term *terms);
 
 #endif

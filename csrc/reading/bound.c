@@ -1,0 +1,333 @@
+#include "reading/bound.h"
+
+#include <math.h>
+#include <stdbool.h>
+
+#include "reading/leak.h"
+#include "reading/parts.h"
+
+#define PI 3.14159265358979323846
+#define SLACK 0.01  /* how tight joint suprema are made, relative */
+#define ROUNDS 3    /* times the steering radius is narrowed */
+#define LOBE_END 16 /* no main lobe reaches further, bins */
+
+static const lbr_source *own(const lbr_case *c, size_t line) {
+  return &c->scene->sources[line];
+}
+
+double lbr_duration(const lbr_case *c) { return (double)c->n / c->path->rate; }
+
+static double bin_hz(const lbr_case *c, size_t line) {
+  return rint(own(c, line)->hz * lbr_duration(c)) / lbr_duration(c);
+}
+
+void lbr_bound_search(const lbr_case *c, size_t line, double *low,
+                      double *high) {
+  const lbr_source *s = own(c, line);
+  double half = lbr_half_width(c->scene, line), timebase = c->front->timebase;
+  if (c->reading == LBR_READING_BIN) {
+    *low = *high = bin_hz(c, line);
+    return;
+  }
+  *low = (s->hz - half) * (1 - timebase);
+  *high = (s->hz + half) * (1 + timebase);
+}
+
+/* Variances of one record's amplitude by cause, unit squared. */
+lbr_variance lbr_bound_variance(const lbr_case *c, size_t line) {
+  const lbr_front_end *f = c->front;
+  double nyquist = c->path->rate / 2, slopes = 0;
+  double per_density = lbr_kernel_noise_bandwidth(c->kernel) /
+                       lbr_duration(c) /
+                       (c->path->nominal[line] * c->path->nominal[line]);
+  for (size_t j = 0; f->jitter_s > 0 && j < c->scene->n_sources; j++) {
+    const lbr_source *s = &c->scene->sources[j];
+    double slope = 2 * PI * s->hz * s->most * c->path->high[j];
+    slopes += slope * slope / 2;
+  }
+  return (lbr_variance){
+      .noise = c->path->density[line] * per_density,
+      .quantisation = f->step * f->step / 12 / nyquist * per_density,
+      .jitter = slopes * f->jitter_s * f->jitter_s / nyquist * per_density};
+}
+
+static double sigma(const lbr_case *c, size_t line) {
+  lbr_variance v = lbr_bound_variance(c, line);
+  return sqrt(v.noise + v.quantisation + v.jitter);
+}
+
+/* The distance beyond which the kernel stays below `level`, bins. */
+static double last_above(lbr_kernel *kernel, double level) {
+  double low, high;
+  int bin = LOBE_END;
+  while (bin > 0) {
+    lbr_kernel_range(kernel, bin - 1, bin, &low, &high);
+    if (high >= level) break;
+    bin--;
+  }
+  if (bin == LOBE_END || bin == 0) return bin;
+  double from = bin - 1, to = bin; /* gain below level on [to, bin] */
+  while (to - from > 1e-3) {
+    double middle = (from + to) / 2;
+    lbr_kernel_range(kernel, middle, to, &low, &high);
+    if (high >= level)
+      from = middle;
+    else
+      to = middle;
+  }
+  return to;
+}
+
+/* Own wander: relative loss, excess, and what its sidebands may add in
+ * quadrature or at the flanks. */
+static lbr_smear smear_of(const lbr_case *c, size_t line, double duration,
+                          double reach) {
+  lbr_leak l = {c, line, duration, 0, 0};
+  double amplitude[LBR_SIDEBANDS], low, high, total = 0;
+  size_t count = lbr_leak_sidebands(&l, line, amplitude);
+  lbr_smear smear = {0, 0, 0};
+  if (count == 1) return smear;
+  for (size_t k = 1; k < count; k++) {
+    double order = (double)k;
+    lbr_kernel_range(c->kernel, order - reach, order + reach, &low, &high);
+    total += 2 * amplitude[k] * high;
+    if (k % 2 == 0) smear.loss += 2 * amplitude[k] * high;
+  }
+  smear.loss += 1 - amplitude[0];
+  smear.flanks = total;
+  smear.excess = fmin(lbr_kernel_absolute(c->kernel) - 1,
+                      amplitude[0] + total - 1);
+  smear.excess = fmax(smear.excess, 0);
+  return smear;
+}
+
+/* Response to the offset at the line, and the line's own image. */
+static double offset_gain(const lbr_case *c, double low_hz, double high_hz,
+                          double steer) {
+  double low, high, t = lbr_duration(c);
+  lbr_kernel_range(c->kernel, low_hz * t - steer, high_hz * t + steer, &low,
+                   &high);
+  return high;
+}
+
+static double image_gain(const lbr_case *c, size_t line, double steer) {
+  double t = lbr_duration(c), low, high, from, to, read;
+  const lbr_source *s = own(c, line);
+  double half = lbr_half_width(c->scene, line), timebase = c->front->timebase;
+  from = (s->hz - half) * (1 - timebase);
+  to = (s->hz + half) * (1 + timebase);
+  if (c->reading == LBR_READING_BIN) {
+    read = bin_hz(c, line);
+    from += read;
+    to += read;
+  } else {
+    from *= 2;
+    to *= 2;
+  }
+  lbr_kernel_range(c->kernel, from * t - steer, to * t + steer, &low, &high);
+  return high;
+}
+
+/* Own lobe: how far |H| leaves 1 where the line may stand. */
+static double lobe_gain(const lbr_case *c, size_t line, double steer) {
+  double low, high, from, to, t = lbr_duration(c);
+  if (c->reading == LBR_READING_TRACKED) {
+    lbr_kernel_range(c->kernel, -steer, steer, &low, &high);
+    return fmax(high - 1, 0);
+  }
+  const lbr_source *s = own(c, line);
+  double half = lbr_half_width(c->scene, line), timebase = c->front->timebase;
+  from = (s->hz - half) * (1 - timebase) - bin_hz(c, line);
+  to = (s->hz + half) * (1 + timebase) - bin_hz(c, line);
+  lbr_kernel_range(c->kernel, from * t, to * t, &low, &high);
+  return fmax(high - 1, 1 - low);
+}
+
+/* The terms of one line for a given steering radius, joint sum apart. */
+lbr_parts lbr_bound_parts(const lbr_case *c, size_t line, double steer) {
+  double low, high, t = lbr_duration(c);
+  double jitter = 2 * PI * own(c, line)->hz * c->front->jitter_s;
+  double far = c->reading == LBR_READING_BIN ? 0.5 : steer;
+  lbr_smear smear = smear_of(c, line, t, far);
+  lbr_bound_search(c, line, &low, &high);
+  lbr_parts p = {.steer = steer};
+  p.lobe = lobe_gain(c, line, steer);
+  p.image = image_gain(c, line, steer);
+  p.smear = c->reading == LBR_READING_BIN ? smear.loss + smear.flanks
+                                          : fmax(smear.loss, smear.excess);
+  p.flanks = smear.flanks;
+  p.droop = c->path->droop[line];
+  p.accuracy = c->front->accuracy;
+  p.jitter_loss = -expm1(-jitter * jitter / 2);
+  p.offset = 2 * c->scene->offset / c->path->nominal[line] *
+             offset_gain(c, low, high, steer);
+  return p;
+}
+
+static double own_product(const lbr_parts *p) {
+  return (1 + p->lobe + p->image + p->smear) * (1 + p->droop) *
+             (1 + p->accuracy) * (1 + p->jitter_loss) - 1;
+}
+
+double lbr_parts_scale(const lbr_case *c) {
+  return (1 + c->front->flatness) * (1 + c->front->accuracy);
+}
+
+static double tolerance_at(const lbr_line *line, double amplitude) {
+  return fmin(line->tolerance * amplitude, line->tolerance_abs);
+}
+
+/* Fills error, tolerance, amplitude, ratio from own, others, sigma. */
+static void judge(const lbr_case *c, size_t line, lbr_bound *b) {
+  const lbr_source *s = own(c, line);
+  const double ends[2] = {s->least, s->most};
+  double root = sqrt((double)c->averages), random = c->coverage / root;
+  b->ratio = -1;
+  for (int k = 0; k < 2; k++) {
+    double error = b->own * ends[k] + b->others + random * b->sigma;
+    double tolerance = tolerance_at(&c->scene->lines[line], ends[k]);
+    double ratio = isinf(tolerance) ? 0 : error / tolerance;
+    if (ratio <= b->ratio) continue;
+    b->ratio = ratio;
+    b->amplitude = ends[k];
+    b->error = error;
+    b->tolerance = tolerance;
+  }
+  double hz = b->hz + random * b->sigma_hz;
+  double allowed = c->scene->lines[line].tolerance_hz;
+  b->ratio_hz = isinf(allowed) ? 0 : hz / allowed;
+  b->ratio = fmax(b->ratio, b->ratio_hz);
+}
+
+/* Frequency of a tracked line, from the stationarity of |X|^2:
+ * |R'| <= |L'| / A (A R + |L|) / (A R - |L|). */
+static void track_frequency(const lbr_case *c, const lbr_leak *l,
+                            const lbr_parts *p, double leak, lbr_bound *b) {
+  const lbr_source *s = own(c, l->line);
+  double t = l->duration, x[LBR_SIDEBANDS];
+  double e = leak + p->offset + (p->flanks + p->image) * s->least;
+  double curvature = lbr_kernel_curvature(c->kernel, p->steer);
+  double slope = lbr_leak_slope(l), far = p->steer, low, high;
+  size_t count = lbr_leak_sidebands(l, l->line, x);
+  for (size_t k = 1; k < count; k++)
+    slope += 2 * s->least * x[k] *
+             lbr_kernel_slope(c->kernel, (double)k - far, (double)k + far);
+  lbr_bound_search(c, l->line, &low, &high);
+  slope += s->least * lbr_kernel_slope(c->kernel, 2 * low * t - far,
+                                       2 * high * t + far);
+  slope += 2 * c->scene->offset / c->path->nominal[l->line] *
+           lbr_kernel_slope(c->kernel, low * t - far, high * t + far);
+  double kept = s->least * x[0];
+  double grow = e < kept ? (kept + e) / (kept - e) : INFINITY;
+  double bins = curvature > 0 ? slope / (kept * curvature) * grow : INFINITY;
+  double peak = lbr_kernel_curvature(c->kernel, 0);
+  b->hz = fmin(bins, p->steer) / t + high * c->front->timebase;
+  b->sigma_hz = peak > 0 ? b->sigma * 2 * PI * sqrt(c->second_moment) /
+                               (s->least * peak * t)
+                         : (high - low);
+}
+
+static void bin_frequency(const lbr_case *c, size_t line, lbr_bound *b) {
+  const lbr_source *s = own(c, line);
+  double half = lbr_half_width(c->scene, line), read = bin_hz(c, line);
+  b->hz = fmax(fabs(s->hz - half - read), fabs(s->hz + half - read));
+  b->sigma_hz = 0;
+}
+
+static void settle(const lbr_case *c, const lbr_leak *l, const lbr_parts *p,
+                   double leak, lbr_bound *b) {
+  b->own = own_product(p);
+  b->others = leak * lbr_parts_scale(c) + p->offset;
+  if (c->reading == LBR_READING_BIN)
+    bin_frequency(c, l->line, b);
+  else
+    track_frequency(c, l, p, leak, b);
+  judge(c, l->line, b);
+}
+
+/* Most the line's place of reading can be from the line, given that all other
+ * contributions stay below `leak` (unit) wherever the search may look. */
+static double steer_radius(const lbr_case *c, size_t line, double leak_anywhere,
+                           double leak_here, const lbr_parts *p) {
+  double a = own(c, line)->least;
+  double level = 1 - p->smear - p->flanks - 2 * p->image -
+                 (leak_anywhere + leak_here + 2 * p->offset) / a;
+  if (level <= 0) return INFINITY;
+  return last_above(c->kernel, level);
+}
+
+/* The sum of leaks that the amplitude bound could at most afford. */
+static double affordable(const lbr_case *c, size_t line, const lbr_parts *p,
+                         const lbr_bound *b, double enough) {
+  const lbr_source *s = own(c, line);
+  double random = c->coverage / sqrt((double)c->averages) * b->sigma;
+  double most = INFINITY;
+  for (int k = 0; k < 2; k++) {
+    double a = k ? s->most : s->least;
+    double room = enough * tolerance_at(&c->scene->lines[line], a) -
+                  own_product(p) * a - p->offset - random;
+    most = fmin(most, room / lbr_parts_scale(c));
+  }
+  return most;
+}
+
+void lbr_bound_line(const lbr_case *c, size_t line, double enough,
+                    lbr_bound *b) {
+  double low, high, t = lbr_duration(c);
+  lbr_bound_search(c, line, &low, &high);
+  bool tracked = c->reading == LBR_READING_TRACKED;
+  double widest = tracked ? (high - low) * t : 0;
+  lbr_leak l = {c, line, t, bin_hz(c, line), 0};
+  *b = (lbr_bound){.sigma = sigma(c, line)};
+  double anywhere = lbr_leak_crude(&l), leak = anywhere;
+  lbr_parts p = lbr_bound_parts(c, line, widest);
+  b->steer = widest;
+  settle(c, &l, &p, leak, b);
+  if (b->ratio <= enough) return;
+  for (int round = 0; round < ROUNDS; round++) {
+    if (tracked) {
+      double radius = steer_radius(c, line, round ? leak : anywhere, leak, &p);
+      l.steer = fmin(fmin(radius, b->steer), widest);
+      if (round > 0 && l.steer > 0.97 * b->steer) return;
+      p = lbr_bound_parts(c, line, l.steer);
+    }
+    double room = enough > 0 ? affordable(c, line, &p, b, enough) : 0;
+    double joint = lbr_leak_joint(&l, room, enough > 0 ? room : INFINITY,
+                                  SLACK);
+    leak = fmin(leak, joint);
+    b->steer = l.steer;
+    settle(c, &l, &p, leak, b);
+    if (!tracked || b->ratio <= enough) return;
+  }
+}
+
+double lbr_bound_glance(const lbr_case *c, size_t line) {
+  const lbr_source *s = own(c, line);
+  lbr_leak l = {c, line, lbr_duration(c), bin_hz(c, line), 0};
+  lbr_bound b = {.sigma = sigma(c, line)};
+  double fixed = (1 + c->path->droop[line]) * (1 + c->front->accuracy) - 1;
+  if (c->reading == LBR_READING_BIN) {
+    double off = (s->hz - l.read_hz) * l.duration;
+    fixed += 1 - fmin(lbr_kernel_gain(c->kernel, off), 1);
+  }
+  b.own = fixed;
+  double most = 2 * tolerance_at(&c->scene->lines[line], s->most);
+  b.others = lbr_leak_nominal(&l, most);
+  judge(c, line, &b);
+  return b.ratio;
+}
+
+static double square(double x) { return x * x; }
+
+lbr_status lbr_second_moment(const lbr_window *window, double *out) {
+  enum { POINTS = 512 };
+  double w[POINTS], moment = 0, power = 0;
+  lbr_status status = lbr_window_fill(window, w, POINTS);
+  if (status != LBR_OK) return status;
+  for (int i = 0; i < POINTS; i++) {
+    moment += square(w[i] * ((double)i / POINTS - 0.5));
+    power += square(w[i]);
+  }
+  *out = moment / power;
+  return LBR_OK;
+}

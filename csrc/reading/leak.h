@@ -1,0 +1,52 @@
+/* Leak: how much the other sources, with their images and folds, can add to
+ * the reading of one line; suprema over all that moves, source by source of
+ * one driver jointly.
+ */
+#ifndef LBR_READING_LEAK_H
+#define LBR_READING_LEAK_H
+
+#include <stdbool.h>
+
+#include "reading/bound.h"
+
+#define LBR_SIDEBANDS 24 /* most sideband pairs a wandering source spreads to */
+
+typedef struct lbr_leak {
+  const lbr_case *c;
+  size_t line;
+  double duration; /* T, s */
+  double read_hz;  /* bin: where the line is read */
+  double steer;    /* tracked: most distance between the line and the place
+                      where it is read, bins */
+} lbr_leak;
+
+/* Sideband amplitudes |J_k(beta)|, k = 0 .. count - 1, of a source that
+ * wanders; count is 1 for a steady one. */
+size_t lbr_leak_sidebands(const lbr_leak *leak, size_t source,
+                          double amplitude[LBR_SIDEBANDS]);
+
+/* Upper bound of the normalised response to source j and its image, with the
+ * line's driver in [e1, e2] and the source's own in [d1, d2] (relative
+ * deviations); `locked`: both are the same deviation. */
+double lbr_leak_gain(const lbr_leak *leak, size_t j, double e1, double e2,
+                     double d1, double d2, bool locked);
+
+/* Contribution of source j in the demand's unit with everything free. */
+double lbr_leak_of(const lbr_leak *leak, size_t j);
+
+/* Sum of lbr_leak_of over all other sources: never less than the supremum. */
+double lbr_leak_crude(const lbr_leak *leak);
+
+/* Supremum of the sum, drivers moved jointly; refined until it is within
+ * `slack` (relative), or known to be at most `low`, or known to exceed
+ * `high`.  Always an upper bound of the true supremum. */
+double lbr_leak_joint(const lbr_leak *leak, double low, double high,
+                      double slack);
+
+/* The sum with everything at its nominal place; stops above `high`. */
+double lbr_leak_nominal(const lbr_leak *leak, double high);
+
+/* Upper bound of |dL/dx| (per bin) of the sum at the line, unit. */
+double lbr_leak_slope(const lbr_leak *leak);
+
+#endif
