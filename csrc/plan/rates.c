@@ -3,7 +3,8 @@
 #include <math.h>
 #include <stdlib.h>
 
-#define SAME 1e-15 /* relative: two settings that make one rate */
+#define SAME 1e-15             /* relative: settings that make one rate */
+#define MOST_TRIES (1 << 26) /* settings of a PLL that are looked through */
 
 lbr_status lbr_rates_add(lbr_rates *rates, lbr_rate rate,
                          lbr_rate_limits limits) {
@@ -45,6 +46,10 @@ lbr_status lbr_rates_divide(lbr_rates *rates, const lbr_divider_clock *c,
 
 lbr_status lbr_rates_pll(lbr_rates *rates, const lbr_pll_clock *c,
                          lbr_rate_limits limits) {
+  double tries = ((double)c->multiply_most - c->multiply_least + 1) *
+                 ((double)c->divide_most - c->divide_least + 1) *
+                 (double)c->n_after;
+  if (tries > MOST_TRIES) return LBR_OVERFLOW;
   for (unsigned m = c->multiply_least; m <= c->multiply_most; m++)
     for (unsigned d = c->divide_least; d <= c->divide_most; d++) {
       double vco = c->clock * m / d;

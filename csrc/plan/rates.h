@@ -6,7 +6,7 @@
 
 #include "base/status.h"
 
-#define LBR_MOST_RATES ((size_t)1 << 20)
+#define LBR_MOST_RATES ((size_t)1 << 19)
 
 typedef struct lbr_rate {
   double value;        /* S/s */

@@ -1,0 +1,74 @@
+/* Coherence: which record durations put every line onto a bin, and which
+ * (divider, length) pairs of a clock last that long.
+ *
+ * A line f is on a bin exactly when f T is whole, T = N / rate; so coherence
+ * is a matter of durations alone.  They are found line by line (the lowest
+ * first) as intervals, and each interval is then a run of whole numbers
+ * M = N D of clock periods to be split into a divider and a length.
+ */
+#ifndef LBR_PLAN_COHERENT_H
+#define LBR_PLAN_COHERENT_H
+
+#include <stddef.h>
+#include <stdint.h>
+
+#include "base/fraction.h"
+#include "base/status.h"
+
+typedef struct lbr_span {
+  double from, to; /* durations, s, inclusive */
+} lbr_span;
+
+typedef struct lbr_spans {
+  lbr_span *item; /* ascending, disjoint */
+  size_t count, room;
+} lbr_spans;
+
+void lbr_spans_free(lbr_spans *spans);
+
+/* The shortest duration in which every frequency makes whole cycles,
+ * 1 / gcd, exactly.  LBR_OVERFLOW where it does not fit 64 bits. */
+LBR_CHECKED lbr_status lbr_coherent_period(const lbr_fraction *hz, size_t n,
+                                           lbr_fraction *seconds);
+
+/* All durations in [from, to] at which every hz[i] * T is within `off` of a
+ * whole number (0 < off < 0.5).  hz ascending and > 0.  LBR_OVERFLOW when there
+ * are more than a few million. */
+LBR_CHECKED lbr_status lbr_coherent_spans(const double *hz, size_t n,
+                                          double off, double from, double to,
+                                          lbr_spans *spans);
+
+typedef struct lbr_grid { /* what a clocked digitizer can do */
+  double clock;               /* Hz */
+  uint32_t divider_least, divider_most;
+  uint64_t samples_least, samples_most;
+  double most_duration;       /* s; may be INFINITY */
+} lbr_grid;
+
+typedef struct lbr_pair_demand {
+  const double *line; /* Hz, n_lines, ascending */
+  size_t n_lines;
+  double off;         /* most distance of a line from its bin, bins */
+  const double *away; /* interferers, Hz, n_away */
+  size_t n_away;
+  double bins;        /* their folds stand more than this off every line */
+} lbr_pair_demand;
+
+typedef struct lbr_setting {
+  uint32_t divider;
+  uint32_t samples;
+} lbr_setting;
+
+typedef struct lbr_settings {
+  lbr_setting *item; /* by divider, then by samples */
+  size_t count;
+} lbr_settings;
+
+/* Every (divider, samples) that keeps the lines below half the rate, on their
+ * bins, and the folded interferers away.  `workers`: as in lbr_workers_run. */
+LBR_CHECKED lbr_status lbr_coherent_settings(const lbr_grid *grid,
+                                             const lbr_pair_demand *demand,
+                                             unsigned workers,
+                                             lbr_settings *out);
+
+#endif

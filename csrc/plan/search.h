@@ -1,0 +1,35 @@
+/* The search: the shortest record that holds every tolerance.
+ *
+ * Best first over record durations: ranges of durations are left out when the
+ * relaxation shows that none of them can do, halved while they are long, and
+ * brought onto the hardware (rate, length) when they are short; the first
+ * combination that passes the full bound, in order of duration, is the best.
+ * The work grows with what nearly fits, not with rates x lengths.
+ */
+#ifndef LBR_PLAN_SEARCH_H
+#define LBR_PLAN_SEARCH_H
+
+#include "base/status.h"
+#include "plan/problem.h"
+
+typedef struct lbr_choice {
+  size_t rate; /* index into problem->rates->item */
+  size_t mode; /* index into problem->modes */
+  size_t n;    /* samples of the record, per channel */
+} lbr_choice;
+
+typedef struct lbr_search_count {
+  size_t ranges;     /* ranges of durations looked at */
+  size_t candidates; /* (rate, length, mode) brought onto the hardware */
+  size_t bounds;     /* full bounds evaluated */
+  double work;       /* about microseconds */
+} lbr_search_count;
+
+/* LBR_OK: *choice is the shortest; among equal durations the one of fewest
+ * samples.  LBR_INFEASIBLE: nothing fits.  LBR_STOPPED: gave up at
+ * problem->most_work. */
+LBR_CHECKED lbr_status lbr_search_run(const lbr_problem *problem,
+                                      lbr_choice *choice,
+                                      lbr_search_count *count);
+
+#endif
