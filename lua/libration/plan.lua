@@ -90,11 +90,14 @@ local function build(demand, digitizer, posed, choice)
     samples = choice.samples, duration_s = choice.samples / rate:number(),
     averages = demand.averages or 1, coverage = demand.coverage or 3,
     window = { name = mode.window, parameter = mode.parameter }, reading = mode.reading,
-    lines = {}, worst = 0,
+    lines = {}, claims = {}, worst = 0, front = problem.front(demand, digitizer),
   }, Plan)
   local judged = core.plan.judge(posed.handle, rate:number(), choice.mode, choice.samples)
   for i, row in ipairs(judged) do
     plan.lines[i] = line_of(plan, i, row, posed, choice)
+    plan.claims[i] = { own = row.own, others = row.others, sigma = row.sigma,
+      hz = row.hz_bound, sigma_hz = row.sigma_hz, f_lo = row.search_low_hz,
+      f_hi = row.search_high_hz, gain = row.gain }
     plan.worst = math.max(plan.worst, row.ratio)
   end
   plan.notes = notes_of(plan)

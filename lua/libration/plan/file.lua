@@ -110,11 +110,11 @@ function M.read(path)
   if mistakes.count > 0 then
     return nil, mistakes:message(path), "format"
   end
-  local ok, demand = pcall(demand_module.new, data.demand)
+  local ok, demand = pcall(demand_module.demand, data.demand)
   if not ok then
     return nil, path .. ": " .. tostring(demand), "format"
   end
-  local fine, digitizer = pcall(digitizer_module.new, data.digitizer)
+  local fine, digitizer = pcall(digitizer_module.digitizer, data.digitizer)
   if not fine then
     return nil, path .. ": " .. tostring(digitizer), "format"
   end
