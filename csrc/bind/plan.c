@@ -106,6 +106,20 @@ static const double *hz_list(lua_State *L, const char *name, size_t *n) {
   return list;
 }
 
+/* The coherent period of the lines, each taken for its shortest decimal; 0
+ * where 64 bits do not hold it. */
+static double period_of(lua_State *L, size_t n) {
+  lua_getfield(L, 1, "lines");
+  lbr_fraction *list = lua_newuserdatauv(L, (n + 1) * sizeof *list, 0), period;
+  for (size_t i = 0; i < n; i++) {
+    lua_rawgeti(L, -2, (lua_Integer)i + 1);
+    list[i] = lbr_check_fraction(L, -1);
+    lua_pop(L, 1);
+  }
+  lbr_status status = lbr_coherent_period(list, n, &period);
+  return status == LBR_OK ? lbr_fraction_to_double(period) : 0;
+}
+
 static uint32_t whole(lua_State *L, const char *name) {
   double value = lbr_field_number(L, 1, name);
   if (!(value >= 1 && value <= UINT32_MAX))
@@ -177,6 +191,7 @@ static int plan_coherent(lua_State *L) {
   d.line = hz_list(L, "lines", &d.n_lines);
   d.away = hz_list(L, "away", &d.n_away);
   luaL_argcheck(L, d.n_lines > 0, 1, "lines: at least one is needed");
+  d.period = period_of(L, d.n_lines);
   luaL_argcheck(L, d.off > 0 && d.off < 0.5, 1, "off: between 0 and 0.5 bins");
   lbr_grid grid = {.clock = lbr_field_number(L, 1, "clock"),
                    .divider_least = whole(L, "divider_least"),

@@ -54,8 +54,9 @@ static lbr_status cut(lbr_spans *out, lbr_span span, double hz, double off) {
   return LBR_OK;
 }
 
-lbr_status lbr_coherent_spans(const double *hz, size_t n, double off,
-                              double from, double to, lbr_spans *spans) {
+/* Line by line over [from, to]. */
+static lbr_status search(const double *hz, size_t n, double off, double from,
+                         double to, lbr_spans *spans) {
   lbr_spans now = {NULL, 0, 0}, next = {NULL, 0, 0};
   lbr_status status = push(&now, (lbr_span){from, to});
   for (size_t i = 0; i < n && status == LBR_OK; i++) {
@@ -71,6 +72,38 @@ lbr_status lbr_coherent_spans(const double *hz, size_t n, double off,
     *spans = now;
   else
     lbr_spans_free(&now);
+  return status;
+}
+
+/* The pattern of one period, over and over within [from, to]. */
+static lbr_status repeat(const lbr_spans *one, double period, double from,
+                         double to, lbr_spans *spans) {
+  lbr_spans all = {NULL, 0, 0};
+  lbr_status status = LBR_OK;
+  double last = ceil(to / period);
+  for (double m = fmax(floor(from / period) - 1, 0); m <= last; m++)
+    for (size_t k = 0; k < one->count && status == LBR_OK; k++) {
+      lbr_span span = {fmax(one->item[k].from + (m - 1) * period, from),
+                       fmin(one->item[k].to + (m - 1) * period, to)};
+      if (span.from <= span.to) status = push(&all, span);
+    }
+  if (status == LBR_OK)
+    *spans = all;
+  else
+    lbr_spans_free(&all);
+  return status;
+}
+
+lbr_status lbr_coherent_spans(const double *hz, size_t n, double off,
+                              double period, double from, double to,
+                              lbr_spans *spans) {
+  if (!(period > 0) || to - from < 3 * period)
+    return search(hz, n, off, from, to, spans);
+  lbr_spans one = {NULL, 0, 0};
+  lbr_status status =
+      search(hz, n, off, period / 2, nextafter(period * 1.5, 0), &one);
+  if (status == LBR_OK) status = repeat(&one, period, from, to, spans);
+  lbr_spans_free(&one);
   return status;
 }
 
@@ -97,7 +130,7 @@ typedef struct job {
 
 static lbr_status keep(chunk *c, lbr_setting setting) {
   if (c->count == c->room) {
-    size_t room = c->room ? 2 * c->room : 256;
+    size_t room = c->room ? 4 * c->room : 1024;
     if (room > MOST_SETTINGS) return LBR_OVERFLOW;
     lbr_setting *item = realloc(c->item, room * sizeof *item);
     if (!item) return LBR_NO_MEMORY;
@@ -110,34 +143,26 @@ static lbr_status keep(chunk *c, lbr_setting setting) {
 
 #define CLONES __attribute__((target_clones("avx512f", "avx2", "default")))
 
-/* Where everything folds to at one rate, 0 .. rate/2. */
-static void fold(const double *hz, size_t n, double rate, double *at) {
-  double inverse = 1 / rate;
-  for (size_t i = 0; i < n; i++)
-    at[i] = fabs(hz[i] - rate * rint(hz[i] * inverse));
-}
+#define LANES 16 /* dividers whose folds are worked out together */
 
-/* Least distance of any of the n from x. */
-static double nearest(const double *at, size_t n, double x) {
-  double least = INFINITY;
-  for (size_t i = 0; i < n; i++) {
-    double d = fabs(at[i] - x);
-    least = d < least ? d : least;
+/* Least distance, Hz, of a folded interferer from any line, for LANES rates
+ * at once. */
+CLONES static void clearance(const lbr_pair_demand *d, const double *rate,
+                             double *least) {
+  double shown[LANES];
+  for (int k = 0; k < LANES; k++) least[k] = INFINITY;
+  for (size_t j = 0; j < d->n_away; j++) {
+    double hz = d->away[j];
+    for (int k = 0; k < LANES; k++)
+      shown[k] = fabs(hz - rate[k] * rint(hz / rate[k]));
+    for (size_t i = 0; i < d->n_lines; i++) {
+      double line = d->line[i];
+      for (int k = 0; k < LANES; k++) {
+        double off = fabs(shown[k] - line);
+        least[k] = off < least[k] ? off : least[k];
+      }
+    }
   }
-  return least;
-}
-
-/* For a run of dividers: least distance, Hz, of a folded interferer from any
- * line; `fold_at` has room for the interferers. */
-CLONES static double clearance(const lbr_pair_demand *d, double rate,
-                               double *fold_at) {
-  double least = INFINITY;
-  fold(d->away, d->n_away, rate, fold_at);
-  for (size_t i = 0; i < d->n_lines; i++) {
-    double near = nearest(fold_at, d->n_away, d->line[i]);
-    least = near < least ? near : least;
-  }
-  return least;
 }
 
 /* Marks the runs that hold a multiple of the divider. */
@@ -175,12 +200,19 @@ static lbr_status take(const job *j, chunk *c, uint32_t divider, size_t k,
 }
 
 #define MARKS 1024
+#define EIGHT sizeof(uint64_t)
+
+/* Whether none of eight marks is set. */
+static int none(const unsigned char *hit) {
+  uint64_t eight;
+  memcpy(&eight, hit, sizeof eight);
+  return eight == 0;
+}
 
 static lbr_status one_divider(const job *j, chunk *c, uint32_t divider,
-                              double *fold_at) {
-  unsigned char hit[MARKS];
-  double rate = j->grid->clock / divider, inverse = 1.0 / divider;
-  double clear = clearance(j->demand, rate, fold_at);
+                              double clear) {
+  unsigned char hit[MARKS + EIGHT] = {0};
+  double inverse = 1.0 / divider;
   double periods = j->demand->bins / clear * j->grid->clock;
   double most = (double)j->grid->samples_most * divider;
   size_t k = first_run(&j->run, fmax(periods, (double)divider));
@@ -189,7 +221,12 @@ static lbr_status one_divider(const job *j, chunk *c, uint32_t divider,
   for (; k < end; k += MARKS) {
     size_t count = end - k < MARKS ? end - k : MARKS;
     mark(j->run.before + k, j->run.last + k, count, inverse, hit);
+    memset(hit + count, 0, EIGHT);
     for (size_t i = 0; i < count; i++) {
+      if (i % EIGHT == 0 && none(hit + i)) {
+        i += EIGHT - 1;
+        continue;
+      }
       if (!hit[i]) continue;
       lbr_status status = take(j, c, divider, k + i, periods);
       if (status != LBR_OK) return status;
@@ -200,15 +237,20 @@ static lbr_status one_divider(const job *j, chunk *c, uint32_t divider,
 
 static lbr_status one_chunk(void *context, size_t task, unsigned worker) {
   job *j = context;
+  double rate[LANES], clear[LANES];
   (void)worker;
-  double *fold_at = lbr_alloc(j->demand->n_away, sizeof *fold_at);
-  if (!fold_at) return LBR_NO_MEMORY;
   uint64_t from = j->first + (uint64_t)task * CHUNK, to = from + CHUNK - 1;
   lbr_status status = LBR_OK;
   if (to > j->most) to = j->most;
-  for (uint64_t d = from; d <= to && status == LBR_OK; d++)
-    status = one_divider(j, &j->chunks[task], (uint32_t)d, fold_at);
-  free(fold_at);
+  for (uint64_t d = from; d <= to && status == LBR_OK; d++) {
+    size_t lane = (size_t)(d - from) % LANES;
+    if (lane == 0) {
+      for (int k = 0; k < LANES; k++)
+        rate[k] = j->grid->clock / (double)(d + (unsigned)k);
+      clearance(j->demand, rate, clear);
+    }
+    status = one_divider(j, &j->chunks[task], (uint32_t)d, clear[lane]);
+  }
   return status;
 }
 
@@ -269,7 +311,8 @@ lbr_status lbr_coherent_settings(const lbr_grid *grid,
   job j = {.grid = grid, .demand = demand, .first = grid->divider_least,
            .most = (uint32_t)most};
   lbr_status status = lbr_coherent_spans(
-      demand->line, demand->n_lines, demand->off, shortest, longest, &spans);
+      demand->line, demand->n_lines, demand->off, demand->period, shortest,
+      longest, &spans);
   if (status == LBR_OK) status = make_runs(&spans, grid->clock, &j.run);
   if (status == LBR_OK) status = run_job(&j, workers, out);
   lbr_spans_free(&spans);

@@ -32,10 +32,12 @@ LBR_CHECKED lbr_status lbr_coherent_period(const lbr_fraction *hz, size_t n,
                                            lbr_fraction *seconds);
 
 /* All durations in [from, to] at which every hz[i] * T is within `off` of a
- * whole number (0 < off < 0.5).  hz ascending and > 0.  LBR_OVERFLOW when there
- * are more than a few million. */
+ * whole number (0 < off < 0.5).  hz ascending and > 0.  `period`: a duration
+ * in which all of them make whole cycles, so that the pattern repeats; 0 when
+ * none is known.  LBR_OVERFLOW when there are more than a few million. */
 LBR_CHECKED lbr_status lbr_coherent_spans(const double *hz, size_t n,
-                                          double off, double from, double to,
+                                          double off, double period,
+                                          double from, double to,
                                           lbr_spans *spans);
 
 typedef struct lbr_grid { /* what a clocked digitizer can do */
@@ -49,6 +51,7 @@ typedef struct lbr_pair_demand {
   const double *line; /* Hz, n_lines, ascending */
   size_t n_lines;
   double off;         /* most distance of a line from its bin, bins */
+  double period;      /* lbr_coherent_period of the lines, s; 0: unknown */
   const double *away; /* interferers, Hz, n_away */
   size_t n_away;
   double bins;        /* their folds stand more than this off every line */
