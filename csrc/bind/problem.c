@@ -67,8 +67,8 @@ static void read_source(lua_State *L, int arg, size_t drivers, lbr_source *s) {
   s->least = lbr_field_number(L, arg, "least");
   s->most = lbr_field_number(L, arg, "most");
   if (!(s->hz > 0)) luaL_error(L, "hz: must be positive");
-  if (!(s->least > 0 && s->most >= s->least))
-    luaL_error(L, "least, most: an amplitude range above 0 is needed");
+  if (!(s->least >= 0 && s->most >= s->least))
+    luaL_error(L, "least, most: an amplitude range is needed");
   if (!(driver >= 1 && driver <= (double)drivers))
     luaL_error(L, "driver: no such driver");
   s->driver = (size_t)driver - 1;
@@ -107,6 +107,8 @@ static void read_lines(lua_State *L, int arg, lbr_problem_handle *h) {
   for (size_t i = 0; i < n; i++) {
     lua_rawgeti(L, -1, (lua_Integer)i + 1);
     luaL_checktype(L, -1, LUA_TTABLE);
+    if (!(h->sources[i].least > 0))
+      luaL_error(L, "least: a line needs an amplitude above 0");
     int at = lua_gettop(L);
     h->lines[i] = (lbr_line){
         at_least(L, at, "tolerance", 0, INFINITY),

@@ -10,7 +10,7 @@ local READINGS = { "bin", "tracked" }
 -- Windows that are tried unless the engineer names some: narrow to wide main
 -- lobe, each the best of its width for some spread of levels.
 local USUAL = {
-  "rectangular", "hann", "nuttall3b", "blackman_harris92", "nuttall4c", "hft70", "hft95",
+  "rectangular", "hann", "nuttall3b", "blackman_harris4", "nuttall4c", "hft70", "hft95",
   "hft116d", "hft144d", "hft196d", "hft248d",
 }
 
