@@ -18,7 +18,7 @@ static bool before(const lbr_node *a, const lbr_node *b) {
   uint64_t ta = rounded(a->t1), tb = rounded(b->t1);
   if (ta != tb) return ta < tb;
   if (a->n != b->n) return a->n < b->n;
-  if (a->mode != b->mode) return a->mode < b->mode;
+  if (a->field != b->field) return a->field < b->field;
   return a->rate < b->rate;
 }
 

@@ -11,7 +11,7 @@
 typedef struct lbr_node {
   double t1, t2; /* durations [t1, t2), s; a candidate has t1 = t2 */
   size_t n;      /* samples of a candidate; 0: a range */
-  uint32_t mode, rate;
+  uint32_t field, rate; /* field: a mode on a band of rates */
 } lbr_node;
 
 typedef struct lbr_heap {

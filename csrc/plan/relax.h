@@ -1,9 +1,9 @@
 /* Relaxation: lower bounds of a plan's error over a whole range of record
- * durations and whatever rate, so that the search may leave the range out.
+ * durations and a band of rates, so that the search may leave the range out.
  *
- * Only pairs (line, source) whose distance is small against every admissible
- * rate take part: for them folding changes nothing and the kernel is that of
- * an endless record, up to the factor that is taken off.
+ * Only pairs (line, source) whose distance is at most half of every rate in
+ * the band take part: for them folding changes nothing, and the kernel is that
+ * of an endless record times a share that depends on distance / rate alone.
  */
 #ifndef LBR_PLAN_RELAX_H
 #define LBR_PLAN_RELAX_H
@@ -21,24 +21,32 @@ typedef struct lbr_pair {
 
 typedef struct lbr_relax {
   const lbr_problem *problem;
+  double rate;         /* the lowest of the band, S/s */
   lbr_pair *pair;      /* sorted by line, then by weight, largest first */
   size_t n_pairs;
   double *allowed;     /* n_lines: error allowed at the least amplitude */
   double *noise;       /* n_lines: k^2 density / averages, least */
 } lbr_relax;
 
-LBR_CHECKED lbr_status lbr_relax_new(const lbr_problem *problem,
+LBR_CHECKED lbr_status lbr_relax_new(const lbr_problem *problem, double rate,
                                      lbr_relax *out);
 void lbr_relax_free(lbr_relax *relax);
 
+/* What a kernel of finite length keeps, at least, of the endless one at the
+ * pairs' distances; kept: n_pairs.  Leaves `finite` at another length. */
+LBR_CHECKED lbr_status lbr_relax_kept(const lbr_relax *relax,
+                                      lbr_kernel *endless, lbr_kernel *finite,
+                                      double *kept);
+
 /* The shortest duration that a reading with this kernel (endless record)
  * could possibly hold the demand in. */
-double lbr_relax_least(const lbr_relax *relax, lbr_kernel *kernel);
+double lbr_relax_least(const lbr_relax *relax, lbr_kernel *kernel,
+                       const double *kept);
 
 /* Whether some duration in [t1, t2] might do; false only when none can.
  * *work grows by the kernel evaluations made. */
 bool lbr_relax_possible(const lbr_relax *relax, const lbr_mode *mode,
-                        lbr_kernel *kernel, double t1, double t2,
-                        double *work);
+                        lbr_kernel *kernel, const double *kept, double t1,
+                        double t2, double *work);
 
 #endif

@@ -11,64 +11,114 @@
 #define FEW 64         /* so many candidates go onto the hardware at once */
 #define SURVEY 16      /* expansions of a mode before all rates are surveyed */
 #define EDGE 1e-12     /* relative: lengths on the edge of a range are in */
-#define BOUND_WORK 0.5 /* microseconds of a full bound, per line and source */
+#define ASK_WORK 0.3   /* microseconds of a kernel enclosure */
+#define LOOSE 1.005    /* lower bounds made of enclosures may be high by this */
 
 typedef struct mode_state {
   lbr_kernel *endless; /* kernel of an endless record */
   lbr_kernel *kernel;  /* kernel at the candidate's length */
   double moment;       /* lbr_second_moment */
-  double least;        /* shortest duration that could do */
   size_t fewest;       /* samples */
+  size_t stern;        /* the line that failed last, tried first */
+} mode_state;
+
+typedef struct band { /* rates within a factor of two */
+  lbr_relax relax;
+  size_t first, count; /* of the problem's rates */
+  double sum;          /* S/s, of all its rates together */
+  double longest;      /* duration of the longest record, s */
+} band;
+
+/* A mode on a band of rates. */
+typedef struct field {
+  const band *band;
+  mode_state *mode;
+  size_t mode_at;      /* index of the mode */
+  double *kept;        /* lbr_relax_kept */
+  double least;        /* shortest duration that could do */
   size_t expansions;
   uint32_t *active;    /* rates by ascending least duration, once surveyed */
   double *active_least;
   size_t n_active;
-  size_t stern;        /* the line that failed last, tried first */
-} mode_state;
+} field;
 
 typedef struct search {
   const lbr_problem *p;
-  lbr_relax relax;
   lbr_limits *limits;
   lbr_heap heap;
-  mode_state *mode;
-  double sum_rates; /* S/s, of all rates together */
-  double longest;   /* duration of the longest record any rate allows, s */
+  mode_state *mode;    /* p->n_modes */
+  band *bands;
+  size_t n_bands;
+  field *fields;       /* n_modes * n_bands */
   lbr_search_count *count;
 } search;
 
-static lbr_status open_mode(search *s, size_t m) {
+static lbr_status open_mode(const search *s, size_t m) {
   mode_state *state = &s->mode[m];
   const lbr_mode *mode = &s->p->modes[m];
   lbr_status status = lbr_kernel_new(&mode->window, 0, &state->endless);
   if (status == LBR_OK)
     status = lbr_kernel_new(&mode->window, 1024, &state->kernel);
   if (status == LBR_OK) status = lbr_second_moment(&mode->window, &state->moment);
-  if (status != LBR_OK) return status;
   size_t fewest = lbr_mode_least_samples(mode);
   state->fewest = fewest > s->p->least_samples ? fewest : s->p->least_samples;
-  state->least = lbr_relax_least(&s->relax, state->endless);
-  double fastest = s->p->rates->item[s->p->rates->count - 1].value;
-  state->least = fmax(state->least, (double)state->fewest / fastest);
-  if (state->least > s->longest) return LBR_OK;
-  return lbr_heap_push(&s->heap,
-                       (lbr_node){.t1 = state->least * (1 - EDGE),
-                                  .t2 = s->longest * (1 + EDGE),
-                                  .mode = (uint32_t)m});
+  return status;
 }
 
-static lbr_status open_search(search *s, const lbr_problem *p) {
-  lbr_status status = lbr_relax_new(p, &s->relax);
-  if (status == LBR_OK) status = lbr_limits_new(p, &s->limits);
+static lbr_status open_bands(search *s) {
+  const lbr_rates *rates = s->p->rates;
+  double span = rates->item[rates->count - 1].value / rates->item[0].value;
+  s->bands = lbr_alloc((size_t)log2(span) + 2, sizeof *s->bands);
+  if (!s->bands) return LBR_NO_MEMORY;
+  for (size_t r = 0; r < rates->count; s->n_bands++) {
+    band *b = &s->bands[s->n_bands];
+    double lowest = rates->item[r].value;
+    b->first = r;
+    for (; r < rates->count && rates->item[r].value < 2 * lowest; r++)
+      b->sum += rates->item[r].value;
+    b->count = r - b->first;
+    b->longest = fmin(s->p->most_duration,
+                      (double)s->p->most_samples / lowest);
+    lbr_status status = lbr_relax_new(s->p, lowest, &b->relax);
+    if (status != LBR_OK) return status;
+  }
+  return LBR_OK;
+}
+
+static lbr_status open_field(search *s, size_t m, size_t b) {
+  size_t at = m * s->n_bands + b;
+  field *f = &s->fields[at];
+  f->band = &s->bands[b];
+  f->mode = &s->mode[m];
+  f->mode_at = m;
+  size_t last = f->band->first + f->band->count - 1;
+  const lbr_relax *relax = &f->band->relax;
+  f->kept = lbr_alloc(relax->n_pairs, sizeof *f->kept);
+  if (!f->kept) return LBR_NO_MEMORY;
+  lbr_status status = lbr_relax_kept(relax, f->mode->endless, f->mode->kernel,
+                                     f->kept);
   if (status != LBR_OK) return status;
-  s->mode = lbr_alloc(p->n_modes, sizeof *s->mode);
-  if (!s->mode) return LBR_NO_MEMORY;
-  for (size_t r = 0; r < p->rates->count; r++)
-    s->sum_rates += p->rates->item[r].value;
-  s->longest = fmin(p->most_duration,
-                    (double)p->most_samples / p->rates->item[0].value);
-  for (size_t m = 0; m < p->n_modes && status == LBR_OK; m++)
+  f->least = fmax(lbr_relax_least(relax, f->mode->endless, f->kept),
+                  (double)f->mode->fewest / s->p->rates->item[last].value);
+  if (f->least > f->band->longest) return LBR_OK;
+  return lbr_heap_push(&s->heap,
+                       (lbr_node){.t1 = f->least * (1 - EDGE),
+                                  .t2 = f->band->longest * (1 + EDGE),
+                                  .field = (uint32_t)at});
+}
+
+static lbr_status open_search(search *s) {
+  lbr_status status = lbr_limits_new(s->p, &s->limits);
+  if (status == LBR_OK) status = open_bands(s);
+  if (status != LBR_OK) return status;
+  s->mode = lbr_alloc(s->p->n_modes, sizeof *s->mode);
+  s->fields = lbr_alloc(s->p->n_modes * s->n_bands, sizeof *s->fields);
+  if (!s->mode || !s->fields) return LBR_NO_MEMORY;
+  for (size_t m = 0; m < s->p->n_modes && status == LBR_OK; m++) {
     status = open_mode(s, m);
+    for (size_t b = 0; b < s->n_bands && status == LBR_OK; b++)
+      status = open_field(s, m, b);
+  }
   return status;
 }
 
@@ -76,22 +126,28 @@ static void close_search(search *s) {
   for (size_t m = 0; s->mode && m < s->p->n_modes; m++) {
     lbr_kernel_free(s->mode[m].endless);
     lbr_kernel_free(s->mode[m].kernel);
-    free(s->mode[m].active);
-    free(s->mode[m].active_least);
   }
+  for (size_t f = 0; s->fields && f < s->p->n_modes * s->n_bands; f++) {
+    free(s->fields[f].active);
+    free(s->fields[f].kept);
+    free(s->fields[f].active_least);
+  }
+  for (size_t b = 0; b < s->n_bands; b++) lbr_relax_free(&s->bands[b].relax);
   free(s->mode);
+  free(s->fields);
+  free(s->bands);
   lbr_heap_free(&s->heap);
   lbr_limits_free(s->limits);
-  lbr_relax_free(&s->relax);
 }
 
 static lbr_status make_case(search *s, const lbr_node *node, lbr_case *c) {
-  mode_state *m = &s->mode[node->mode];
+  const field *f = &s->fields[node->field];
+  const mode_state *m = f->mode;
   *c = (lbr_case){.scene = s->p->scene,
                   .front = s->p->front,
                   .path = lbr_limits_path(s->limits, node->rate),
                   .kernel = m->kernel,
-                  .reading = s->p->modes[node->mode].reading,
+                  .reading = s->p->modes[f->mode_at].reading,
                   .n = node->n,
                   .averages = s->p->averages,
                   .coverage = s->p->coverage,
@@ -106,31 +162,43 @@ static size_t line_at(const mode_state *m, size_t k) {
 }
 
 static lbr_status glance(search *s, const lbr_node *node, bool *fits) {
-  mode_state *m = &s->mode[node->mode];
+  mode_state *m = s->fields[node->field].mode;
   lbr_case c;
   lbr_status status = make_case(s, node, &c);
   *fits = status == LBR_OK;
   for (size_t k = 0; *fits && k < c.scene->n_lines; k++) {
     size_t line = line_at(m, k);
     s->count->work += 0.05 * (double)c.scene->n_sources + 0.2;
-    *fits = lbr_bound_glance(&c, line) <= s->p->share;
+    *fits = lbr_bound_glance(&c, line, s->p->share) <= s->p->share;
     if (!*fits) m->stern = line;
   }
   return status;
 }
 
-static lbr_status holds(search *s, const lbr_node *node, bool *fits) {
-  mode_state *m = &s->mode[node->mode];
-  lbr_case c;
+/* The tighter lower bound first: most of what a glance lets through fails
+ * there, long before its full bound is known. */
+static bool line_holds(search *s, const lbr_case *c, size_t line) {
+  size_t asked = 0;
+  double share = s->p->share;
+  bool reached =
+      lbr_bound_reached(c, line, share * LOOSE, &asked) <= share * LOOSE;
+  s->count->work += ASK_WORK * (double)asked;
+  if (!reached) return false;
   lbr_bound bound;
+  lbr_bound_line(c, line, share, &bound);
+  s->count->bounds++;
+  s->count->work += ASK_WORK * (double)bound.asked;
+  return bound.ratio <= share;
+}
+
+static lbr_status holds(search *s, const lbr_node *node, bool *fits) {
+  mode_state *m = s->fields[node->field].mode;
+  lbr_case c;
   lbr_status status = make_case(s, node, &c);
   *fits = status == LBR_OK;
-  s->count->bounds++;
   for (size_t k = 0; *fits && k < c.scene->n_lines; k++) {
     size_t line = line_at(m, k);
-    s->count->work += BOUND_WORK * (double)c.scene->n_sources;
-    lbr_bound_line(&c, line, s->p->share, &bound);
-    *fits = bound.ratio <= s->p->share;
+    *fits = line_holds(s, &c, line);
     if (!*fits) m->stern = line;
   }
   return status;
@@ -143,10 +211,10 @@ static lbr_status expand_rate(search *s, const lbr_node *range, uint32_t r) {
   double n = ceil(range->t1 * rate / block * (1 - EDGE)) * block;
   double most = fmin((double)p->most_samples, p->most_duration * rate *
                                                   (1 + EDGE));
-  n = fmax(n, ceil((double)s->mode[range->mode].fewest / block) * block);
+  n = fmax(n, ceil((double)s->fields[range->field].mode->fewest / block) * block);
   for (; n <= most && n < range->t2 * rate; n += block) {
     double t = n / rate;
-    lbr_node leaf = {t, t, (size_t)n, range->mode, r};
+    lbr_node leaf = {t, t, (size_t)n, range->field, r};
     bool fits;
     if (t < range->t1) continue;
     s->count->candidates++;
@@ -158,12 +226,11 @@ static lbr_status expand_rate(search *s, const lbr_node *range, uint32_t r) {
   return LBR_OK;
 }
 
-static lbr_status least_of(search *s, size_t rate, size_t mode,
+static lbr_status least_of(search *s, const field *f, size_t rate,
                            double *least) {
-  lbr_status status = lbr_limits_least(s->limits, rate, mode,
-                                       s->mode[mode].endless, least);
   s->count->work += 0.01;
-  return status;
+  return lbr_limits_least(s->limits, rate, f->mode_at, f->mode->endless,
+                          least);
 }
 
 static int by_least(const void *left, const void *right) {
@@ -172,78 +239,80 @@ static int by_least(const void *left, const void *right) {
   return a[1] < b[1] ? -1 : a[1] > b[1];
 }
 
-/* Asks every rate for its shortest duration and keeps those that can do. */
-static lbr_status survey(search *s, size_t mode) {
-  mode_state *m = &s->mode[mode];
-  size_t rates = s->p->rates->count, kept = 0;
+/* Asks every rate of the band for its shortest duration and keeps those that
+ * can do, shortest first. */
+static lbr_status survey(search *s, field *f) {
+  size_t kept = 0, rates = f->band->count;
   double(*row)[2] = lbr_alloc(rates, sizeof *row);
-  m->active = lbr_alloc(rates, sizeof *m->active);
-  m->active_least = lbr_alloc(rates, sizeof *m->active_least);
-  lbr_status status = row && m->active && m->active_least ? LBR_OK
+  f->active = lbr_alloc(rates, sizeof *f->active);
+  f->active_least = lbr_alloc(rates, sizeof *f->active_least);
+  lbr_status status = row && f->active && f->active_least ? LBR_OK
                                                           : LBR_NO_MEMORY;
-  for (size_t r = 0; r < rates && status == LBR_OK; r++) {
+  for (size_t r = f->band->first; r < f->band->first + rates; r++) {
     double least = 0;
-    status = least_of(s, r, mode, &least);
+    if (status == LBR_OK) status = least_of(s, f, r, &least);
+    if (status != LBR_OK) break;
     s->count->work += 5;
-    if (least > s->longest) continue;
+    if (least > f->band->longest) continue;
     row[kept][0] = least;
     row[kept++][1] = (double)r;
   }
   if (status == LBR_OK && kept > 1) qsort(row, kept, sizeof *row, by_least);
   for (size_t k = 0; k < kept && status == LBR_OK; k++) {
-    m->active_least[k] = row[k][0];
-    m->active[k] = (uint32_t)row[k][1];
+    f->active_least[k] = row[k][0];
+    f->active[k] = (uint32_t)row[k][1];
   }
-  m->n_active = kept;
-  m->least = kept && row ? fmax(m->least, row[0][0]) : INFINITY;
+  f->n_active = kept;
+  f->least = kept && row ? fmax(f->least, row[0][0]) : INFINITY;
   free(row);
   return status;
 }
 
+/* Whether any length of the rate lies in the range. */
+static bool meets(const search *s, const lbr_node *range, double rate) {
+  double block = (double)s->p->block;
+  double n = ceil(range->t1 * rate / block * (1 - EDGE)) * block;
+  return n < range->t2 * rate;
+}
+
 static lbr_status expand(search *s, const lbr_node *range) {
-  mode_state *m = &s->mode[range->mode];
+  field *f = &s->fields[range->field];
   lbr_status status = LBR_OK;
-  if (m->expansions++ == SURVEY) status = survey(s, range->mode);
-  if (status != LBR_OK) return status;
-  if (m->active) {
-    for (size_t k = 0; k < m->n_active && status == LBR_OK; k++) {
-      if (m->active_least[k] >= range->t2) break;
-      status = expand_rate(s, range, m->active[k]);
-    }
-    return status;
+  if (f->expansions++ == SURVEY) status = survey(s, f);
+  for (size_t k = 0; f->active && k < f->n_active && status == LBR_OK; k++) {
+    if (f->active_least[k] >= range->t2) break;
+    status = expand_rate(s, range, f->active[k]);
   }
-  for (uint32_t r = 0; r < s->p->rates->count && status == LBR_OK; r++) {
-    double rate = s->p->rates->item[r].value, least, block;
-    block = (double)s->p->block;
-    if (ceil(range->t1 * rate / block * (1 - EDGE)) * block >=
-        range->t2 * rate)
-      continue;
-    status = least_of(s, r, range->mode, &least);
+  if (f->active || status != LBR_OK) return status;
+  size_t end = f->band->first + f->band->count;
+  for (size_t r = f->band->first; r < end && status == LBR_OK; r++) {
+    double least = 0;
+    if (!meets(s, range, s->p->rates->item[r].value)) continue;
+    status = least_of(s, f, r, &least);
     if (status == LBR_OK && least < range->t2)
-      status = expand_rate(s, range, r);
+      status = expand_rate(s, range, (uint32_t)r);
   }
   return status;
 }
 
-static double candidates_in(const search *s, const lbr_node *range) {
-  return s->sum_rates * (range->t2 - range->t1) / (double)s->p->block;
-}
-
 /* A range: leave it out, put it onto the hardware, or cut it in two. */
 static lbr_status visit(search *s, lbr_node range) {
-  mode_state *m = &s->mode[range.mode];
-  double few = fmax(FEW, (double)s->p->rates->count / 4);
+  field *f = &s->fields[range.field];
+  double few = fmax(FEW, (double)f->band->count / 4);
   s->count->ranges++;
   s->count->work += 0.2;
-  if (range.t2 <= m->least) return LBR_OK;
-  if (range.t1 < m->least * (1 - EDGE)) {
-    range.t1 = m->least * (1 - EDGE);
+  if (range.t2 <= f->least) return LBR_OK;
+  if (range.t1 < f->least * (1 - EDGE)) {
+    range.t1 = f->least * (1 - EDGE);
     return lbr_heap_push(&s->heap, range);
   }
-  if (!lbr_relax_possible(&s->relax, &s->p->modes[range.mode], m->endless,
-                          range.t1, range.t2, &s->count->work))
+  if (!lbr_relax_possible(&f->band->relax, &s->p->modes[f->mode_at],
+                          f->mode->endless, f->kept, range.t1, range.t2,
+                          &s->count->work))
     return LBR_OK;
-  if (candidates_in(s, &range) <= few || range.t2 - range.t1 < 1e-12 * range.t1)
+  double width = range.t2 - range.t1;
+  if (f->band->sum * width / (double)s->p->block <= few ||
+      width < 1e-12 * range.t1)
     return expand(s, &range);
   double middle = range.t2 > 2 * range.t1 ? sqrt(range.t1 * range.t2)
                                           : (range.t1 + range.t2) / 2;
@@ -264,7 +333,7 @@ static lbr_status run(search *s, lbr_choice *choice) {
       status = holds(s, &node, &fits);
     if (status != LBR_OK) return status;
     if (fits) {
-      *choice = (lbr_choice){node.rate, node.mode, node.n};
+      *choice = (lbr_choice){node.rate, s->fields[node.field].mode_at, node.n};
       return LBR_OK;
     }
     if (s->count->work > s->p->most_work) return LBR_STOPPED;
@@ -277,7 +346,7 @@ lbr_status lbr_search_run(const lbr_problem *p, lbr_choice *choice,
   *count = (lbr_search_count){0, 0, 0, 0};
   if (p->rates->count == 0 || p->scene->n_lines == 0) return LBR_INFEASIBLE;
   search s = {.p = p, .count = count};
-  lbr_status status = open_search(&s, p);
+  lbr_status status = open_search(&s);
   if (status == LBR_OK) status = run(&s, choice);
   close_search(&s);
   return status;

@@ -7,7 +7,7 @@
 #include "reading/parts.h"
 
 #define PI 3.14159265358979323846
-#define SLACK 0.01  /* how tight joint suprema are made, relative */
+#define SLACK 2e-3  /* how tight joint suprema are made, of the tolerance */
 #define ROUNDS 3    /* times the steering radius is narrowed */
 #define LOBE_END 16 /* no main lobe reaches further, bins */
 
@@ -82,7 +82,8 @@ static double last_above(lbr_kernel *kernel, double level) {
  * quadrature or at the flanks. */
 static lbr_smear smear_of(const lbr_case *c, size_t line, double duration,
                           double reach) {
-  lbr_leak l = {c, line, duration, 0, 0};
+  size_t asked = 0;
+  lbr_leak l = {c, line, duration, 0, 0, &asked};
   double amplitude[LBR_SIDEBANDS], low, high, total = 0;
   size_t count = lbr_leak_sidebands(&l, line, amplitude);
   lbr_smear smear = {0, 0, 0};
@@ -235,10 +236,12 @@ static void bin_frequency(const lbr_case *c, size_t line, lbr_bound *b) {
 }
 
 static void settle(const lbr_case *c, const lbr_leak *l, const lbr_parts *p,
-                   double leak, lbr_bound *b) {
+                   double leak, bool search, lbr_bound *b) {
   b->own = own_product(p);
   b->others = leak * lbr_parts_scale(c) + p->offset;
-  if (c->reading == LBR_READING_BIN)
+  if (search && isinf(c->scene->lines[l->line].tolerance_hz))
+    b->hz = INFINITY; /* nobody asks while plans are searched */
+  else if (c->reading == LBR_READING_BIN)
     bin_frequency(c, l->line, b);
   else
     track_frequency(c, l, p, leak, b);
@@ -257,15 +260,15 @@ static double steer_radius(const lbr_case *c, size_t line, double leak_anywhere,
 }
 
 /* The sum of leaks that the amplitude bound could at most afford. */
-static double affordable(const lbr_case *c, size_t line, const lbr_parts *p,
-                         const lbr_bound *b, double enough) {
+static double affordable(const lbr_case *c, size_t line, double own_share,
+                         double offset, double sigma_one, double enough) {
   const lbr_source *s = own(c, line);
-  double random = c->coverage / sqrt((double)c->averages) * b->sigma;
+  double random = c->coverage / sqrt((double)c->averages) * sigma_one;
   double most = INFINITY;
   for (int k = 0; k < 2; k++) {
     double a = k ? s->most : s->least;
     double room = enough * tolerance_at(&c->scene->lines[line], a) -
-                  own_product(p) * a - p->offset - random;
+                  own_share * a - offset - random;
     most = fmin(most, room / lbr_parts_scale(c));
   }
   return most;
@@ -277,12 +280,13 @@ void lbr_bound_line(const lbr_case *c, size_t line, double enough,
   lbr_bound_search(c, line, &low, &high);
   bool tracked = c->reading == LBR_READING_TRACKED;
   double widest = tracked ? (high - low) * t : 0;
-  lbr_leak l = {c, line, t, bin_hz(c, line), 0};
+  double ways = tracked ? 2 * high * c->front->timebase * t : 0;
+  lbr_leak l = {c, line, t, bin_hz(c, line), ways, &b->asked};
   *b = (lbr_bound){.sigma = sigma(c, line)};
   double anywhere = lbr_leak_crude(&l), leak = anywhere;
   lbr_parts p = lbr_bound_parts(c, line, widest);
   b->steer = widest;
-  settle(c, &l, &p, leak, b);
+  settle(c, &l, &p, leak, enough > 0, b);
   if (b->ratio <= enough) return;
   for (int round = 0; round < ROUNDS; round++) {
     if (tracked) {
@@ -291,30 +295,49 @@ void lbr_bound_line(const lbr_case *c, size_t line, double enough,
       if (round > 0 && l.steer > 0.97 * b->steer) return;
       p = lbr_bound_parts(c, line, l.steer);
     }
-    double room = enough > 0 ? affordable(c, line, &p, b, enough) : 0;
+    double room = 0;
+    if (enough > 0)
+      room = affordable(c, line, own_product(&p), p.offset, b->sigma, enough);
+    if (room < 0) return;
     double joint = lbr_leak_joint(&l, room, enough > 0 ? room : INFINITY,
-                                  SLACK);
+                                  SLACK * b->tolerance);
     leak = fmin(leak, joint);
     b->steer = l.steer;
-    settle(c, &l, &p, leak, b);
+    settle(c, &l, &p, leak, enough > 0, b);
     if (!tracked || b->ratio <= enough) return;
   }
 }
 
-double lbr_bound_glance(const lbr_case *c, size_t line) {
-  const lbr_source *s = own(c, line);
-  lbr_leak l = {c, line, lbr_duration(c), bin_hz(c, line), 0};
-  lbr_bound b = {.sigma = sigma(c, line)};
-  double fixed = (1 + c->path->droop[line]) * (1 + c->front->accuracy) - 1;
+/* What no choice of phases and deviations can take away, leaks apart. */
+static double least_own(const lbr_case *c, size_t line, double read_hz) {
+  double own = (1 + c->path->droop[line]) * (1 + c->front->accuracy) - 1;
   if (c->reading == LBR_READING_BIN) {
-    double off = (s->hz - l.read_hz) * l.duration;
-    fixed += 1 - fmin(lbr_kernel_gain(c->kernel, off), 1);
+    double off = (c->scene->sources[line].hz - read_hz) * lbr_duration(c);
+    own += 1 - fmin(lbr_kernel_gain(c->kernel, off), 1);
   }
-  b.own = fixed;
-  double most = 2 * tolerance_at(&c->scene->lines[line], s->most);
-  b.others = lbr_leak_nominal(&l, most);
+  return own;
+}
+
+static double least_ratio(const lbr_case *c, size_t line, double enough,
+                          double (*sum)(const lbr_leak *, double),
+                          size_t *asked) {
+  lbr_leak l = {c, line, lbr_duration(c), bin_hz(c, line), 0, asked};
+  lbr_bound b = {.sigma = sigma(c, line)};
+  b.own = least_own(c, line, l.read_hz);
+  double room = affordable(c, line, b.own, 0, b.sigma, enough);
+  if (room >= 0) b.others = sum(&l, room * (1 + 1e-9));
   judge(c, line, &b);
   return b.ratio;
+}
+
+double lbr_bound_glance(const lbr_case *c, size_t line, double enough) {
+  size_t asked = 0;
+  return least_ratio(c, line, enough, lbr_leak_nominal, &asked);
+}
+
+double lbr_bound_reached(const lbr_case *c, size_t line, double enough,
+                         size_t *asked) {
+  return least_ratio(c, line, enough, lbr_leak_reached, asked);
 }
 
 static double square(double x) { return x * x; }

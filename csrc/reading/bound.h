@@ -53,13 +53,19 @@ typedef struct lbr_bound {
   double ratio;     /* error / tolerance, or frequency error / tolerance_hz,
                        whichever is larger */
   double ratio_hz;  /* the frequency part alone; 0: no such tolerance */
+  size_t asked;     /* kernel enclosures it took */
   double steer;     /* tracked: most distance from the line to where it is
                        read, bins */
 } lbr_bound;
 
 /* A lower bound of lbr_bound.ratio, in well under a microsecond a source:
- * everything at its nominal place. */
-double lbr_bound_glance(const lbr_case *c, size_t line);
+ * everything at its nominal place.  Stops as soon as it exceeds `enough`. */
+double lbr_bound_glance(const lbr_case *c, size_t line, double enough);
+
+/* A tighter lower bound, at the price of a few hundred kernel enclosures: the
+ * sum of all leaks at deviations that can be met.  *asked counts them. */
+double lbr_bound_reached(const lbr_case *c, size_t line, double enough,
+                         size_t *asked);
 
 /* The bound of a line.  Work stops as soon as ratio is known to be at most
  * `enough` or known to exceed it (then ratio > enough, not refined further);

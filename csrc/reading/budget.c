@@ -43,8 +43,9 @@ size_t lbr_bound_budget(const lbr_case *c, size_t line,
     terms[count++] = own[i];
     sum += own[i].value;
   }
+  size_t asked = 0;
   lbr_leak l = {c, line, t, rint(c->scene->sources[line].hz * t) / t,
-                bound->steer};
+                bound->steer, &asked};
   for (size_t j = 0; j < c->scene->n_sources; j++) {
     if (j == line) continue;
     double value = lbr_leak_of(&l, j);

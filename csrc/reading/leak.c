@@ -3,7 +3,9 @@
 
 #include <math.h>
 
-#define PIECES 48          /* most pieces a driver's interval is cut into */
+#define PIECES 12          /* most pieces a driver's interval is cut into */
+#define GAIN 0.995         /* a cut that lowers the bound by less is the last */
+#define PROBES 7           /* deviations tried for a sum that is reached */
 #define SIDEBAND_END 1e-12 /* sidebands below this are left to the sum */
 
 typedef struct span {
@@ -67,6 +69,7 @@ size_t lbr_leak_sidebands(const lbr_leak *l, size_t j,
 
 static double most(const lbr_leak *l, span x) {
   double low, high;
+  ++*l->asked;
   lbr_kernel_range(l->c->kernel, x.low, x.high, &low, &high);
   return high;
 }
@@ -165,11 +168,15 @@ static piece refine(const sweep *s, double low, double high) {
   piece pieces[PIECES];
   size_t count = 1, at;
   pieces[0] = judge(s, -spread, spread);
-  double lower = pieces[0].lower;
+  double lower = pieces[0].lower, before = INFINITY;
   for (;;) {
     double upper = widest(pieces, count, &at);
     bool settled = upper <= low || lower > high ||
-                   upper <= lower * (1 + s->slack) + 1e-300;
+                   upper <= lower + s->slack;
+    if (count % 4 == 0) {
+      settled = settled || upper > GAIN * before;
+      before = upper;
+    }
     if (settled || spread <= 0 || count == PIECES)
       return (piece){pieces[at].a, pieces[at].b, upper, lower};
     piece cut = pieces[at];
@@ -226,6 +233,28 @@ double lbr_leak_nominal(const lbr_leak *l, double high) {
            (lbr_kernel_gain(l->c->kernel, (hz - own) * l->duration) +
             lbr_kernel_gain(l->c->kernel, (hz + own) * l->duration));
   }
+  return sum;
+}
+
+/* The most that one driver's sources reach together, the line nominal. */
+static double group_reached(const lbr_leak *l, size_t driver) {
+  double spread = spread_of(l, driver), most_sum = 0;
+  if (driver == source(l, l->line)->driver)
+    return group(l, driver, 0, 0, 0, 0);
+  if (!more_than_one(l, driver))
+    return group(l, driver, 0, 0, -spread, spread);
+  int probes = spread > 0 ? PROBES : 1;
+  for (int k = 0; k < probes; k++) {
+    double d = probes > 1 ? spread * (2.0 * k / (probes - 1) - 1) : 0;
+    most_sum = fmax(most_sum, group(l, driver, 0, 0, d, d));
+  }
+  return most_sum;
+}
+
+double lbr_leak_reached(const lbr_leak *l, double high) {
+  double sum = 0;
+  for (size_t d = 0; d < l->c->scene->n_drivers && sum <= high; d++)
+    sum += group_reached(l, d);
   return sum;
 }
 

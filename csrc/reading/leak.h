@@ -18,6 +18,7 @@ typedef struct lbr_leak {
   double read_hz;  /* bin: where the line is read */
   double steer;    /* tracked: most distance between the line and the place
                       where it is read, bins */
+  size_t *asked;   /* kernel enclosures asked for, counted up */
 } lbr_leak;
 
 /* Sideband amplitudes |J_k(beta)|, k = 0 .. count - 1, of a source that
@@ -38,13 +39,18 @@ double lbr_leak_of(const lbr_leak *leak, size_t j);
 double lbr_leak_crude(const lbr_leak *leak);
 
 /* Supremum of the sum, drivers moved jointly; refined until it is within
- * `slack` (relative), or known to be at most `low`, or known to exceed
- * `high`.  Always an upper bound of the true supremum. */
+ * `slack` (unit), or known to be at most `low`, or known to exceed `high`, or
+ * cutting gains nothing more.  Always an upper bound of the true supremum. */
 double lbr_leak_joint(const lbr_leak *leak, double low, double high,
                       double slack);
 
 /* The sum with everything at its nominal place; stops above `high`. */
 double lbr_leak_nominal(const lbr_leak *leak, double high);
+
+/* A sum that can be reached, up to what enclosures are looser: the line at
+ * its nominal place, each driver where its sources together leak most among
+ * a few deviations.  Stops above `high`. */
+double lbr_leak_reached(const lbr_leak *leak, double high);
 
 /* Upper bound of |dL/dx| (per bin) of the sum at the line, unit. */
 double lbr_leak_slope(const lbr_leak *leak);

@@ -9,6 +9,7 @@ local file = require "libration.plan.file"
 local problem = require "libration.plan.problem"
 local refusal = require "libration.plan.refusal"
 local text = require "libration.report.text"
+local windows = require "libration.window"
 
 local M = {}
 
@@ -132,7 +133,7 @@ end
 -- local plan = lb.plan(demand, lb.digitizer { rates = { "1 kHz" } })
 -- assert(plan.worst <= 1 and plan.rate:number() == 1000)
 function M.plan(demand, digitizer, options)
-  local read = choices.read(options, core.window.names())
+  local read = choices.read(options, windows.windows())
   local posed = problem.new(demand, digitizer, read)
   local blocked = refusal.blocked(demand, digitizer, posed, read)
   if blocked then
@@ -203,7 +204,7 @@ function M.plans(demand, digitizer, options)
   if not best then
     return nil, refused, code
   end
-  local read = choices.read(options, core.window.names())
+  local read = choices.read(options, windows.windows())
   local list = { best }
   for _, slower in ipairs(SLOWER) do
     local narrowed = copy(read)
@@ -224,7 +225,7 @@ end
 -- The problem whose only rate, length, window and reading are a plan's own.
 local function posed_again(demand, digitizer, stored)
   local read = choices.read({ windows = { { stored.window, stored.parameter } },
-    readings = stored.reading, undersample = true }, core.window.names())
+    readings = stored.reading, undersample = true }, windows.windows())
   return problem.new(demand, digitizer, read)
 end
 
