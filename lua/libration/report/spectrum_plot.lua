@@ -1,14 +1,15 @@
 --- The predicted spectrum: what a record by the plan will show at most.
 -- Every line is a bar over its range of amplitudes; below it stand what it may
 -- be wrong by (its bound) and what it is allowed to be wrong by. Interferers are
--- where they show, as large as the filter leaves them; the shaded floor is what
--- noise alone may read.
+-- where they show, as large as the filter leaves them; a curve shows how the
+-- window spreads all of it; the shaded floor is what noise alone may read.
 
 local axes = require "libration.report.axis"
 local canvas = require "libration.report.canvas"
 local gnuplot = require "libration.report.gnuplot"
 local numbers = require "libration.report.numbers"
 local sources = require "libration.report.sources"
+local window = require "libration.window"
 
 local M = {}
 
@@ -68,6 +69,32 @@ local function amplitude_axis(least, most)
   return 10 ^ math.floor(math.log(least, 10) - 0.3), 10 ^ math.ceil(math.log(most, 10) + 0.15)
 end
 
+local columns = 480 -- of the skirts, over the width of the plot
+
+-- Most that a source shows between two frequencies, through the window.
+local function skirt(mark, shape, from, to, duration_s)
+  local near = math.max(from - mark.hz, mark.hz - to, 0)
+  local far = math.max(math.abs(from - mark.hz), math.abs(to - mark.hz))
+  local _, high = shape:range(math.max(near - mark.half, 0) * duration_s,
+    (far + mark.half) * duration_s)
+  return mark.most * high
+end
+
+-- What all sources together show at most, over the whole plot.
+local function skirts(view)
+  local plan, rows = view.plan, {}
+  local shape = window.window(plan.window.name, plan.window.parameter)
+  for i = 1, columns do
+    local from, to = view.axis.at((i - 1) / columns), view.axis.at(i / columns)
+    local sum = 0
+    for _, mark in ipairs(view.list) do
+      sum = sum + (mark.most and skirt(mark, shape, from, to, plan.duration_s) or 0)
+    end
+    rows[i] = { (from + to) / 2 / view.scale, math.max(sum, view.least) }
+  end
+  return rows
+end
+
 local function rows_of(list, kind, scale, fields, least)
   local rows = {}
   for _, mark in ipairs(list) do
@@ -111,7 +138,7 @@ local function key(out, left_out)
     "bar with disc: line, least to most amplitude    open square: its allowed error"
       .. "    diamond: the most it may be wrong by",
     "open triangle: interferer where it shows, after the filter"
-      .. "    shaded: what noise alone may read"
+      .. "    grey curve: all of it through the window    shaded: what noise alone may read"
       .. (left_out > 0 and ("    (%d names left out)"):format(left_out) or ""),
   }
   for i, note in ipairs(notes) do
@@ -124,6 +151,7 @@ local function data(out, view)
   local function block(name, kind, ...)
     out[#out + 1] = gnuplot.block(name, rows_of(view.list, kind, view.scale, { ... }, view.least))
   end
+  out[#out + 1] = gnuplot.block("skirts", skirts(view))
   block("bars", "line", "least", "most")
   block("errors", "line", "error")
   block("allowed", "line", "tolerance")
@@ -134,6 +162,7 @@ end
 local function draw(out)
   local c = canvas.colour
   local pieces = {
+    ("$skirts with lines lw 1.2 lc rgb %q"):format(c.floor),
     ("$stems using 1:2:(0):($3-$2) with vectors nohead lw 1 dt 2 lc rgb %q"):format(c.interferer),
     ("$stems using 1:3 with points pt 8 ps 1.3 lw 1.8 lc rgb %q"):format(c.interferer),
     ("$slack using 1:2:(0):($3-$2) with vectors nohead lw 1 lc rgb %q"):format(c.floor),
@@ -171,6 +200,7 @@ end
 -- local a = { name = "a", hz = lb.fraction.new(70), least = 1, most = 2 }
 -- local commands = require("libration.report.spectrum_plot").commands { worst = 0.5,
 --   rate = lb.fraction.new(1000), samples = 1000, duration_s = 1, digitizer = {},
+--   window = { name = "hann" },
 --   demand = { unit = "V", lines = { a } },
 --   lines = { { name = "a", error = 0.1, tolerance = 0.2 } } }
 -- assert(#commands > 10)
