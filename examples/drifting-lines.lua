@@ -25,7 +25,7 @@ local function demand(drift)
   }
 end
 
-for _, drift in ipairs { "0.05 %", "0.5 %", "1 %" } do
+for _, drift in ipairs { "0.05 %", "0.5 %", "1 %", "2 %" } do
   local plan, refusal = lb.plan(demand(drift), digitizer, { within = "30 s" })
   if plan then
     print(("drift %-6s -> %.3f s, window %s, reading %s, worst error %.0f %% of the tolerance")
