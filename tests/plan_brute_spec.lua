@@ -35,8 +35,8 @@ local function random_problem(i)
   for k = 1, lines + whole(0, 3) do
     sources[k] = source(drifting, fastest * 0.02, fastest * (k <= lines and 0.3 or 0.8))
   end
-  return { clock = clock, dividers = { first, first + whole(4, 14) }, block = whole(1, 8),
-    samples = { 16, whole(150, 500) }, sources = sources, lines = lines, noise = i % 3 == 0 and
+  return { clock = clock, dividers = { first, first + whole(3, 8) }, block = whole(1, 8),
+    samples = { 16, whole(80, 240) }, sources = sources, lines = lines, noise = i % 3 == 0 and
     10 ^ random(-4, -2) or 0, order = i % 4 == 0 and 8 or 0, corner = 0.45, windows = WINDOWS,
     readings = { "tracked", "bin" } }
 end

@@ -96,7 +96,13 @@ def ratio(problem, divider, n, window, reading):
             else:
                 own = np.maximum(own, image)
             most = np.maximum(most, others)
-        sigma = problem["noise"] * np.sqrt(noise_bandwidth(window) / t) / nominal
+        folded = amplify(line["hz"]) ** 2
+        if problem["order"]:
+            folded += sum(
+                amplify(k * rate + side * line["hz"]) ** 2
+                for k in range(1, 9) for side in (-1, 1)
+            )
+        sigma = problem["noise"] * np.sqrt(folded * noise_bandwidth(window) / t) / nominal
         error = (own + droop) * line["least"] + most + 3 * sigma
         worst = np.maximum(worst, error / (line["tolerance"] * line["least"]))
     return worst
