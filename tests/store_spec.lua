@@ -322,3 +322,34 @@ describe("rails", function()
     assert.same({ high, longest, 0 }, { r.high, r.high_run, r.low })
   end)
 end)
+
+describe("a feed", function()
+
+  it("gives blocks in memory as values and as stored, in any range", function()
+    local a, b = core.samples.from { 1.5, -2.25, 3 }, core.samples.from { 4, 5, 6 }
+    local feed = core.store.feed({ a, b }, { 10, 1 })
+    assert.equal(-22.5, feed:read(2, 1, { 1 })[1][1])
+    assert.equal(-2.25, feed:codes(2, 1, { 1 })[1][1])
+    assert.same({ 6, 3 }, { feed:codes(3, 1, { 2, 1 })[1][1], feed:codes(3, 1, { 2, 1 })[2][1] })
+    assert.has_error(function() feed:read(3, 2) end)
+    assert.has_error(function() feed:read(1, 1, { 3 }) end)
+    assert.has_error(function() core.store.feed { a, core.samples.from { 1 } } end)
+  end)
+
+  it("over a file gives what lies in memory, for any size of block", function()
+    local path = os.tmpname()
+    local list = {}
+    for i = 1, 5003 do list[i] = i * 7919 % 65536 - 32768 end
+    local x = core.samples.from(list)
+    local spec = { rate = 51200, bits = 24, integer = true, scale = 1 }
+    assert(core.store.write(path, spec, { x, x * -1 }))
+    local feed <close> = core.store.open(path):feed()
+    os.remove(path)
+    for _, size in ipairs { 1, 7, 1000, 5003 } do
+      for first = 1, 5003 - size + 1, math.max(size, 997) do
+        local got = feed:read(first, size, { 2 })[1]
+        assert.equal(x:slice(first, first + size - 1) * -1, got)
+      end
+    end
+  end)
+end)

@@ -4,6 +4,7 @@
 #include <math.h>
 #include <string.h>
 
+#include "bind/feed.h"
 #include "bind/samples.h"
 #include "samples/raw.h"
 
@@ -26,6 +27,12 @@ static raw_view *push_view(lua_State *L) {
 
 static const raw_view *check_raw(lua_State *L) {
   return luaL_checkudata(L, 1, LBR_RAW_CLASS);
+}
+
+int lbr_test_raw(lua_State *L, int arg, lbr_raw_run *run) {
+  const raw_view *view = luaL_testudata(L, arg, LBR_RAW_CLASS);
+  if (view) *run = (lbr_raw_run){view->kind, view->data, view->n};
+  return view != NULL;
 }
 
 /***

@@ -2,6 +2,7 @@
 
 #include <string.h>
 
+#include "bind/feed.h"
 #include "bind/samples.h"
 #include "store/sound.h"
 
@@ -200,6 +201,31 @@ static int sound_close(lua_State *L) {
   return 0;
 }
 
+static void close_context(void *context) { lbr_sound_close(context); }
+
+/***
+ * Turns the open file into a feed of its codes; the file itself is then
+ * closed, and lives on in the feed.
+ * @return feed: methods channels, samples, read, codes, scale, close
+ * @usage
+ * local path, x = os.tmpname(), core.samples.from { 1, -2, 3 }
+ * local spec = { rate = 8000, bits = 16, integer = true, scale = 1 }
+ * assert(core.store.write(path, spec, { x }))
+ * local feed <close> = core.store.open(path):feed()
+ * assert(feed:read(2, 1)[1][1] == -2)
+ * os.remove(path)
+ */
+static int sound_feed(lua_State *L) {
+  handle *h = check_open(L);
+  lbr_feed_handle *f = lbr_push_feed(L);
+  lua_getiuservalue(L, 1, 1);
+  lua_setiuservalue(L, -2, 1);
+  f->feed = lbr_sound_feed(h->sound);
+  f->close = close_context;
+  h->sound = NULL;
+  return 1;
+}
+
 static int sound_text(lua_State *L) {
   const handle *h = luaL_checkudata(L, 1, CLASS);
   lua_pushfstring(L, "sound file %s%s", path_of(L),
@@ -209,7 +235,7 @@ static int sound_text(lua_State *L) {
 
 static const luaL_Reg methods[] = {
     {"facts", sound_facts}, {"read", sound_read},   {"seek", sound_seek},
-    {"close", sound_close}, {NULL, NULL},
+    {"feed", sound_feed},   {"close", sound_close}, {NULL, NULL},
 };
 
 static const luaL_Reg meta[] = {

@@ -3,6 +3,7 @@
 
 #include "base/hash.h"
 #include "bind/bind.h"
+#include "bind/feed.h"
 #include "bind/samples.h"
 #include "bind/sound.h"
 #include "samples/rails.h"
@@ -152,5 +153,6 @@ static const luaL_Reg functions[] = {
 int lbr_open_store(lua_State *L) {
   luaL_newlib(L, functions);
   lbr_add_sounds(L);
+  lbr_add_feeds(L);
   return 1;
 }

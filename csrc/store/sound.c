@@ -258,6 +258,31 @@ lbr_status lbr_sound_seek(lbr_sound *s, int64_t frame, lbr_why *why) {
   return LBR_OK;
 }
 
+static lbr_status feed_plain(void *context, int64_t first, size_t count,
+                             size_t wanted, const int *channel,
+                             double *const *out) {
+  const lbr_sound *s = context;
+  return lbr_plain_read(&s->plain, first, count, wanted, channel, out);
+}
+
+static lbr_status feed_decoded(void *context, int64_t first, size_t count,
+                               size_t wanted, const int *channel,
+                               double *const *out) {
+  lbr_sound *s = context;
+  lbr_why why;
+  lbr_status status = lbr_sound_seek(s, first, &why);
+  if (status != LBR_OK) return status;
+  return lbr_sound_read(s, count, wanted, channel, out, &why);
+}
+
+lbr_feed lbr_sound_feed(lbr_sound *s) {
+  bool plain = s->plain.data_at != 0;
+  return (lbr_feed){.context = s, .channels = (size_t)s->facts.channels,
+                    .samples = s->facts.frames, .is_parallel = plain,
+                    .is_integer = s->facts.is_integer, .bits = s->facts.bits,
+                    .read = plain ? feed_plain : feed_decoded};
+}
+
 int64_t lbr_sound_at(const lbr_sound *s) { return s->at; }
 
 void lbr_sound_close(lbr_sound *s) {

@@ -11,6 +11,7 @@
 #include <stdint.h>
 
 #include "base/status.h"
+#include "samples/feed.h"
 #include "store/why.h"
 
 #define LBR_SOUND_MOST_CHANNELS 256
@@ -47,6 +48,10 @@ LBR_CHECKED lbr_status lbr_sound_seek(lbr_sound *sound, int64_t frame,
 
 /* The next frame to be read. */
 int64_t lbr_sound_at(const lbr_sound *sound);
+
+/* A feed of the codes, which moves the file; it ends with the file.  Several
+ * threads may pull where the samples lie in the file uncompressed. */
+lbr_feed lbr_sound_feed(lbr_sound *sound);
 
 /* Closes and frees; NULL is allowed. */
 void lbr_sound_close(lbr_sound *sound);
