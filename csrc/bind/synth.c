@@ -213,5 +213,7 @@ static const luaL_Reg functions[] = {
 int lbr_open_synth(lua_State *L) {
   luaL_newlib(L, functions);
   luaL_setfuncs(L, lbr_synth_signal_functions, 0);
+  luaL_setfuncs(L, lbr_synth_motion_functions, 0);
+  luaL_setfuncs(L, lbr_synth_damage_functions, 0);
   return 1;
 }

@@ -11,60 +11,6 @@
 #define BANK_CLASS "libration.synth.bank"
 #define WORK_CLASS "libration.synth.work"
 
-/* Field of the table at `table` (absolute index) as a number that may be
- * infinite; absent: the default.  Raises an error that names the field. */
-static double loose_field(lua_State *L, int table, const char *name,
-                          double absent) {
-  lua_pushstring(L, name);
-  int kind = lua_rawget(L, table);
-  double value = lua_tonumber(L, -1);
-  lua_pop(L, 1);
-  if (kind == LUA_TNIL) return absent;
-  if (kind != LUA_TNUMBER || isnan(value))
-    luaL_error(L, "%s is not a number", name);
-  return value;
-}
-
-static double field(lua_State *L, int table, const char *name,
-                    double absent) {
-  double value = loose_field(L, table, name, absent);
-  if (!isfinite(value)) luaL_error(L, "%s is not finite", name);
-  return value;
-}
-
-static lua_Integer whole_field(lua_State *L, int table, const char *name,
-                               lua_Integer absent) {
-  int whole;
-  lua_pushstring(L, name);
-  int kind = lua_rawget(L, table);
-  lua_Integer value = lua_tointegerx(L, -1, &whole);
-  lua_pop(L, 1);
-  if (kind == LUA_TNIL) return absent;
-  if (kind != LUA_TNUMBER || !whole)
-    luaL_error(L, "%s is not a whole number", name);
-  return value;
-}
-
-/* Pushes a field that is a list or nil, returns its length. */
-static size_t list_field(lua_State *L, int table, const char *name,
-                         size_t most) {
-  lua_pushstring(L, name);
-  int kind = lua_rawget(L, table);
-  if (kind == LUA_TNIL) return 0;
-  if (kind != LUA_TTABLE) luaL_error(L, "%s is not a list", name);
-  size_t n = lua_rawlen(L, -1);
-  if (n > most)
-    luaL_error(L, "%s has %I items; at most %I", name, (LUAI_UACINT)n,
-               (LUAI_UACINT)most);
-  return n;
-}
-
-/* Pushes item i (from 1) of the list at the top. */
-static void push_item(lua_State *L, size_t i, const char *name) {
-  if (lua_rawgeti(L, -1, (lua_Integer)i) != LUA_TTABLE)
-    luaL_error(L, "%s[%I] is not a table", name, (LUAI_UACINT)i);
-}
-
 /* A field that is the taps of a shape, or nil (false). */
 static bool shape_field(lua_State *L, int table, const char *name,
                         lbr_shape *shape) {
@@ -100,23 +46,23 @@ static const luaL_Reg work_meta[] = {{"__gc", close_work}, {NULL, NULL}};
 
 static lbr_tone tone_at_top(lua_State *L) {
   int t = lua_gettop(L);
-  return (lbr_tone){.amplitude = field(L, t, "amplitude", 0),
-                    .cycles = field(L, t, "cycles", 0),
-                    .phase = field(L, t, "phase", 0),
-                    .ramp = field(L, t, "ramp", 0),
-                    .swing = field(L, t, "swing", 0),
-                    .beat = field(L, t, "beat", 0),
-                    .swing_phase = field(L, t, "swing_phase", 0)};
+  return (lbr_tone){.amplitude = lbr_field(L, t, "amplitude", 0),
+                    .cycles = lbr_field(L, t, "cycles", 0),
+                    .phase = lbr_field(L, t, "phase", 0),
+                    .ramp = lbr_field(L, t, "ramp", 0),
+                    .swing = lbr_field(L, t, "swing", 0),
+                    .beat = lbr_field(L, t, "beat", 0),
+                    .swing_phase = lbr_field(L, t, "swing_phase", 0)};
 }
 
 /* Pushes a handle that holds a bank of the tones of the table at `table`;
  * their memory until then is a userdata as well. */
 static lbr_bank **push_bank(lua_State *L, int table) {
-  size_t n = list_field(L, table, "tones", LBR_MOST_TONES);
+  size_t n = lbr_list_field(L, table, "tones", LBR_MOST_TONES);
   lbr_tone *tones = lua_newuserdatauv(L, n * sizeof *tones + 1, 0);
   lua_insert(L, -2);
   for (size_t i = 0; i < n; i++) {
-    push_item(L, i + 1, "tones");
+    lbr_push_item(L, i + 1, "tones");
     tones[i] = tone_at_top(L);
     lua_pop(L, 1);
   }
@@ -132,17 +78,10 @@ static lbr_bank **push_bank(lua_State *L, int table) {
 
 static lbr_key key_fields(lua_State *L, int table) {
   return lbr_key_of(
-      (uint64_t)whole_field(L, table, "seed", 0),
-      (uint64_t)whole_field(L, table, "trial", 0),
-      (uint64_t)whole_field(L, table, "channel", 0),
-      (uint64_t)whole_field(L, table, "purpose", LBR_PURPOSE_INPUT_NOISE));
-}
-
-static unsigned workers_field(lua_State *L, int table) {
-  lua_Integer workers = whole_field(L, table, "workers", 0);
-  if (workers < 0 || workers > 256)
-    luaL_error(L, "workers is outside 0 .. 256");
-  return (unsigned)workers;
+      (uint64_t)lbr_whole_field(L, table, "seed", 0),
+      (uint64_t)lbr_whole_field(L, table, "trial", 0),
+      (uint64_t)lbr_whole_field(L, table, "channel", 0),
+      (uint64_t)lbr_whole_field(L, table, "purpose", LBR_PURPOSE_INPUT_NOISE));
 }
 
 /***
@@ -165,11 +104,11 @@ static int synth_fill(lua_State *L) {
   lbr_shape shape;
   double *x = lbr_check_writable_samples(L, 1, &n);
   luaL_checktype(L, 2, LUA_TTABLE);
-  lbr_signal s = {.offset = field(L, 2, "offset", 0),
-                  .sigma = field(L, 2, "sigma", 0),
+  lbr_signal s = {.offset = lbr_field(L, 2, "offset", 0),
+                  .sigma = lbr_field(L, 2, "sigma", 0),
                   .key = key_fields(L, 2)};
-  uint64_t first = (uint64_t)whole_field(L, 2, "first", 0);
-  unsigned workers = workers_field(L, 2);
+  uint64_t first = (uint64_t)lbr_whole_field(L, 2, "first", 0);
+  unsigned workers = lbr_workers_field(L, 2);
   if (shape_field(L, 2, "taps", &shape)) s.shape = &shape;
   lbr_bank **bank = push_bank(L, 2);
   s.bank = *bank;
@@ -183,22 +122,22 @@ static int synth_fill(lua_State *L) {
 
 static lbr_input_tone input_tone_at_top(lua_State *L) {
   int t = lua_gettop(L);
-  return (lbr_input_tone){.hz = field(L, t, "hz", 0),
-                          .amplitude = field(L, t, "amplitude", 0),
-                          .phase = field(L, t, "phase", 0),
-                          .ramp = field(L, t, "ramp", 0),
-                          .swing_hz = field(L, t, "swing_hz", 0),
-                          .swing_s = field(L, t, "swing_s", 0),
-                          .swing_phase = field(L, t, "swing_phase", 0)};
+  return (lbr_input_tone){.hz = lbr_field(L, t, "hz", 0),
+                          .amplitude = lbr_field(L, t, "amplitude", 0),
+                          .phase = lbr_field(L, t, "phase", 0),
+                          .ramp = lbr_field(L, t, "ramp", 0),
+                          .swing_hz = lbr_field(L, t, "swing_hz", 0),
+                          .swing_s = lbr_field(L, t, "swing_s", 0),
+                          .swing_phase = lbr_field(L, t, "swing_phase", 0)};
 }
 
 /* Leaves the memory of the tones on the stack. */
 static void push_input_tones(lua_State *L, int table, lbr_record_model *m) {
-  size_t n = list_field(L, table, "tones", LBR_MOST_TONES);
+  size_t n = lbr_list_field(L, table, "tones", LBR_MOST_TONES);
   lbr_input_tone *tones = lua_newuserdatauv(L, n * sizeof *tones + 1, 0);
   lua_insert(L, -2);
   for (size_t i = 0; i < n; i++) {
-    push_item(L, i + 1, "tones");
+    lbr_push_item(L, i + 1, "tones");
     tones[i] = input_tone_at_top(L);
     lua_pop(L, 1);
   }
@@ -208,21 +147,21 @@ static void push_input_tones(lua_State *L, int table, lbr_record_model *m) {
 }
 
 static void model_fields(lua_State *L, int t, lbr_record_model *m) {
-  lua_Integer bits = whole_field(L, t, "bits", 0);
+  lua_Integer bits = lbr_whole_field(L, t, "bits", 0);
   if (bits < 0 || bits > 32) luaL_error(L, "bits is outside 0 .. 32");
   m->bits = (int)bits;
-  m->offset = field(L, t, "offset", 0);
-  m->rate = field(L, t, "rate", 0);
-  m->timebase = field(L, t, "timebase", 0);
-  m->delay_s = field(L, t, "delay_s", 0);
-  m->jitter_s = field(L, t, "jitter_s", 0);
-  m->gain_error = field(L, t, "gain_error", 0);
-  m->input_noise = field(L, t, "input_noise", 0);
-  m->own_noise = field(L, t, "own_noise", 0);
-  m->range = loose_field(L, t, "range", INFINITY);
-  m->seed = (uint64_t)whole_field(L, t, "seed", 0);
-  m->trial = (uint64_t)whole_field(L, t, "trial", 0);
-  m->channel = (uint64_t)whole_field(L, t, "channel", 0);
+  m->offset = lbr_field(L, t, "offset", 0);
+  m->rate = lbr_field(L, t, "rate", 0);
+  m->timebase = lbr_field(L, t, "timebase", 0);
+  m->delay_s = lbr_field(L, t, "delay_s", 0);
+  m->jitter_s = lbr_field(L, t, "jitter_s", 0);
+  m->gain_error = lbr_field(L, t, "gain_error", 0);
+  m->input_noise = lbr_field(L, t, "input_noise", 0);
+  m->own_noise = lbr_field(L, t, "own_noise", 0);
+  m->range = lbr_loose_field(L, t, "range", INFINITY);
+  m->seed = (uint64_t)lbr_whole_field(L, t, "seed", 0);
+  m->trial = (uint64_t)lbr_whole_field(L, t, "trial", 0);
+  m->channel = (uint64_t)lbr_whole_field(L, t, "channel", 0);
 }
 
 /* Pushes room for n codes where the field `codes`, samples, asks for them. */
@@ -273,7 +212,7 @@ static int synth_record(lua_State *L) {
   luaL_checktype(L, 2, LUA_TTABLE);
   lbr_record_model m = {0};
   model_fields(L, 2, &m);
-  uint64_t first = (uint64_t)whole_field(L, 2, "first", 0);
+  uint64_t first = (uint64_t)lbr_whole_field(L, 2, "first", 0);
   if (shape_field(L, 2, "input_shape", &shape)) m.input_shape = &shape;
   lua_getfield(L, 2, "filter");
   lbr_check_filter(L, lua_gettop(L), &filter);

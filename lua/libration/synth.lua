@@ -4,51 +4,16 @@
 -- same samples on any number of threads, in pieces of any size.
 
 local core = require "libration.core"
+local common = require "libration.synth.common"
 local filters = require "libration.filter"
+local multisine = require "libration.synth.multisine"
 local options = require "libration.options"
-local units = require "libration.units"
+local signals = require "libration.synth.signals"
 
 local M = {}
 
-local MOST_SAMPLES = 1 << 40
-
--- Numbers as they are; text and fractions through the units.
-local function in_unit(unit)
-  return function(value)
-    if type(value) == "number" and value - value == 0 then
-      return value + 0.0
-    end
-    return units.number(value, unit)
-  end
-end
-
-local number = options.number()
-local level = options.number { least = 0 }
-local hertz = options.quantity(in_unit "Hz", { least = 0, unit = "Hz" })
-local seconds = options.quantity(in_unit "s", { least = 0, unit = "s" })
-local rate_kind = options.quantity(function(value)
-  if type(value) == "number" and value - value == 0 then
-    return value + 0.0
-  end
-  local rate, reason = units.rate(value)
-  return rate and rate:number(), reason
-end, { above = 0, unit = "S/s" })
-
--- Seeds and sample numbers: any 64-bit integer.
-local function key(value, path, mistakes)
-  local whole = type(value) == "number" and math.tointeger(value)
-  if not whole then
-    mistakes:add(path, options.show(value) .. " is not a whole number")
-  end
-  return whole or nil
-end
-
-local function samples_kind(value, path, mistakes)
-  if core.samples.is(value) then
-    return value
-  end
-  mistakes:add(path, options.show(value) .. " is not samples")
-end
+local number, level, hertz, seconds = common.number, common.level, common.hertz, common.seconds
+local key, target = common.key, common.target
 
 local point = options.record {
   hz = { hertz, required = true }, density = { options.number { above = 0 }, required = true },
@@ -72,11 +37,7 @@ local tone_schema = {
   swing_phase = { number, default = 0 },
 }
 
-local common = {
-  rate = { rate_kind, required = true },
-  samples = { options.integer(0, MOST_SAMPLES) },
-  into = { samples_kind },
-  first = { key, default = 0 },
+local shared = {
   tones = { options.list(options.record(tone_schema), 0, 65536), default = {} },
   offset = { number, default = 0 },
   seed = { key, default = 0 },
@@ -85,22 +46,10 @@ local common = {
 }
 
 local function schema_with(extra)
-  local schema = {}
-  for name, row in pairs(common) do
-    schema[name] = row
+  for name, row in pairs(shared) do
+    extra[name] = row
   end
-  for name, row in pairs(extra) do
-    schema[name] = row
-  end
-  return schema
-end
-
--- The samples to be filled: the caller's, or new ones.
-local function target(read, what)
-  if (read.into == nil) == (read.samples == nil) then
-    error(what .. ": give samples (how many) or into (samples to be filled), one of them", 0)
-  end
-  return read.into or core.samples.new(read.samples)
+  return common.schema(extra)
 end
 
 -- In cycles per sample.
@@ -142,7 +91,6 @@ local tones_schema = schema_with {
   noise = { density_kind },
   noise_taps = { options.integer(0, 2048), default = 256 },
   purpose = { key, default = 64 },
-  workers = { options.integer(0, 256), default = 0 },
 }
 
 --- A signal: offset, tones and Gaussian noise, without any digitizer.
@@ -227,7 +175,7 @@ end
 local record_schema = schema_with {
   timebase = { options.number { above = -1 }, default = 0 },
   filter = { filter_kind },
-  delay_s = { options.quantity(in_unit "s", { unit = "s" }), default = 0 },
+  delay_s = { options.quantity(common.in_unit "s", { unit = "s" }), default = 0 },
   jitter_s = { seconds, default = 0 },
   gain_error = { number, default = 0 },
   input_noise = { level, default = 0 },
@@ -237,6 +185,7 @@ local record_schema = schema_with {
   range = { options.number { above = 0 }, default = math.huge },
   codes = { options.boolean(), default = false },
 }
+record_schema.workers = nil
 
 --- What a digitizer makes of tones and noise.
 -- The filter acts at each tone's true frequency and shapes the noise at its
@@ -269,6 +218,103 @@ function M.record(spec)
     read.input_shape = core.synth.input_shape(read.filter, read.rate, read.noise_taps)
   end
   return x, core.synth.record(x, read), read.codes
+end
+
+--- Tones of one fundamental with phases that keep the peaks of their sum low.
+-- @param spec table: hz (fundamental), harmonics (increasing list) or count (1 .. count); amplitude
+--   (peak of each), amplitudes (a list) or rms (of the sum); phases: "schroeder" (default),
+--   "newman", "rudin_shapiro", "equal", "random"; seed (of random phases, 0)
+-- @return table: list of tones for tones and record. With consecutive harmonics of equal amplitude
+--   the crest factor of newman and schroeder phases is about 1.7 (4.6 dB); gaps raise it
+-- @usage
+-- local list = lb.synth.multisine { hz = 10, count = 64, amplitude = 1 }
+-- local x = lb.synth.tones { rate = 40960, samples = 4096, tones = list }
+-- assert(#list == 64 and math.abs(x:peak() / x:rms() - 1.7065) < 0.003)
+function M.multisine(spec)
+  return multisine.tones(spec)
+end
+
+--- A tone whose frequency runs from one value to another, once; silence before and after.
+-- @param spec table: from_hz, to_hz, duration_s, amplitude (peak), law ("linear" or "exponential"),
+--   phase (rad, at the start), start_s (0), fade_s (raised-cosine rise and fall, 0); rate, samples
+--   or into, first, workers as in tones
+-- @return samples: the chirp
+-- @usage
+-- local x = lb.synth.chirp { rate = 1000, samples = 1000, from_hz = 10, to_hz = 400,
+--   duration_s = 0.5, amplitude = 2, law = "exponential" }
+-- assert(x[1] == 2 and x[501] == 0)
+function M.chirp(spec)
+  return signals.chirp(spec)
+end
+
+--- A swept sine: pass after pass, for ever, without a jump of the phase.
+-- @param spec table: as for chirp, without fade_s; duration_s is that of one pass; back (true:
+--   every other pass runs backwards, so that the frequency does not jump either)
+-- @return samples: the swept sine
+-- @usage
+-- local x = lb.synth.sweep { rate = 1000, samples = 3000, from_hz = 10, to_hz = 50,
+--   duration_s = 1, amplitude = 1, back = true }
+-- assert(math.abs(x:rms() - math.sqrt(0.5)) < 0.01)
+function M.sweep(spec)
+  return signals.sweep(spec)
+end
+
+--- Orders of a driver whose speed follows straight lines between points.
+-- Beyond the first and last point the speed stays as it is there.
+-- @param spec table: speed, a list of { s =, hz = } (of the driver); orders, a list of { times =,
+--   amplitude =, phase = (rad, at the first point), power = (the amplitude goes with that power of
+--   speed over reference_hz; 0) }; reference_hz (default: the highest speed); rate, samples or
+--   into, first, workers as in tones
+-- @return samples: the sum of the orders
+-- @usage
+-- local x = lb.synth.ramp { rate = 1000, samples = 2000,
+--   speed = { { s = 0, hz = 10 }, { s = 2, hz = 40 } },
+--   orders = { { times = 1, amplitude = 1, power = 2 }, { times = 3.5, amplitude = 0.1 } } }
+-- assert(x:slice(1, 500):rms() < x:slice(1501):rms())
+function M.ramp(spec)
+  return signals.ramp(spec)
+end
+
+--- A carrier whose amplitude and frequency are modulated by tones.
+-- @param spec table: hz, amplitude, phase of the carrier; am, a list of { hz =, depth =
+--   (relative), phase = (of the cosine) }; fm, a list of { hz =, deviation_hz = (peak), phase =
+--   (of the cosine that the frequency follows) }; rate, samples or into, first, workers
+-- @return samples: the carrier
+-- @usage
+-- local x = lb.synth.modulated { rate = 1000, samples = 1000, hz = 200, amplitude = 1,
+--   am = { { hz = 10, depth = 0.5 } } }
+-- assert(math.abs(x:rms() ^ 2 - 0.5 * (1 + 0.125)) < 1e-12)
+function M.modulated(spec)
+  return signals.modulated(spec)
+end
+
+--- Damped modes that are struck: what a tapped structure does.
+-- @param spec table: modes, a list of { hz = (natural), damping = (ratio), amplitude = (per
+--   strength, 1), phase = (rad, of the sine) }; hits, a list of { s =, strength = } (default: one
+--   of 1 at 0 s); rate, samples or into, first, workers
+-- @return samples: the sum of the decays
+-- @usage
+-- local x = lb.synth.decays { rate = 1000, samples = 1000,
+--   modes = { { hz = 50, damping = 0.01 }, { hz = 90, damping = 0.02, amplitude = 0.3 } } }
+-- assert(x:slice(1, 100):rms() > 10 * x:slice(901):rms())
+function M.decays(spec)
+  return signals.decays(spec)
+end
+
+--- Damped modes struck again and again at slipping intervals, as a rolling-element fault does it.
+-- Interval k is (1 + slip g) / hz with normal g, each from its own draw, so that instants wander.
+-- @param spec table: modes as in decays; hz (impacts per second); slip (standard deviation of an
+--   interval, relative, 0 .. 0.1); strength (1), scatter (its relative standard deviation, 0);
+--   load_hz, load_depth, load_phase (strength follows 1 + depth cos(2 pi load_hz t + phase));
+--   start_s (0); seed, trial, channel; rate, samples or into, first, workers
+-- @return samples: the decays
+-- @return samples: the instants of the impacts, s
+-- @usage
+-- local x, at = lb.synth.impacts { rate = 20000, samples = 20000, hz = 107.36, slip = 0.01,
+--   modes = { { hz = 3000, damping = 0.05 } } }
+-- assert(#at > 100 and x:peak() / x:rms() > 3)
+function M.impacts(spec)
+  return signals.impacts(spec)
 end
 
 return M
