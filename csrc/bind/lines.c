@@ -3,6 +3,7 @@
 
 #include "base/checked.h"
 #include "bind/bind.h"
+#include "bind/lines.h"
 #include "bind/samples.h"
 #include "lines/tracker.h"
 
@@ -128,5 +129,6 @@ static const luaL_Reg functions[] = {{"tracker", tracker}, {NULL, NULL}};
 
 int lbr_open_lines(lua_State *L) {
   luaL_newlib(L, functions);
+  luaL_setfuncs(L, lbr_lines_fit_functions, 0);
   return 1;
 }

@@ -14,6 +14,7 @@ local rooms = {
   fraction = { "libration.fraction" },
   record = { "libration.record" },
   json = { "libration.json" },
+  lines = { "libration.lines" },
   report = { "libration.report" },
   samples = { "libration.samples" },
   synth = { "libration.synth" },
