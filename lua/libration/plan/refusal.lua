@@ -16,7 +16,7 @@ function Refusal:__tostring()
   return text.refusal(self)
 end
 
-local MOST_SHARE = 1000 -- errors beyond this many tolerances are not pursued
+local MOST_SHARE = 40 -- errors beyond this many tolerances are not pursued
 local STEPS = 5         -- bisections of the smallest share
 
 local function new(fields)
@@ -54,7 +54,7 @@ end
 local function try(posed, read, demand, share)
   local within = read.within and read.within / (demand.averages or 1) or math.huge
   return core.plan.search(posed.handle, { share = share, most_duration = within,
-    most_work = read.effort_s * 1e5 })
+    most_work = read.effort_s * relax.EFFORT })
 end
 
 -- The smallest share of the tolerances with which a plan exists, and it.

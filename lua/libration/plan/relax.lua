@@ -6,6 +6,9 @@ local problem = require "libration.plan.problem"
 
 local M = {}
 
+-- Work of one trial, microseconds per second of effort the engineer allows.
+M.EFFORT = 2e4
+
 local FILTER_ORDERS = 8   -- orders beyond the present one that are tried
 local TIME_STEPS = { 2, 4, 10, 100, 1e9 }
 local RATE_STEPS = { 2, 4, 8 }
@@ -33,7 +36,7 @@ local function attempt(demand, digitizer, read)
   end
   local within = read.within and read.within / (demand.averages or 1) or math.huge
   local choice = core.plan.search(posed.handle, { share = read.share, most_duration = within,
-    most_work = read.effort_s * 1e5 })
+    most_work = read.effort_s * M.EFFORT })
   if not choice then
     return nil
   end
