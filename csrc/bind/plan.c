@@ -268,7 +268,8 @@ static void push_choice(lua_State *L, const lbr_problem *p,
 /*** The shortest record that holds a problem's demand.
  * @param problem problem: from core.plan.problem
  * @param t table: share (of the tolerances that errors may take, default 1),
- *   most_duration (s), most_work (about microseconds); absent: the problem's
+ *   most_duration (s), most_work and care_work (about microseconds); absent:
+ *   the problem's
  * @return table: rate, samples, mode (index), setting (three numbers); or nil,
  *   message, code ("infeasible": nothing fits, "stopped": gave up)
  * @return table: effort: ranges, candidates, bounds, work (after a refusal it
@@ -283,6 +284,7 @@ static int plan_search(lua_State *L) {
   problem.most_duration =
       lbr_field_or(L, 2, "most_duration", problem.most_duration);
   problem.most_work = lbr_field_or(L, 2, "most_work", problem.most_work);
+  problem.care_work = lbr_field_or(L, 2, "care_work", problem.care_work);
   lbr_choice choice;
   lbr_search_count count;
   lbr_status status = lbr_search_run(&problem, &choice, &count);
@@ -376,7 +378,7 @@ static int plan_judge(lua_State *L) {
   lua_createtable(L, (int)lines, 0);
   for (size_t i = 0; i < lines; i++) {
     lbr_bound bound;
-    lbr_bound_line(&b->c, i, 0, &bound);
+    lbr_bound_line(&b->c, i, LBR_CARE_JOINT, 0, &bound);
     push_bound(L, &b->c, i, &bound);
     lua_rawseti(L, -2, (lua_Integer)i + 1);
   }
@@ -401,7 +403,7 @@ static int plan_budget(lua_State *L) {
   lbr_term *terms = lua_newuserdatauv(
       L, (scene->n_sources + LBR_TERM_KINDS) * sizeof *terms, 0);
   lbr_bound bound;
-  lbr_bound_line(&b->c, line, 0, &bound);
+  lbr_bound_line(&b->c, line, LBR_CARE_JOINT, 0, &bound);
   size_t n = lbr_bound_budget(&b->c, line, &bound, terms);
   lua_createtable(L, (int)n, 0);
   for (size_t k = 0; k < n; k++) {

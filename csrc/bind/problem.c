@@ -254,6 +254,7 @@ static void read_limits(lua_State *L, int arg, lbr_problem_handle *h) {
   p->coverage = at_least(L, arg, "coverage", 0, 3);
   p->share = 1;
   p->most_work = at_least(L, arg, "most_work", 0, 1e7);
+  p->care_work = at_least(L, arg, "care_work", 0, 1e5);
 }
 
 static int problem_free(lua_State *L) {

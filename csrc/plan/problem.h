@@ -27,8 +27,11 @@ typedef struct lbr_problem {
   double coverage;             /* k of the random terms */
   double share;                /* errors may take this share of tolerances */
   bool undersample;            /* lines may stand above half the rate */
+  double least_duration;       /* shorter records are not looked at, s */
   double most_work;            /* units of work (about a microsecond each)
                                   after which the search gives up */
+  double care_work;            /* work on top, for joint bounds of plans
+                                  shorter than plain bounds allow */
 } lbr_problem;
 
 /* The shortest record a window may be used with: its kernel must fit. */

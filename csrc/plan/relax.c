@@ -5,8 +5,13 @@
 
 #include "base/checked.h"
 
-#define TRUST 0.97     /* kernels of finite length may be lower by this */
-#define MODEL 512      /* length at which finite kernels are looked at */
+#define TRUST 0.998    /* what long records keep beyond lbr_relax_kept */
+#define SHORT 2048     /* records shorter than this ... */
+#define TRUST_SHORT 0.95 /* ... keep less */
+#define MODEL 4096     /* length at which finite kernels are looked at */
+#define THIN 1e-3      /* of what is allowed: pairs below do not matter */
+#define ENOUGH 1.25    /* bins of an interval's near end that hold its peak */
+#define FLANK 32.5     /* bins from which envelopes can be compared */
 #define MARGIN 1e-8    /* and enclosures looser by this */
 #define STEADY 0.9999  /* noise bandwidths differ less with the length */
 
@@ -43,17 +48,26 @@ static void add(lbr_relax *r, lbr_pair pair) {
   if (pair.high <= near && pair.weight > 0) r->pair[r->n_pairs++] = pair;
 }
 
+static bool alone(const lbr_scene *s, size_t line, size_t j) {
+  for (size_t k = 0; k < s->n_sources; k++)
+    if (k != line && k != j && s->sources[k].driver == s->sources[j].driver)
+      return false;
+  return true;
+}
+
 /* Distances between line i and source j, difference and sum. */
 static void add_source(lbr_relax *r, size_t i, size_t j, double weight) {
   const lbr_scene *s = r->problem->scene;
   const lbr_source *a = &s->sources[i], *b = &s->sources[j];
-  double own = b->lock_hz * s->spread[b->driver];
+  double spread = s->spread[b->driver], own = b->lock_hz * spread;
+  bool locked = a->driver == b->driver;
   if (b->wander > 0) return; /* spread over sidebands: left to the bound */
   for (double sign = 1; sign >= -1; sign -= 2) {
-    double hz = b->hz - sign * a->hz, half = own;
-    if (a->driver == b->driver)
-      half = fabs(b->lock_hz - sign * a->lock_hz) * s->spread[a->driver];
-    add(r, (lbr_pair){i, hz - half, hz + half, b->hz, own, sign, weight});
+    double hz = b->hz - sign * a->hz;
+    double half = locked ? fabs(b->lock_hz - sign * a->lock_hz) * spread
+                         : own + a->lock_hz * s->spread[a->driver];
+    add(r, (lbr_pair){i, hz - half, hz + half, b->hz, own,
+                      alone(s, i, j), locked, sign, weight});
   }
 }
 
@@ -77,12 +91,19 @@ static void fill(lbr_relax *r) {
                                 least_gain(p, r->rate, j) / most);
     double hz = p->scene->sources[i].hz;
     if (p->scene->sources[i].wander <= 0)
-      add(r, (lbr_pair){i, 2 * hz, 2 * hz, hz, 0, -1,
+      add(r, (lbr_pair){i, 2 * hz, 2 * hz, hz, 0, true, true, -1,
                         p->scene->sources[i].least});
-    add(r, (lbr_pair){i, hz, hz, 0, 0, -1, 2 * p->scene->offset / most});
+    add(r, (lbr_pair){i, hz, hz, 0, 0, true, false, -1,
+                      2 * p->scene->offset / most});
   }
   if (r->n_pairs > 1)
     qsort(r->pair, r->n_pairs, sizeof *r->pair, by_line_then_weight);
+  size_t k = 0;
+  for (size_t i = 0; i < p->scene->n_lines; i++) {
+    r->first[i] = k;
+    while (k < r->n_pairs && r->pair[k].line == i) k++;
+  }
+  r->first[p->scene->n_lines] = k;
 }
 
 lbr_status lbr_relax_new(const lbr_problem *p, double rate, lbr_relax *out) {
@@ -94,7 +115,8 @@ lbr_status lbr_relax_new(const lbr_problem *p, double rate, lbr_relax *out) {
   r.pair = lbr_alloc(pairs, sizeof *r.pair);
   r.allowed = lbr_alloc(p->scene->n_lines, sizeof *r.allowed);
   r.noise = lbr_alloc(p->scene->n_lines, sizeof *r.noise);
-  if (!r.pair || !r.allowed || !r.noise) {
+  r.first = lbr_alloc(p->scene->n_lines + 1, sizeof *r.first);
+  if (!r.pair || !r.allowed || !r.noise || !r.first) {
     lbr_relax_free(&r);
     return LBR_NO_MEMORY;
   }
@@ -107,6 +129,7 @@ void lbr_relax_free(lbr_relax *r) {
   free(r->pair);
   free(r->allowed);
   free(r->noise);
+  free(r->first);
   *r = (lbr_relax){.problem = NULL};
 }
 
@@ -118,10 +141,21 @@ lbr_status lbr_relax_kept(const lbr_relax *r, lbr_kernel *endless,
   for (size_t k = 0; k < r->n_pairs && status == LBR_OK; k++) {
     double x = floor(r->pair[k].high / r->rate * MODEL) + 0.5;
     double share = lbr_kernel_gain(finite, x) / lbr_kernel_gain(endless, x);
-    kept[k] = x < MODEL / 8 ? TRUST : TRUST * fmin(share, 1);
+    kept[k] = x < FLANK ? 1 : fmin(share, 1);
     if (!(kept[k] >= 0)) kept[k] = 0;
   }
   return status;
+}
+
+void lbr_relax_thin(const lbr_relax *r, lbr_kernel *kernel, double least,
+                    double *kept) {
+  for (size_t k = 0; k < r->n_pairs; k++) {
+    const lbr_pair *p = &r->pair[k];
+    double x = p->low * least, low, high;
+    lbr_kernel_range(kernel, x, x + 1, &low, &high);
+    if (p->weight * kept[k] * high < THIN * r->allowed[p->line] && x > FLANK)
+      kept[k] = 0;
+  }
 }
 
 double lbr_relax_least(const lbr_relax *r, lbr_kernel *kernel,
@@ -135,25 +169,56 @@ double lbr_relax_least(const lbr_relax *r, lbr_kernel *kernel,
     double level = r->allowed[p->line] / (p->weight * kept[k]);
     if (level >= 1) continue;
     double reach = lbr_kernel_reach(kernel, level);
-    least = fmax(least, p->low > 0 ? TRUST * reach / p->low : INFINITY);
+    least = fmax(least, p->low > 0 ? TRUST_SHORT * reach / p->low : INFINITY);
   }
   return least;
 }
 
-/* Lower bound of the supremum of the kernel over [low t - n, high t - n] for
- * every duration t in [t1, t2]. */
-static double least_most(lbr_kernel *kernel, double low, double high, double n,
-                         double t1, double t2) {
-  double from = fmax(low * t1, low * t2) - n;
-  double to = fmin(high * t1, high * t2) - n, least, most;
-  if (from <= to) {
-    lbr_kernel_range(kernel, from, to, &least, &most);
+typedef struct span {
+  double from, to; /* bins */
+} span;
+
+/* What [low t - n, high t - n] holds for every t in [t1, t2] (from > to: no
+ * point), and for any of them. */
+static span always(double low, double high, double n, double t1, double t2) {
+  return (span){fmax(low * t1, low * t2) - n, fmin(high * t1, high * t2) - n};
+}
+
+static span ever(double low, double high, double n, double t1, double t2) {
+  return (span){fmin(low * t1, low * t2) - n, fmax(high * t1, high * t2) - n};
+}
+
+/* Lower bound of the supremum of the kernel over what the distance is always
+ * able to be; without such points, of the kernel wherever it may be. */
+static double least_most(lbr_kernel *kernel, span certain, span possible) {
+  double least, most;
+  if (certain.from <= certain.to) {
+    if (certain.from > 0)
+      certain.to = fmin(certain.to, certain.from + ENOUGH);
+    else if (certain.to < 0)
+      certain.from = fmax(certain.from, certain.to - ENOUGH);
+    lbr_kernel_range(kernel, certain.from, certain.to, &least, &most);
     return fmax(most - MARGIN, 0);
   }
-  from = fmin(low * t1, low * t2) - n;
-  to = fmax(high * t1, high * t2) - n;
-  lbr_kernel_range(kernel, from, to, &least, &most);
+  lbr_kernel_range(kernel, possible.from, possible.to, &least, &most);
   return fmax(least - MARGIN, 0);
+}
+
+/* Lower bound of the kernel's mean over the distance's interval: sources that
+ * move together are worst together at least as much as on average.  A whole
+ * bin of |sin| has the mean 2 / pi. */
+static double least_mean(lbr_kernel *kernel, span certain, span possible) {
+  double least, most, width = certain.to - certain.from;
+  if (width < 1) {
+    lbr_kernel_range(kernel, possible.from, possible.to, &least, &most);
+    return fmax(least - MARGIN, 0);
+  }
+  bool beyond = fabs(certain.to) > fabs(certain.from);
+  double far = beyond ? certain.to : certain.from;
+  double near = beyond ? far - 1 : far + 1;
+  lbr_kernel_range(kernel, fmin(far, near), fmax(far, near), &least, &most);
+  return fmax(0.6 * floor(width) / (possible.to - possible.from) * most -
+                  MARGIN, 0);
 }
 
 /* The bin of a line over the durations, when it is one and the same. */
@@ -172,43 +237,73 @@ static double least_scallop(const lbr_source *s, double spread, double low,
   double near = off + s->lock_hz * spread * t1;
   double far = fmax(fabs(low), fabs(high)) + s->lock_hz * spread * t2;
   lbr_kernel_range(kernel, near, fmax(near, far), &least, &most);
-  return fmax(TRUST * (1 - most) - MARGIN, 0);
+  return fmax(TRUST_SHORT * (1 - most) - MARGIN, 0);
+}
+
+typedef struct view { /* one field of the search over [t1, t2] */
+  const lbr_relax *relax;
+  lbr_care care;
+  bool tracked;
+  lbr_kernel *kernel;
+  const double *kept;
+  double t1, t2;
+} view;
+
+/* The least a pair leaks, kernel part.  Joint bounds may have all sources of
+ * a driver at one deviation, and those of the line's own at none. */
+static double pair_least(const view *v, const lbr_pair *p, double bin) {
+  double low = v->tracked ? p->low : p->hz - p->half;
+  double high = v->tracked ? p->high : p->hz + p->half;
+  double n = v->tracked ? 0 : p->sign * bin;
+  bool joint = v->care == LBR_CARE_JOINT;
+  if (joint && v->tracked) { /* the line itself at its nominal place */
+    const lbr_scene *scene = v->relax->problem->scene;
+    double middle = fabs(p->hz - p->sign * scene->sources[p->line].hz);
+    double half = p->locked ? 0 : p->half;
+    low = fmax(middle - half, 0);
+    high = middle + half;
+  }
+  span certain = always(low, high, n, v->t1, v->t2);
+  span possible = ever(low, high, n, v->t1, v->t2);
+  return joint && !p->alone ? least_mean(v->kernel, certain, possible)
+                            : least_most(v->kernel, certain, possible);
 }
 
 /* What one line must at least bear; stops above what it is allowed. */
-static double line_least(const lbr_relax *r, const lbr_mode *mode, size_t i,
-                         size_t first, size_t last, lbr_kernel *kernel,
-                         const double *kept, double t1, double t2) {
+static double line_least(const view *v, size_t i, double *work) {
+  const lbr_relax *r = v->relax;
   const lbr_source *s = &r->problem->scene->sources[i];
-  double enbw = lbr_kernel_noise_bandwidth(kernel), bin = 0;
-  double sum = STEADY * sqrt(r->noise[i] * enbw / t2);
-  bool tracked = mode->reading == LBR_READING_TRACKED;
-  bool known = tracked || one_bin(s->hz, t1, t2, &bin);
-  if (!tracked)
+  double enbw = lbr_kernel_noise_bandwidth(v->kernel), bin = 0;
+  double sum = STEADY * sqrt(r->noise[i] * enbw / v->t2);
+  double trust = v->t1 * r->rate < SHORT ? TRUST_SHORT : TRUST;
+  bool known = v->tracked || one_bin(s->hz, v->t1, v->t2, &bin);
+  if (!v->tracked)
     sum += s->least *
            least_scallop(s, r->problem->scene->spread[s->driver],
-                         known ? s->hz * t1 - bin : 0,
-                         known ? s->hz * t2 - bin : 0, kernel, t1, t2);
-  if (!known) return sum;
-  for (size_t k = first; k < last && sum <= r->allowed[i]; k++) {
-    const lbr_pair *p = &r->pair[k];
-    double leak = tracked ? least_most(kernel, p->low, p->high, 0, t1, t2)
-                          : least_most(kernel, p->hz - p->half,
-                                       p->hz + p->half, p->sign * bin, t1, t2);
-    sum += p->weight * kept[k] * leak;
+                         known ? s->hz * v->t1 - bin : 0,
+                         known ? s->hz * v->t2 - bin : 0, v->kernel, v->t1,
+                         v->t2);
+  *work += 0.5;
+  for (size_t k = r->first[i]; known && k < r->first[i + 1]; k++) {
+    if (v->kept[k] <= 0) continue;
+    if (sum > r->allowed[i]) break;
+    sum += r->pair[k].weight * v->kept[k] * trust *
+           pair_least(v, &r->pair[k], bin);
+    *work += 0.4;
   }
   return sum;
 }
 
 bool lbr_relax_possible(const lbr_relax *r, const lbr_mode *mode,
-                        lbr_kernel *kernel, const double *kept, double t1,
-                        double t2, double *work) {
-  size_t first = 0, last;
-  for (size_t i = 0; i < r->problem->scene->n_lines; i++, first = last) {
-    for (last = first; last < r->n_pairs && r->pair[last].line == i;) last++;
-    *work += 0.3 * (double)(last - first) + 0.3;
-    if (line_least(r, mode, i, first, last, kernel, kept, t1, t2) > r->allowed[i])
-      return false;
+                        lbr_care care, lbr_kernel *kernel, const double *kept,
+                        double t1, double t2, size_t *stern, double *work) {
+  view v = {r, care, mode->reading == LBR_READING_TRACKED, kernel, kept, t1,
+            t2};
+  for (size_t k = 0; k < r->problem->scene->n_lines; k++) {
+    size_t i = k == 0 ? *stern : k <= *stern ? k - 1 : k;
+    if (line_least(&v, i, work) <= r->allowed[i]) continue;
+    *stern = i;
+    return false;
   }
   return true;
 }

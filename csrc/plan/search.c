@@ -34,7 +34,9 @@ typedef struct field {
   const band *band;
   mode_state *mode;
   size_t mode_at;      /* index of the mode */
-  double *kept;        /* lbr_relax_kept */
+  double *kept;        /* lbr_relax_kept, thinned at the first visit */
+  bool thinned;
+  size_t stern;        /* the line the relaxation failed at last */
   double least;        /* shortest duration that could do */
   size_t expansions;
   uint32_t *active;    /* rates by ascending least duration, once surveyed */
@@ -44,6 +46,7 @@ typedef struct field {
 
 typedef struct search {
   const lbr_problem *p;
+  lbr_care care;
   lbr_limits *limits;
   lbr_heap heap;
   mode_state *mode;    /* p->n_modes */
@@ -100,6 +103,7 @@ static lbr_status open_field(search *s, size_t m, size_t b) {
   if (status != LBR_OK) return status;
   f->least = fmax(lbr_relax_least(relax, f->mode->endless, f->kept),
                   (double)f->mode->fewest / s->p->rates->item[last].value);
+  f->least = fmax(f->least, s->p->least_duration);
   if (f->least > f->band->longest) return LBR_OK;
   return lbr_heap_push(&s->heap,
                        (lbr_node){.t1 = f->least * (1 - EDGE),
@@ -181,11 +185,12 @@ static bool line_holds(search *s, const lbr_case *c, size_t line) {
   size_t asked = 0;
   double share = s->p->share;
   bool reached =
-      lbr_bound_reached(c, line, share * LOOSE, &asked) <= share * LOOSE;
+      lbr_bound_reached(c, line, s->care, share * LOOSE, &asked) <=
+      share * LOOSE;
   s->count->work += ASK_WORK * (double)asked;
   if (!reached) return false;
   lbr_bound bound;
-  lbr_bound_line(c, line, share, &bound);
+  lbr_bound_line(c, line, s->care, share, &bound);
   s->count->bounds++;
   s->count->work += ASK_WORK * (double)bound.asked;
   return bound.ratio <= share;
@@ -306,9 +311,13 @@ static lbr_status visit(search *s, lbr_node range) {
     range.t1 = f->least * (1 - EDGE);
     return lbr_heap_push(&s->heap, range);
   }
-  if (!lbr_relax_possible(&f->band->relax, &s->p->modes[f->mode_at],
+  if (!f->thinned) {
+    lbr_relax_thin(&f->band->relax, f->mode->endless, f->least, f->kept);
+    f->thinned = true;
+  }
+  if (!lbr_relax_possible(&f->band->relax, &s->p->modes[f->mode_at], s->care,
                           f->mode->endless, f->kept, range.t1, range.t2,
-                          &s->count->work))
+                          &f->stern, &s->count->work))
     return LBR_OK;
   double width = range.t2 - range.t1;
   if (f->band->sum * width / (double)s->p->block <= few ||
@@ -341,13 +350,54 @@ static lbr_status run(search *s, lbr_choice *choice) {
   return LBR_INFEASIBLE;
 }
 
-lbr_status lbr_search_run(const lbr_problem *p, lbr_choice *choice,
-                          lbr_search_count *count) {
-  *count = (lbr_search_count){0, 0, 0, 0};
-  if (p->rates->count == 0 || p->scene->n_lines == 0) return LBR_INFEASIBLE;
-  search s = {.p = p, .count = count};
+static lbr_status search_once(const lbr_problem *p, lbr_care care,
+                              lbr_choice *choice, lbr_search_count *count) {
+  search s = {.p = p, .care = care, .count = count};
   lbr_status status = open_search(&s);
   if (status == LBR_OK) status = run(&s, choice);
   close_search(&s);
   return status;
+}
+
+#define FEW_IN_ALL 1e5 /* so many candidates can all be looked at with care */
+#define NEAR 0.85      /* where there are more, only this close to the plain
+                          plan are shorter ones looked for */
+
+/* The problem of beating a choice. */
+static lbr_problem beat(const lbr_problem *p, const lbr_choice *choice) {
+  lbr_problem narrow = *p;
+  double t = (double)choice->n / p->rates->item[choice->rate].value, sum = 0;
+  for (size_t r = 0; r < p->rates->count; r++) sum += p->rates->item[r].value;
+  narrow.most_duration = t * (1 - 4 * EDGE);
+  if (sum * t / (double)p->block > FEW_IN_ALL)
+    narrow.least_duration = fmax(NEAR * t, p->least_duration);
+  narrow.most_work = p->care_work;
+  return narrow;
+}
+
+static void add_count(lbr_search_count *sum, const lbr_search_count *more) {
+  sum->ranges += more->ranges;
+  sum->candidates += more->candidates;
+  sum->bounds += more->bounds;
+  sum->work += more->work;
+}
+
+lbr_status lbr_search_run(const lbr_problem *p, lbr_choice *choice,
+                          lbr_search_count *count) {
+  *count = (lbr_search_count){0, 0, 0, 0};
+  if (p->rates->count == 0 || p->scene->n_lines == 0) return LBR_INFEASIBLE;
+  lbr_search_count more = {0, 0, 0, 0};
+  lbr_choice better;
+  lbr_status status = search_once(p, LBR_CARE_PLAIN, choice, count);
+  if (status != LBR_OK && status != LBR_INFEASIBLE) return status;
+  lbr_problem narrow = status == LBR_OK ? beat(p, choice) : *p;
+  lbr_status again = search_once(&narrow, LBR_CARE_JOINT, &better, &more);
+  add_count(count, &more);
+  if (again == LBR_OK) {
+    *choice = better;
+    return LBR_OK;
+  }
+  if (status == LBR_OK && (again == LBR_INFEASIBLE || again == LBR_STOPPED))
+    return LBR_OK;
+  return again;
 }

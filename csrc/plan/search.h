@@ -5,6 +5,9 @@
  * brought onto the hardware (rate, length) when they are short; the first
  * combination that passes the full bound, in order of duration, is the best.
  * The work grows with what nearly fits, not with rates x lengths.
+ *
+ * It is done twice: with plain bounds, which are quick, and then, within
+ * problem->care_work, with joint ones for what may be shorter still.
  */
 #ifndef LBR_PLAN_SEARCH_H
 #define LBR_PLAN_SEARCH_H

@@ -274,8 +274,8 @@ static double affordable(const lbr_case *c, size_t line, double own_share,
   return most;
 }
 
-void lbr_bound_line(const lbr_case *c, size_t line, double enough,
-                    lbr_bound *b) {
+void lbr_bound_line(const lbr_case *c, size_t line, lbr_care care,
+                    double enough, lbr_bound *b) {
   double low, high, t = lbr_duration(c);
   lbr_bound_search(c, line, &low, &high);
   bool tracked = c->reading == LBR_READING_TRACKED;
@@ -299,9 +299,11 @@ void lbr_bound_line(const lbr_case *c, size_t line, double enough,
     if (enough > 0)
       room = affordable(c, line, own_product(&p), p.offset, b->sigma, enough);
     if (room < 0) return;
-    double joint = lbr_leak_joint(&l, room, enough > 0 ? room : INFINITY,
-                                  SLACK * b->tolerance);
-    leak = fmin(leak, joint);
+    double limit = enough > 0 ? room : INFINITY;
+    double sum = lbr_leak_plain(&l, INFINITY);
+    if (care == LBR_CARE_JOINT && sum > room)
+      sum = lbr_leak_joint(&l, room, limit, SLACK * b->tolerance);
+    leak = fmin(leak, sum);
     b->steer = l.steer;
     settle(c, &l, &p, leak, enough > 0, b);
     if (!tracked || b->ratio <= enough) return;
@@ -335,9 +337,11 @@ double lbr_bound_glance(const lbr_case *c, size_t line, double enough) {
   return least_ratio(c, line, enough, lbr_leak_nominal, &asked);
 }
 
-double lbr_bound_reached(const lbr_case *c, size_t line, double enough,
-                         size_t *asked) {
-  return least_ratio(c, line, enough, lbr_leak_reached, asked);
+double lbr_bound_reached(const lbr_case *c, size_t line, lbr_care care,
+                         double enough, size_t *asked) {
+  return least_ratio(c, line, enough,
+                     care == LBR_CARE_JOINT ? lbr_leak_reached
+                                            : lbr_leak_plain, asked);
 }
 
 static double square(double x) { return x * x; }

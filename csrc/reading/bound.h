@@ -62,16 +62,24 @@ typedef struct lbr_bound {
  * everything at its nominal place.  Stops as soon as it exceeds `enough`. */
 double lbr_bound_glance(const lbr_case *c, size_t line, double enough);
 
-/* A tighter lower bound, at the price of a few hundred kernel enclosures: the
- * sum of all leaks at deviations that can be met.  *asked counts them. */
-double lbr_bound_reached(const lbr_case *c, size_t line, double enough,
-                         size_t *asked);
+/* How far suprema over drivers are followed. */
+typedef enum lbr_care {
+  LBR_CARE_PLAIN, /* every source at its own worst place; what is locked to
+                     the line moves as it does */
+  LBR_CARE_JOINT  /* sources of one driver are worst together: never more than
+                     plain, at some ten times the work */
+} lbr_care;
+
+/* A tighter lower bound of the ratio with the same care, at the price of some
+ * kernel enclosures, counted up in *asked; stops above `enough`. */
+double lbr_bound_reached(const lbr_case *c, size_t line, lbr_care care,
+                         double enough, size_t *asked);
 
 /* The bound of a line.  Work stops as soon as ratio is known to be at most
  * `enough` or known to exceed it (then ratio > enough, not refined further);
  * enough = 0 refines to the end. */
-void lbr_bound_line(const lbr_case *c, size_t line, double enough,
-                    lbr_bound *out);
+void lbr_bound_line(const lbr_case *c, size_t line, lbr_care care,
+                    double enough, lbr_bound *out);
 
 /* The interval over which a tracked reading searches, Hz as the record sees
  * it (for `bin` both ends are the bin's frequency). */

@@ -119,6 +119,18 @@ double lbr_leak_crude(const lbr_leak *l) {
   return sum;
 }
 
+double lbr_leak_plain(const lbr_leak *l, double high) {
+  size_t own = source(l, l->line)->driver;
+  double e = spread_of(l, own), sum = 0;
+  for (size_t j = 0; j < l->c->scene->n_sources && sum <= high; j++) {
+    if (j == l->line) continue;
+    size_t driver = source(l, j)->driver;
+    double d = spread_of(l, driver);
+    sum += weight(l, j) * lbr_leak_gain(l, j, -e, e, -d, d, driver == own);
+  }
+  return sum;
+}
+
 /* All sources of one driver, the line's driver in [e1, e2]. */
 static double group(const lbr_leak *l, size_t driver, double e1, double e2,
                     double d1, double d2) {

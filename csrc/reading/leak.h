@@ -38,6 +38,10 @@ double lbr_leak_of(const lbr_leak *leak, size_t j);
 /* Sum of lbr_leak_of over all other sources: never less than the supremum. */
 double lbr_leak_crude(const lbr_leak *leak);
 
+/* The same with sources of the line's own driver moving as it does; every
+ * source at its own worst place.  Stops above `high`. */
+double lbr_leak_plain(const lbr_leak *leak, double high);
+
 /* Supremum of the sum, drivers moved jointly; refined until it is within
  * `slack` (unit), or known to be at most `low`, or known to exceed `high`, or
  * cutting gains nothing more.  Always an upper bound of the true supremum. */
