@@ -158,9 +158,10 @@ void lbr_relax_thin(const lbr_relax *r, lbr_kernel *kernel, double least,
   }
 }
 
-double lbr_relax_least(const lbr_relax *r, lbr_kernel *kernel,
-                       const double *kept) {
+double lbr_relax_least(const lbr_relax *r, lbr_reading reading,
+                       lbr_kernel *kernel, const double *kept) {
   double least = 0, enbw = lbr_kernel_noise_bandwidth(kernel);
+  double off = reading == LBR_READING_BIN ? 0.5 : 0;
   for (size_t i = 0; i < r->problem->scene->n_lines; i++)
     least = fmax(least, STEADY * r->noise[i] * enbw /
                             (r->allowed[i] * r->allowed[i]));
@@ -168,7 +169,8 @@ double lbr_relax_least(const lbr_relax *r, lbr_kernel *kernel,
     const lbr_pair *p = &r->pair[k];
     double level = r->allowed[p->line] / (p->weight * kept[k]);
     if (level >= 1) continue;
-    double reach = lbr_kernel_reach(kernel, level);
+    double reach = fmax(lbr_kernel_reach(kernel, level) - off, 0);
+    if (reach <= 0) continue;
     least = fmax(least, p->low > 0 ? TRUST_SHORT * reach / p->low : INFINITY);
   }
   return least;

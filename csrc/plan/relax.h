@@ -48,8 +48,8 @@ void lbr_relax_thin(const lbr_relax *relax, lbr_kernel *kernel, double least,
 
 /* The shortest duration that a reading with this kernel (endless record)
  * could possibly hold the demand in. */
-double lbr_relax_least(const lbr_relax *relax, lbr_kernel *kernel,
-                       const double *kept);
+double lbr_relax_least(const lbr_relax *relax, lbr_reading reading,
+                       lbr_kernel *kernel, const double *kept);
 
 /* Whether some duration in [t1, t2] might do by bounds of this care; false
  * only when none can.  *stern is the line that failed last, tried first.

@@ -101,7 +101,8 @@ static lbr_status open_field(search *s, size_t m, size_t b) {
   lbr_status status = lbr_relax_kept(relax, f->mode->endless, f->mode->kernel,
                                      f->kept);
   if (status != LBR_OK) return status;
-  f->least = fmax(lbr_relax_least(relax, f->mode->endless, f->kept),
+  f->least = fmax(lbr_relax_least(relax, s->p->modes[m].reading, f->mode->endless,
+                                  f->kept),
                   (double)f->mode->fewest / s->p->rates->item[last].value);
   f->least = fmax(f->least, s->p->least_duration);
   if (f->least > f->band->longest) return LBR_OK;

@@ -77,6 +77,10 @@ function M.read(given, all)
       usual[#usual + 1] = { name = name }
     end
   end
+  local function rate(value)
+    local exact, reason = units.rate(value)
+    return exact and exact:number(), reason
+  end
   local share = options.quantity(units.relative, { above = 0, most = 1 })
   return options.take({
     within = { options.quantity(units.seconds, { above = 0, unit = "s" }) },
@@ -84,8 +88,8 @@ function M.read(given, all)
     windows = { windows_kind(known, all), default = usual },
     undersample = { options.boolean(), default = false },
     share = { share, default = 1 },
-    least_rate = { options.quantity(units.rate, { above = 0, unit = "S/s" }) },
-    most_rate = { options.quantity(units.rate, { above = 0, unit = "S/s" }) },
+    least_rate = { options.quantity(rate, { above = 0, unit = "S/s" }) },
+    most_rate = { options.quantity(rate, { above = 0, unit = "S/s" }) },
     effort_s = { options.quantity(units.seconds, { above = 0, most = 3600, unit = "s" }),
       default = 10 },
   }, given, "plan options")
