@@ -13,20 +13,7 @@
 #define LBR_PLAN_SEARCH_H
 
 #include "base/status.h"
-#include "plan/problem.h"
-
-typedef struct lbr_choice {
-  size_t rate; /* index into problem->rates->item */
-  size_t mode; /* index into problem->modes */
-  size_t n;    /* samples of the record, per channel */
-} lbr_choice;
-
-typedef struct lbr_search_count {
-  size_t ranges;     /* ranges of durations looked at */
-  size_t candidates; /* (rate, length, mode) brought onto the hardware */
-  size_t bounds;     /* full bounds evaluated */
-  double work;       /* about microseconds */
-} lbr_search_count;
+#include "plan/descent.h"
 
 /* LBR_OK: *choice is the shortest; among equal durations the one of fewest
  * samples.  LBR_INFEASIBLE: nothing fits.  LBR_STOPPED: gave up at

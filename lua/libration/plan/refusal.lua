@@ -51,18 +51,12 @@ function M.blocked(demand, digitizer, posed, read)
   return nil
 end
 
-local function try(posed, read, demand, share)
-  local within = read.within and read.within / (demand.averages or 1) or math.huge
-  return core.plan.search(posed.handle, { share = share, most_duration = within,
-    most_work = read.effort_s * relax.EFFORT })
-end
-
 -- The smallest share of the tolerances with which a plan exists, and it.
 local function smallest_share(posed, read, demand)
   local low, high, found = read.share, nil, nil
   local share = read.share * 1.25
   while not found and share <= MOST_SHARE do
-    found = try(posed, read, demand, share)
+    found = relax.search(posed, demand, read, share)
     if found then
       high = share
     else
@@ -71,7 +65,7 @@ local function smallest_share(posed, read, demand)
   end
   for _ = 1, found and STEPS or 0 do
     local middle = math.sqrt(low * high)
-    local better = try(posed, read, demand, middle)
+    local better = relax.search(posed, demand, read, middle)
     if better then
       found, high = better, middle
     else

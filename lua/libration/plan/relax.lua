@@ -6,8 +6,31 @@ local problem = require "libration.plan.problem"
 
 local M = {}
 
--- Work of one trial, microseconds per second of effort the engineer allows.
-M.EFFORT = 2e4
+-- Microseconds of work per second of effort the engineer allows: of one trial,
+-- and of all trials of a refusal together.
+local ONE_TRIAL, ALL_TRIALS = 2e4, 8e4
+
+--- A search within what is left of a refusal's allowance.
+-- @param posed table: from libration.plan.problem
+-- @param demand table: from lb.demand
+-- @param read table: read options; its field `left` is the allowance
+-- @param share number: of the tolerances
+-- @return table: the core's choice, or nil
+-- @usage
+-- assert(type(require("libration.plan.relax").search) == "function")
+function M.search(posed, demand, read, share)
+  local left = read.left or { work = read.effort_s * ALL_TRIALS }
+  read.left = left
+  local most = math.min(read.effort_s * ONE_TRIAL, left.work)
+  if most <= 0 then
+    return nil
+  end
+  local within = read.within and read.within / (demand.averages or 1) or math.huge
+  local choice, effort, _, failed = core.plan.search(posed.handle, { share = share,
+    most_duration = within, most_work = most, care_work = most / 4 })
+  left.work = left.work - (choice and effort or failed).work
+  return choice
+end
 
 local FILTER_ORDERS = 8   -- orders beyond the present one that are tried
 local TIME_STEPS = { 2, 4, 10, 100, 1e9 }
@@ -34,9 +57,7 @@ local function attempt(demand, digitizer, read)
   if front.range and problem.peak(demand) > front.range then
     return nil
   end
-  local within = read.within and read.within / (demand.averages or 1) or math.huge
-  local choice = core.plan.search(posed.handle, { share = read.share, most_duration = within,
-    most_work = read.effort_s * M.EFFORT })
+  local choice = M.search(posed, demand, read, read.share)
   if not choice then
     return nil
   end
