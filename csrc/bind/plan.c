@@ -146,23 +146,6 @@ static lbr_settings *push_settings(lua_State *L) {
   return s;
 }
 
-/*** Every (divider, samples) of a clock that is coherent with all lines.
- * Lines stay below half the rate and within `off` bins of whole cycles,
- * folded interferers more than `bins` bins away from every line.
- * @param t table: clock (Hz), divider_least, divider_most, samples_least,
- *   samples_most, lines (ascending list of Hz), off (bins, below 0.5), away
- *   (ascending list of Hz, may be empty), bins, workers (0: all cores), most
- *   (rows returned, default 1000: the shortest records)
- * @return table: rows { divider =, samples = }, shortest records first
- * @return integer: how many there are in all; or nil, message, code
- * @usage
- * local rows, count = core.plan.coherent {
- *   clock = 1000, divider_least = 1, divider_most = 10, samples_least = 16,
- *   samples_most = 100, lines = { 50 }, off = 0.001 }
- * assert(count > 0 and rows[1].samples * rows[1].divider % 20 == 0)
- */
-static int plan_coherent(lua_State *L);
-
 static int by_duration(const void *left, const void *right) {
   const lbr_setting *a = left, *b = right;
   uint64_t ta = (uint64_t)a->divider * a->samples;
@@ -184,6 +167,21 @@ static void push_rows(lua_State *L, const lbr_settings *s, size_t most) {
   }
 }
 
+/*** Every (divider, samples) of a clock that is coherent with all lines.
+ * Lines stay below half the rate and within `off` bins of whole cycles,
+ * folded interferers more than `bins` bins away from every line.
+ * @param t table: clock (Hz), divider_least, divider_most, samples_least,
+ *   samples_most, lines (ascending list of Hz), off (bins, below 0.5), away
+ *   (ascending list of Hz, may be empty), bins, workers (0: all cores), most
+ *   (rows returned, default 1000: the shortest records)
+ * @return table: rows { divider =, samples = }, shortest records first
+ * @return integer: how many there are in all; or nil, message, code
+ * @usage
+ * local rows, count = core.plan.coherent {
+ *   clock = 1000, divider_least = 1, divider_most = 10, samples_least = 16,
+ *   samples_most = 100, lines = { 50 }, off = 0.001 }
+ * assert(count > 0 and rows[1].samples * rows[1].divider % 20 == 0)
+ */
 static int plan_coherent(lua_State *L) {
   luaL_checktype(L, 1, LUA_TTABLE);
   lbr_pair_demand d = {.off = lbr_field_number(L, 1, "off"),

@@ -65,7 +65,8 @@ static lbr_status open_mode(const search *s, size_t m) {
   lbr_status status = lbr_kernel_new(&mode->window, 0, &state->endless);
   if (status == LBR_OK)
     status = lbr_kernel_new(&mode->window, 1024, &state->kernel);
-  if (status == LBR_OK) status = lbr_second_moment(&mode->window, &state->moment);
+  if (status == LBR_OK)
+    status = lbr_second_moment(&mode->window, &state->moment);
   size_t fewest = lbr_mode_least_samples(mode);
   state->fewest = fewest > s->p->least_samples ? fewest : s->p->least_samples;
   return status;
@@ -104,10 +105,10 @@ static lbr_status open_field(search *s, size_t m, size_t b) {
   lbr_status status = lbr_relax_kept(relax, f->mode->endless, f->mode->kernel,
                                      f->kept);
   if (status != LBR_OK) return status;
-  f->least = fmax(lbr_relax_least(relax, s->p->modes[m].reading, f->mode->endless,
-                                  f->kept),
-                  (double)f->mode->fewest / s->p->rates->item[last].value);
-  f->least = fmax(f->least, s->p->least_duration);
+  double fewest = (double)f->mode->fewest / s->p->rates->item[last].value;
+  f->least = lbr_relax_least(relax, s->p->modes[m].reading, f->mode->endless,
+                             f->kept);
+  f->least = fmax(fmax(f->least, fewest), s->p->least_duration);
   if (f->least > f->band->longest) return LBR_OK;
   return lbr_heap_push(&s->heap,
                        (lbr_node){.t1 = f->least * (1 - EDGE),
@@ -220,7 +221,8 @@ static lbr_status expand_rate(search *s, const lbr_node *range, uint32_t r) {
   double n = ceil(range->t1 * rate / block * (1 - EDGE)) * block;
   double most = fmin((double)p->most_samples, p->most_duration * rate *
                                                   (1 + EDGE));
-  n = fmax(n, ceil((double)s->fields[range->field].mode->fewest / block) * block);
+  double fewest = (double)s->fields[range->field].mode->fewest;
+  n = fmax(n, ceil(fewest / block) * block);
   for (; n <= most && n < range->t2 * rate; n += block) {
     double t = n / rate;
     lbr_node leaf = {t, t, (size_t)n, range->field, r};

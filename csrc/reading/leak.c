@@ -24,7 +24,8 @@ static span place(const lbr_leak *l, size_t j, double d1, double d2) {
 }
 
 static span widen(span s, double relative) {
-  return (span){s.low - fabs(s.low) * relative, s.high + fabs(s.high) * relative};
+  return (span){s.low - fabs(s.low) * relative,
+                s.high + fabs(s.high) * relative};
 }
 
 /* Distance (sign = 1: f_j - f, sign = -1: f_j + f) to the place where the

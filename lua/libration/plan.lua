@@ -286,6 +286,11 @@ end
 --- The error budget of one line, as text.
 -- @param which string or integer: name or index, default the tightest line
 -- @return string
+-- @usage
+-- local demand = lb.demand { unit = "V", lines = {
+--   { name = "tone", hz = 100, amplitude = "1 V", tolerance = "1 %" } } }
+-- local plan = lb.plan(demand, lb.digitizer { rates = { "1 kHz" } })
+-- assert(plan:budget("tone"):find "own image")
 function Plan:budget(which)
   return text.budget(self, which)
 end

@@ -75,7 +75,7 @@ local function smallest_share(posed, read, demand)
   return high, found
 end
 
-local function worst_line(demand, posed, choice)
+local function worst_line(posed, choice)
   local rate = posed.rate(choice.setting):number()
   local judged = core.plan.judge(posed.handle, rate, choice.mode, choice.samples)
   local worst = 1
@@ -94,8 +94,19 @@ local function worst_line(demand, posed, choice)
     from = terms[1].source and posed.source[terms[1].source].name }
 end
 
-local function limit_of(demand, digitizer, posed, read, choice)
+-- Limits that no longer record and no other rate can move.
+local fixed_limits = {
+  ["sensor and range"] = "the accuracy of sensor and range",
+  ["jitter loss"] = "the digitizer's jitter",
+  ["filter droop"] = "the filter's corner and flatness",
+  quantisation = "the digitizer's bits and range",
+}
+
+local function limit_of(demand, digitizer, posed, read, choice, term)
   local rate = choice.rate
+  if fixed_limits[term] then
+    return fixed_limits[term]
+  end
   local total = choice.samples / rate * (demand.averages or 1)
   local _, _, most_rate = core.plan.rates(posed.handle)
   if read.within and total > 0.8 * read.within then
@@ -131,9 +142,9 @@ function M.explain(demand, digitizer, posed, read, code)
   end
   local share, choice = smallest_share(posed, read, demand)
   if choice then
-    local line, ratio, term = worst_line(demand, posed, choice)
+    local line, ratio, term = worst_line(posed, choice)
     refusal.binding = { line = demand.lines[line].name, term = term.term, from = term.from,
-      limit = limit_of(demand, digitizer, posed, read, choice), ratio = ratio }
+      limit = limit_of(demand, digitizer, posed, read, choice, term.term), ratio = ratio }
     refusal.message = ("line %s would be off by %.3g times its tolerance")
       :format(demand.lines[line].name, ratio)
   else

@@ -204,6 +204,16 @@ local function averaged(list, demand, digitizer, read)
   end
 end
 
+local function finer(list, demand, digitizer, read)
+  for bits = (digitizer.bits or 32) + 1, 32 do
+    local plan = attempt(demand, with(digitizer, { bits = bits }), read)
+    if plan then
+      add(list, { bits = bits }, ("a converter of %d bits"):format(bits), plan)
+      return
+    end
+  end
+end
+
 --- Changes that would let the sources fit the range.
 -- @param demand table: from lb.demand
 -- @param digitizer table: from lb.digitizer
@@ -256,6 +266,9 @@ function M.all(demand, digitizer, read, binding, share)
   higher(list, demand, digitizer, read)
   if binding.term == "noise" or binding.term == "quantisation" then
     averaged(list, demand, digitizer, read)
+  end
+  if binding.term == "quantisation" then
+    finer(list, demand, digitizer, read)
   end
   return list
 end
