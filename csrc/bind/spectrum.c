@@ -3,6 +3,7 @@
 
 #include "bind/bind.h"
 #include "bind/samples.h"
+#include "bind/spectrum.h"
 #include "spectrum/transform.h"
 
 #define JOB_CLASS "libration.transform.job"
@@ -162,5 +163,7 @@ static const luaL_Reg functions[] = {
 
 int lbr_open_spectrum(lua_State *L) {
   luaL_newlib(L, functions);
+  lbr_add_averages(L);
+  lbr_add_statistics(L);
   return 1;
 }
