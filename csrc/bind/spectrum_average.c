@@ -3,6 +3,7 @@
 #include <stdbool.h>
 
 #include "bind/bind.h"
+#include "bind/feed.h"
 #include "bind/samples.h"
 #include "bind/spectrum.h"
 #include "spectrum/average.h"
@@ -22,6 +23,14 @@ static holder *check_holder(lua_State *L) {
   return h;
 }
 
+/***
+ * Gives back the memory of the average before it is collected.
+ * @usage
+ * local w = core.samples.from { 1, 1, 1, 1 }
+ * local a = core.spectrum.average(w, 2, 4, 1, "none", "mean", false, 1)
+ * a:close()
+ * assert(not pcall(a.segments, a))
+ */
 static int holder_close(lua_State *L) {
   holder *h = luaL_checkudata(L, 1, CLASS);
   lbr_average_free(h->average);
@@ -59,19 +68,44 @@ static const double *const *check_channels(lua_State *L, size_t channels,
   return list;
 }
 
-/* 0, 1, 2 ... on the stack. */
-static const int *push_numbers(lua_State *L, size_t channels) {
+/* Channel numbers from 0 on the stack: those of the list at `arg` counted from
+ * 1, or 0, 1, 2 ... */
+static const int *push_numbers(lua_State *L, int arg, size_t channels,
+                               size_t most) {
+  bool all = lua_isnoneornil(L, arg);
+  if (!all) luaL_checktype(L, arg, LUA_TTABLE);
+  size_t listed = all ? most : (size_t)lua_rawlen(L, arg);
+  if (listed != channels)
+    luaL_argerror(L, arg, lua_pushfstring(
+        L, "%I channels of a feed for %I channels", (LUAI_UACINT)listed,
+        (LUAI_UACINT)channels));
   int *numbers = lua_newuserdatauv(L, channels * sizeof *numbers, 0);
-  for (size_t c = 0; c < channels; c++) numbers[c] = (int)c;
+  for (size_t c = 0; c < channels; c++) {
+    lua_Integer number = (lua_Integer)c + 1;
+    if (!all) {
+      lua_rawgeti(L, arg, (lua_Integer)c + 1);
+      number = lua_tointeger(L, -1);
+      lua_pop(L, 1);
+    }
+    if (number < 1 || number > (lua_Integer)most)
+      luaL_argerror(L, arg, lua_pushfstring(
+          L, "%I is no channel; there are 1 to %I", (LUAI_UACINT)number,
+          (LUAI_UACINT)most));
+    numbers[c] = (int)number - 1;
+  }
   return numbers;
 }
 
 /***
  * Appends samples to the stream that is averaged.
  * Blocks may have any size: the sums come out the same to the last bit.
- * @param blocks samples or table: one block, or a list of blocks of equal
- *   length, one per channel
- * @return average: this one; or nil, message, code ("no_memory")
+ * @param source samples, table or feed: one block, a list of blocks of equal
+ *   length, one per channel, or a feed
+ * @param channels table: of a feed, numbers from 1; default all
+ * @param first integer: of a feed, the first sample from 1, default 1
+ * @param count integer: of a feed, how many samples, default all that follow
+ * @return average: this one; or nil, message, code ("no_memory"; a feed's
+ *   "io", "format")
  * @usage
  * local w = core.samples.from { 1, 1, 1, 1 }
  * local a = core.spectrum.average(w, 2, 4, 1, "none", "mean", false, 1)
@@ -80,13 +114,23 @@ static const int *push_numbers(lua_State *L, size_t channels) {
  */
 static int feed(lua_State *L) {
   holder *h = check_holder(L);
-  size_t n = 0;
-  lua_settop(L, 2);
-  const double *const *channels = check_channels(L, h->channels, &n);
-  const int *numbers = push_numbers(L, h->channels);
-  lbr_feed f = lbr_feed_doubles(channels, h->channels, n);
-  lbr_status status =
-      lbr_average_feed(h->average, &f, numbers, 0, (int64_t)n);
+  size_t n = 0, first = 0, count;
+  lbr_feed blocks;
+  const lbr_feed *f = &blocks;
+  lua_settop(L, 5);
+  if (luaL_testudata(L, 2, LBR_FEED_CLASS)) {
+    f = lbr_check_feed(L, 2, NULL);
+    n = (size_t)f->samples;
+  } else {
+    const double *const *list = check_channels(L, h->channels, &n);
+    blocks = lbr_feed_doubles(list, h->channels, n);
+  }
+  if (!lua_isnil(L, 4)) first = lbr_check_count(L, 4, 1, n + 1) - 1;
+  count = n - first;
+  if (!lua_isnil(L, 5)) count = lbr_check_count(L, 5, 0, n - first);
+  const int *numbers = push_numbers(L, 3, h->channels, f->channels);
+  lbr_status status = lbr_average_feed(h->average, f, numbers, (int64_t)first,
+                                       (int64_t)count);
   if (status != LBR_OK) return lbr_refuse(L, status, "average");
   lua_settop(L, 1);
   return 1;

@@ -28,6 +28,7 @@ typedef struct seat {
 struct lbr_average {
   lbr_average_setting set;
   size_t bins;     /* of a transform */
+  size_t stride;   /* from one channel's bins to the next, aligned */
   size_t group;    /* segments in a group */
   size_t span;     /* samples that a group looks at */
   size_t sums;     /* doubles in one set of sums: powers, then crosses */
@@ -99,7 +100,7 @@ static bool is_valid(const lbr_average_setting *s) {
 
 static lbr_status make_seat(const lbr_average *a, seat *s) {
   size_t sets = a->set.cross ? a->set.channels : 1, values;
-  if (lbr_size(sets, 2 * a->bins, &values) != LBR_OK) return LBR_NO_MEMORY;
+  if (lbr_size(sets, 2 * a->stride, &values) != LBR_OK) return LBR_NO_MEMORY;
   s->scratch = lbr_transform_buffer(a->set.points);
   s->bins = (double complex *)lbr_transform_buffer(values);
   s->into = lbr_alloc(a->set.channels, sizeof *s->into);
@@ -110,6 +111,7 @@ static lbr_status make_seat(const lbr_average *a, seat *s) {
 static void plan_sizes(lbr_average *a) {
   size_t n = a->set.length, c = a->set.channels;
   a->bins = a->set.points / 2 + 1;
+  a->stride = (a->bins + 7) / 8 * 8;
   a->group = GROUP_SAMPLES / n;
   if (a->group < 1) a->group = 1;
   if (a->group > GROUP_MOST) a->group = GROUP_MOST;
@@ -169,12 +171,13 @@ static void add_power(const lbr_average *a, const double complex *bins,
     lbr_segment_add_power(bins, a->bins, power);
 }
 
-static void add_crosses(const lbr_average *a, const seat *s, double *sums) {
-  double complex *pair = (double complex *)(void *)sums;
+/* Real parts of a pair, then its imaginary parts; then the next pair's. */
+static void add_crosses(const lbr_average *a, const seat *s, double *pair) {
   for (size_t i = 0; i < a->set.channels; i++)
-    for (size_t j = i + 1; j < a->set.channels; j++, pair += a->bins)
-      lbr_segment_add_cross(s->bins + i * a->bins, s->bins + j * a->bins,
-                            a->bins, pair);
+    for (size_t j = i + 1; j < a->set.channels; j++, pair += 2 * a->bins)
+      lbr_segment_add_cross(s->bins + i * a->stride,
+                            s->bins + j * a->stride, a->bins, pair,
+                            pair + a->bins);
 }
 
 /* Into the sums of a group, or the powers that a median keeps. */
@@ -182,7 +185,7 @@ static void add_segment(const lbr_average *a, const seat *s, size_t offset,
                         bool is_first, double *sums) {
   bool crossed = a->set.cross;
   for (size_t c = 0; c < a->set.channels; c++) {
-    double complex *bins = s->bins + (crossed ? c * a->bins : 0);
+    double complex *bins = s->bins + (crossed ? c * a->stride : 0);
     lbr_segment_window(s->from[c] + offset, a->window, a->set.length,
                        a->set.detrend, s->scratch);
     lbr_transform_forward(a->transform, s->scratch, bins);
@@ -428,6 +431,6 @@ lbr_status lbr_average_cross(lbr_average *a, size_t from, size_t to,
   const double *sums = a->settled + c * a->bins + 2 * pair * a->bins;
   double count = (double)lbr_average_segments(a), sign = from < to ? 1 : -1;
   for (size_t k = 0; k < a->bins; k++)
-    out[k] = CMPLX(sums[2 * k] / count, sign * sums[2 * k + 1] / count);
+    out[k] = CMPLX(sums[k] / count, sign * sums[a->bins + k] / count);
   return LBR_OK;
 }

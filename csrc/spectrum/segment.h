@@ -30,8 +30,8 @@ void lbr_segment_add_power(const double complex *bins, size_t count,
 void lbr_segment_most_power(const double complex *bins, size_t count,
                             double *most);
 
-/* sum[k] += conj(a[k]) b[k] */
+/* re[k] + i im[k] += conj(a[k]) b[k] */
 void lbr_segment_add_cross(const double complex *a, const double complex *b,
-                           size_t count, double complex *sum);
+                           size_t count, double *re, double *im);
 
 #endif

@@ -22,6 +22,7 @@ local rooms = {
   load_plan = { "libration.plan", "load", "libration.proof", "libration.measure" },
   plan = { "libration.plan", "plan", "libration.proof", "libration.measure" },
   plans = { "libration.plan", "plans", "libration.proof", "libration.measure" },
+  survey = { "libration.survey" },
   units = { "libration.units" },
   window = { "libration.window", "window" },
   windows = { "libration.window", "windows" },
