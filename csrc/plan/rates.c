@@ -1,6 +1,7 @@
 #include "plan/rates.h"
 
 #include <math.h>
+#include <stdint.h>
 #include <stdlib.h>
 
 #define SAME 1e-15             /* relative: settings that make one rate */
@@ -50,12 +51,15 @@ lbr_status lbr_rates_pll(lbr_rates *rates, const lbr_pll_clock *c,
                  ((double)c->divide_most - c->divide_least + 1) *
                  (double)c->n_after;
   if (tries > MOST_TRIES) return LBR_OVERFLOW;
-  for (unsigned m = c->multiply_least; m <= c->multiply_most; m++)
-    for (unsigned d = c->divide_least; d <= c->divide_most; d++) {
-      double vco = c->clock * m / d;
+  for (uint64_t m = c->multiply_least; m <= c->multiply_most;
+       m += c->multiply_step)
+    for (uint64_t d = c->divide_least; d <= c->divide_most;
+         d += c->divide_step) {
+      double vco = c->clock * (double)m / (double)d;
       if (vco < c->vco_least || vco > c->vco_most) continue;
       for (size_t k = 0; k < c->n_after; k++) {
-        lbr_rate rate = {vco / c->after[k], {m, d, c->after[k]}};
+        lbr_rate rate = {vco / c->after[k],
+                         {(unsigned)m, (unsigned)d, c->after[k]}};
         lbr_status status = lbr_rates_add(rates, rate, limits);
         if (status != LBR_OK) return status;
       }

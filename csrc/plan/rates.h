@@ -36,7 +36,8 @@ typedef struct lbr_divider_clock {
  * clock * multiplier / divider between vco_least and vco_most. */
 typedef struct lbr_pll_clock {
   double clock; /* Hz */
-  unsigned multiply_least, multiply_most, divide_least, divide_most;
+  unsigned multiply_least, multiply_most, multiply_step; /* step >= 1 */
+  unsigned divide_least, divide_most, divide_step;
   double vco_least, vco_most; /* Hz; 0 and INFINITY when free */
   const unsigned *after;      /* n_after >= 1 post dividers */
   size_t n_after;

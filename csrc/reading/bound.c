@@ -112,21 +112,17 @@ static double offset_gain(const lbr_case *c, double low_hz, double high_hz,
 }
 
 static double image_gain(const lbr_case *c, size_t line, double steer) {
-  double t = lbr_duration(c), low, high, from, to, read;
+  size_t asked = 0;
+  double t = lbr_duration(c), from, to, read = bin_hz(c, line);
+  lbr_leak l = {c, line, t, read, steer, &asked};
   const lbr_source *s = own(c, line);
   double half = lbr_half_width(c->scene, line), timebase = c->front->timebase;
   from = (s->hz - half) * (1 - timebase);
   to = (s->hz + half) * (1 + timebase);
-  if (c->reading == LBR_READING_BIN) {
-    read = bin_hz(c, line);
-    from += read;
-    to += read;
-  } else {
-    from *= 2;
-    to *= 2;
-  }
-  lbr_kernel_range(c->kernel, from * t - steer, to * t + steer, &low, &high);
-  return high;
+  bool bin = c->reading == LBR_READING_BIN;
+  from += bin ? read : from;
+  to += bin ? read : to;
+  return lbr_leak_spread(&l, line, from * t - steer, to * t + steer);
 }
 
 /* Own lobe: how far |H| leaves 1 where the line may stand. */
@@ -214,8 +210,8 @@ static void track_frequency(const lbr_case *c, const lbr_leak *l,
     slope += 2 * s->least * x[k] *
              lbr_kernel_slope(c->kernel, (double)k - far, (double)k + far);
   lbr_bound_search(c, l->line, &low, &high);
-  slope += s->least * lbr_kernel_slope(c->kernel, 2 * low * t - far,
-                                       2 * high * t + far);
+  slope += s->least * lbr_leak_spread_slope(l, l->line, 2 * low * t - far,
+                                            2 * high * t + far);
   slope += 2 * c->scene->offset / c->path->nominal[l->line] *
            lbr_kernel_slope(c->kernel, low * t - far, high * t + far);
   double kept = s->least * x[0];

@@ -91,6 +91,10 @@ static double spread_most(const lbr_leak *l, size_t j, span x) {
   return power > 1 - 1e-9 ? sum : lbr_kernel_absolute(l->c->kernel);
 }
 
+double lbr_leak_spread(const lbr_leak *l, size_t j, double from, double to) {
+  return spread_most(l, j, (span){from, to});
+}
+
 double lbr_leak_gain(const lbr_leak *l, size_t j, double e1, double e2,
                      double d1, double d2, bool locked) {
   return spread_most(l, j, distance(l, j, e1, e2, d1, d2, locked, 1)) +
@@ -283,6 +287,11 @@ static double slope_most(const lbr_leak *l, size_t j, span x) {
              lbr_kernel_slope(l->c->kernel, x.low + shift, x.high + shift);
   }
   return sum;
+}
+
+double lbr_leak_spread_slope(const lbr_leak *l, size_t j, double from,
+                             double to) {
+  return slope_most(l, j, (span){from, to});
 }
 
 double lbr_leak_slope(const lbr_leak *l) {

@@ -26,6 +26,13 @@ typedef struct lbr_leak {
 size_t lbr_leak_sidebands(const lbr_leak *leak, size_t source,
                           double amplitude[LBR_SIDEBANDS]);
 
+/* Upper bounds of the kernel and of its slope (per bin) over distances
+ * [from, to], bins, with the source's wander spread over its sidebands. */
+double lbr_leak_spread(const lbr_leak *leak, size_t source, double from,
+                       double to);
+double lbr_leak_spread_slope(const lbr_leak *leak, size_t source, double from,
+                             double to);
+
 /* Upper bound of the normalised response to source j and its image, with the
  * line's driver in [e1, e2] and the source's own in [d1, d2] (relative
  * deviations); `locked`: both are the same deviation. */

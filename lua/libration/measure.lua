@@ -124,10 +124,12 @@ local function measured_line(plan, i, reading, rate)
   local standard = (own ^ 2 / 3 + others ^ 2 / 3 + sigma ^ 2) ^ 0.5
   local tracked = claim.f_hi > claim.f_lo
   local sigma_hz = (claim.sigma_hz or 0) / plan.averages ^ 0.5
+  local bound = own + others + k * sigma
+  local outside = line.least and (amplitude + bound < line.least or amplitude - bound > line.most)
   return {
-    name = line.name, amplitude = amplitude, phase = reading.phase,
+    name = line.name, amplitude = amplitude, phase = reading.phase, outside = outside or false,
     hz = reading.frequency * rate, tracked = tracked, nominal_hz = line.hz,
-    bound = own + others + k * sigma, systematic = own + others, random = sigma,
+    bound = bound, systematic = own + others, random = sigma,
     standard = standard, expanded = EXPANDED * standard,
     hz_bound = tracked and claim.hz and claim.hz + k * sigma_hz or nil,
   }
@@ -143,7 +145,8 @@ end
 --   (k of the bounds), and lines[i]: name, amplitude (peak), bound (worst error, random part with
 --   k), systematic, random (standard deviation), standard and expanded (k = 2) uncertainty, hz
 --   (where the line was read) with hz_bound (tracked lines), phase (rad, of the cosine at the
---   centre of the first record, as the digitizer shows it), tracked; print shows it as a table;
+--   centre of the first record, as the digitizer shows it), tracked, outside (boolean: the
+--   amplitude is not one the demand allows for, and the bounds do not hold); print shows a table;
 --   or nil, message, code when the record breaks its plan
 -- @usage
 -- local demand = lb.demand { unit = "V", lines = {
@@ -219,9 +222,15 @@ function M.text(m)
     ("  %-20s %12s %11s %11s %11s  %s"):format("line", "amplitude", "worst +-", "u (k=1)",
       "U (k=2)", "frequency, Hz"),
   }
+  local outside = false
   for _, l in ipairs(m.lines) do
+    outside = outside or l.outside
     rows[#rows + 1] = ("  %-20s %12s %11.2g %11.2g %11.2g  %s"):format(l.name,
-      to_digits(l.amplitude, l.expanded), l.bound, l.standard, l.expanded, hz_text(l))
+      to_digits(l.amplitude, l.expanded), l.bound, l.standard, l.expanded,
+      hz_text(l) .. (l.outside and "  (*)" or ""))
+  end
+  if outside then
+    rows[#rows + 1] = "(*) outside the amplitudes that were demanded: the bounds do not hold there"
   end
   rows[#rows + 1] = ("worst: systematic bound and %g standard deviations; u: JCGM 100 style")
     :format(m.coverage)

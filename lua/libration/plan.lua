@@ -4,9 +4,12 @@
 -- and what would help.
 
 local core = require "libration.core"
+local demand_room = require "libration.demand"
+local digitizer_room = require "libration.digitizer"
 local choices = require "libration.plan.choices"
 local file = require "libration.plan.file"
 local problem = require "libration.plan.problem"
+local rates = require "libration.plan.rates"
 local refusal = require "libration.plan.refusal"
 local text = require "libration.report.text"
 local windows = require "libration.window"
@@ -116,6 +119,15 @@ local function per_record(demand, read)
   return read.within and read.within / (demand.averages or 1) or math.huge
 end
 
+local function check_arguments(demand, digitizer)
+  if not demand_room.is(demand) then
+    error("plan: argument 1 must be a demand; make one by lb.demand { ... } or lb.load(path)", 3)
+  elseif not digitizer_room.is(digitizer) then
+    error("plan: argument 2 must be a digitizer; make one by lb.digitizer { ... } or "
+      .. "lb.load(path)", 3)
+  end
+end
+
 --- Plans a measurement: the shortest that holds every tolerance.
 -- @param demand table: from lb.demand
 -- @param digitizer table: from lb.digitizer
@@ -133,6 +145,7 @@ end
 -- local plan = lb.plan(demand, lb.digitizer { rates = { "1 kHz" } })
 -- assert(plan.worst <= 1 and plan.rate:number() == 1000)
 function M.plan(demand, digitizer, options)
+  check_arguments(demand, digitizer)
   local read = choices.read(options, windows.windows())
   local posed = problem.new(demand, digitizer, read)
   local blocked = refusal.blocked(demand, digitizer, posed, read)
@@ -240,6 +253,13 @@ function M.load(path)
   local stored, demand, digitizer = file.read(path)
   if not stored then
     return nil, demand, digitizer
+  end
+  if not rates.admits(digitizer.rates, stored.rate, stored.setting) then
+    return nil, ("%s: plan.rate: the digitizer, set like this, does not make %s S/s"):format(path,
+      tostring(stored.rate)), "stale"
+  elseif not problem.holds(digitizer, stored.samples) then
+    return nil, ("%s: plan.samples: the digitizer does not record %d samples in one go")
+      :format(path, stored.samples), "stale"
   end
   local ok, posed = pcall(posed_again, demand, digitizer, stored)
   if not ok then

@@ -87,6 +87,20 @@ local function most_samples(digitizer)
   return math.max(most, 4)
 end
 
+--- Whether a digitizer can record so many samples in one go.
+-- @param digitizer table: from lb.digitizer
+-- @param samples integer: per channel
+-- @return boolean
+-- @usage
+-- local holds = require("libration.plan.problem").holds
+-- local digitizer = lb.digitizer { rates = { "1 kHz" }, block = 8 }
+-- assert(holds(digitizer, 64) and not holds(digitizer, 65))
+function M.holds(digitizer, samples)
+  local least = digitizer.samples and digitizer.samples.least or 16
+  return samples >= least and samples <= most_samples(digitizer)
+    and samples % (digitizer.block or 1) == 0
+end
+
 local function rate_limits(demand, digitizer, options)
   local most, least = options.most_rate or math.huge, options.least_rate or 0
   if digitizer.aggregate then

@@ -26,6 +26,7 @@ function describe.pll(rates)
   local vco = rates.vco or {}
   return { kind = "pll", clock = rates.clock:number(),
       multiply_least = rates.multiply.least, multiply_most = rates.multiply.most,
+      multiply_step = rates.multiply.step, divide_step = rates.divide.step,
       divide_least = rates.divide.least, divide_most = rates.divide.most,
       after = rates.after, vco_least = vco.least and vco.least:number(),
       vco_most = vco.most and vco.most:number() },
@@ -41,7 +42,7 @@ local function listed(list)
     numbers[i] = rate:number()
   end
   return { kind = "list", list = numbers }, function(setting)
-    return list[setting[1]], { entry = setting[1] }
+    return list[setting[1]], {}
   end
 end
 
@@ -121,8 +122,7 @@ local function stepped(rates, low, high)
     numbers[#numbers + 1] = (rates.least + rates.step * math.tointeger(k)):number()
   end
   return { kind = "list", list = numbers }, function(setting)
-    return rates.least + rates.step * (math.tointeger(first) + setting[1] - 1),
-      { step = math.tointeger(first) + setting[1] - 1 }
+    return rates.least + rates.step * (math.tointeger(first) + setting[1] - 1), {}
   end
 end
 
@@ -131,6 +131,62 @@ function describe.range(rates, demand, low, high)
     return stepped(rates, low, high)
   end
   return continuous(rates, demand, low, high)
+end
+
+local function in_run(value, run)
+  return math.type(value) == "integer" and value >= run.least and value <= run.most
+    and (value - run.least) % (run.step or 1) == 0
+end
+
+local function in_list(value, list)
+  for _, entry in ipairs(list) do
+    if entry == value then
+      return true
+    end
+  end
+  return false
+end
+
+local admits = {}
+
+function admits.divider(rates, rate, setting)
+  local decimation = setting.decimation or 1
+  return in_run(setting.divider, rates) and in_list(decimation, rates.decimation or { 1 })
+    and rates.clock / (setting.divider * decimation) == rate
+end
+
+function admits.list(rates, rate)
+  return in_list(rate, rates.rates)
+end
+
+function admits.range(rates, rate)
+  return rate >= rates.least and rate <= rates.most
+    and (not rates.step or ((rate - rates.least) / rates.step).denominator == 1)
+end
+
+function admits.pll(rates, rate, setting)
+  if not (in_run(setting.multiply, rates.multiply) and in_run(setting.divide, rates.divide)
+    and in_list(setting.after, rates.after)) then
+    return false
+  end
+  local vco = rates.clock * fraction.new(setting.multiply, setting.divide)
+  local limits = rates.vco
+  return (not limits or (vco >= limits.least and vco <= limits.most))
+    and vco / setting.after == rate
+end
+
+--- Whether a digitizer, set like this, makes a rate.
+-- @param rates table: the digitizer's rates
+-- @param rate fraction: S/s
+-- @param setting table: divider, decimation; multiply, divide, after
+-- @return boolean
+-- @usage
+-- local rates = lb.digitizer({ clock = "1 MHz", divider = { 10, 1000 } }).rates
+-- local admits = require("libration.plan.rates").admits
+-- assert(admits(rates, lb.fraction.new(100000, 3), { divider = 30 }))
+-- assert(not admits(rates, lb.fraction.new(100000, 3), { divider = 31 }))
+function M.admits(rates, rate, setting)
+  return admits[rates.kind](rates, rate, setting)
 end
 
 --- A digitizer's rates for the core, and the way back to exact ones.
