@@ -3,6 +3,8 @@
 #include <math.h>
 #include <string.h>
 
+#include "bind/filter_parts.h"
+
 static const char *const shapes[] = {
     [LBR_FILTER_NONE] = "none",
     [LBR_FILTER_BUTTERWORTH] = "butterworth",
@@ -301,5 +303,7 @@ static const luaL_Reg functions[] = {
 
 int lbr_open_filter(lua_State *L) {
   luaL_newlib(L, functions);
+  luaL_setfuncs(L, lbr_sections_functions, 0);
+  luaL_setfuncs(L, lbr_taps_functions, 0);
   return 1;
 }

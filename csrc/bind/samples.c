@@ -302,15 +302,22 @@ static const luaL_Reg methods[] = {{"slice", samples_slice},
                                    {NULL, NULL}};
 
 static const luaL_Reg meta[] = {
-    {"__len", samples_length}, {"__newindex", samples_set}, {NULL, NULL}};
+    {"__len", samples_length},
+    {"__newindex", samples_set},
+    {NULL, NULL}};
 
 static void make_class(lua_State *L) {
   luaL_newmetatable(L, LBR_SAMPLES_CLASS);
   luaL_setfuncs(L, meta, 0);
   luaL_setfuncs(L, lbr_samples_math_meta, 0);
+  luaL_setfuncs(L, lbr_samples_shape_meta, 0);
   lua_newtable(L);
   luaL_setfuncs(L, methods, 0);
   luaL_setfuncs(L, lbr_samples_math_methods, 0);
+  luaL_setfuncs(L, lbr_samples_stats_methods, 0);
+  luaL_setfuncs(L, lbr_samples_shape_methods, 0);
+  luaL_setfuncs(L, lbr_samples_angle_methods, 0);
+  luaL_setfuncs(L, lbr_samples_calculus_methods, 0);
   lua_pushcclosure(L, samples_index, 1);
   lua_setfield(L, -2, "__index");
   lua_pushliteral(L, LBR_SAMPLES_CLASS);
@@ -321,6 +328,7 @@ static void make_class(lua_State *L) {
 int lbr_open_samples(lua_State *L) {
   make_class(L);
   luaL_newlib(L, functions);
+  luaL_setfuncs(L, lbr_samples_shape_functions, 0);
   lbr_open_raw(L);
   return 1;
 }

@@ -5,6 +5,7 @@
 #define LBR_BIND_SAMPLES_H
 
 #include "bind/bind.h"
+#include "samples/raw.h"
 
 #define LBR_SAMPLES_CLASS "libration.samples"
 #define LBR_RAW_CLASS "libration.raw"
@@ -36,6 +37,21 @@ void lbr_check_range(lua_State *L, int first, int last, size_t n, size_t *from,
 /* Methods that live in samples_math.c, NULL-ended, and their metamethods. */
 extern const luaL_Reg lbr_samples_math_methods[];
 extern const luaL_Reg lbr_samples_math_meta[];
+
+/* Methods that live in samples_stats.c, samples_shape.c, samples_angle.c and
+ * spectrum_calculus.c, NULL-ended. */
+extern const luaL_Reg lbr_samples_stats_methods[];
+extern const luaL_Reg lbr_samples_shape_methods[];
+extern const luaL_Reg lbr_samples_angle_methods[];
+extern const luaL_Reg lbr_samples_calculus_methods[];
+
+/* More functions and metamethods of samples_shape.c. */
+extern const luaL_Reg lbr_samples_shape_functions[];
+extern const luaL_Reg lbr_samples_shape_meta[];
+
+/* Counts codes of raw samples from argument 2 to 3 and pushes the counts, how
+ * many lie below and how many above (samples_stats.c). */
+int lbr_raw_codes(lua_State *L, const void *data, size_t n, lbr_raw_kind kind);
 
 /* Registers the raw class; its functions go into the table at the top. */
 void lbr_open_raw(lua_State *L);

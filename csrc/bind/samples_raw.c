@@ -112,6 +112,23 @@ static int raw_kind(lua_State *L) {
   return 1;
 }
 
+/***
+ * Counts how often every code occurs.
+ * @param first integer: first code counted; default the lowest of int16
+ * @param last integer: last code counted; default the highest of int16
+ * @return samples: counts, [1] is that of the first code
+ * @return integer: samples with a lower code
+ * @return integer: samples with a higher code; raises for floats
+ * @usage
+ * local r = core.samples.raw(string.pack("<i2<i2<i2", 5, 5, -7), "int16")
+ * local count, below = r:codes(0, 9)
+ * assert(count[6] == 2 and below == 1)
+ */
+static int raw_codes(lua_State *L) {
+  const raw_view *r = check_raw(L);
+  return lbr_raw_codes(L, r->data, r->n, r->kind);
+}
+
 static int raw_length(lua_State *L) {
   lua_pushinteger(L, (lua_Integer)check_raw(L)->n);
   return 1;
@@ -147,6 +164,7 @@ static const luaL_Reg functions[] = {{"raw", samples_raw}, {NULL, NULL}};
 static const luaL_Reg methods[] = {{"slice", raw_slice},
                                    {"tosamples", raw_tosamples},
                                    {"kind", raw_kind},
+                                   {"codes", raw_codes},
                                    {NULL, NULL}};
 static const luaL_Reg meta[] = {
     {"__len", raw_length}, {"__tostring", raw_tostring}, {NULL, NULL}};

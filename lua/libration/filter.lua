@@ -1,12 +1,23 @@
 --- Analog low-pass responses: what stands before a converter.
 -- A filter is a plain table of its description with methods that ask the core
 -- for its gain. It takes part wherever a filter's description is asked for.
+-- Filters for records are made by lb.filter.digital (recursive; see
+-- libration.recursive), and by lb.filter.linear, taps, decimator and resampler
+-- (see libration.linear_phase).
 
 local core = require "libration.core"
 local fields = require "libration.digitizer.fields"
+local linear_phase = require "libration.linear_phase"
 local options = require "libration.options"
+local recursive = require "libration.recursive"
 
-local M = {}
+local M = {
+  digital = recursive.new,
+  linear = linear_phase.linear,
+  taps = linear_phase.taps,
+  decimator = linear_phase.decimator,
+  resampler = linear_phase.resampler,
+}
 
 local Filter = {}
 Filter.__index = Filter
@@ -151,4 +162,5 @@ end
 
 M.Filter = Filter
 
-return M
+-- lb.filter { ... } is lb.filter.new { ... }
+return setmetatable(M, { __call = function(_, spec) return M.new(spec) end })
