@@ -27,6 +27,7 @@ void lbr_set_class(lua_State *L, const char *name, const luaL_Reg *methods,
 size_t lbr_check_count(lua_State *L, int arg, size_t least, size_t most);
 
 /* One opener per room; each pushes one table of functions. */
+int lbr_open_bands(lua_State *L);
 int lbr_open_base(lua_State *L);
 int lbr_open_filter(lua_State *L);
 int lbr_open_lines(lua_State *L);

@@ -2,6 +2,7 @@
 #include "bind/bind.h"
 
 static const luaL_Reg rooms[] = {
+    {"bands", lbr_open_bands},
     {"base", lbr_open_base},         {"filter", lbr_open_filter},
     {"lines", lbr_open_lines},       {"plan", lbr_open_plan},
     {"proof", lbr_open_proof},       {"reading", lbr_open_reading},

@@ -7,6 +7,7 @@ local M = { version = require "libration.version" }
 -- Public names and where they live: module, field (absent: the module), and
 -- modules that add methods to what it makes.
 local rooms = {
+  bands = { "libration.bands" },
   load = { "libration.load", "load" },
   digitizer = { "libration.digitizer", "digitizer" },
   demand = { "libration.demand", "demand" },
