@@ -70,25 +70,60 @@ static void take_rest(uint32_t state[8], const uint8_t *rest, size_t left,
     take_block(state, tail + b * BLOCK);
 }
 
-void lbr_sha256(const void *data, size_t n, uint8_t digest[LBR_HASH_BYTES]) {
-  const uint8_t *bytes = data;
-  uint32_t state[8];
-  size_t done = 0;
-  memcpy(state, start, sizeof state);
-  for (; n - done >= BLOCK; done += BLOCK)
-    take_block(state, bytes + done);
-  take_rest(state, n > done ? bytes + done : NULL, n - done, n);
-  for (int i = 0; i < LBR_HASH_BYTES; i++)
-    digest[i] = (uint8_t)(state[i / 4] >> (24 - 8 * (i % 4)));
+void lbr_sha256_begin(lbr_sha256_work *work) {
+  memset(work, 0, sizeof *work);
+  memcpy(work->state, start, sizeof start);
 }
 
-void lbr_sha256_text(const void *data, size_t n, char text[LBR_HASH_TEXT]) {
+void lbr_sha256_update(lbr_sha256_work *work, const void *data, size_t n) {
+  const uint8_t *bytes = data;
+  size_t kept = work->bytes % BLOCK;
+  work->bytes += n;
+  if (kept + n < BLOCK) {
+    if (n) memcpy(work->rest + kept, bytes, n);
+    return;
+  }
+  if (kept) {
+    memcpy(work->rest + kept, bytes, BLOCK - kept);
+    take_block(work->state, work->rest);
+    bytes += BLOCK - kept;
+    n -= BLOCK - kept;
+  }
+  for (; n >= BLOCK; bytes += BLOCK, n -= BLOCK) take_block(work->state, bytes);
+  if (n) memcpy(work->rest, bytes, n);
+}
+
+void lbr_sha256_finish(lbr_sha256_work *work, uint8_t digest[LBR_HASH_BYTES]) {
+  take_rest(work->state, work->rest, work->bytes % BLOCK, work->bytes);
+  for (int i = 0; i < LBR_HASH_BYTES; i++)
+    digest[i] = (uint8_t)(work->state[i / 4] >> (24 - 8 * (i % 4)));
+}
+
+void lbr_sha256(const void *data, size_t n, uint8_t digest[LBR_HASH_BYTES]) {
+  lbr_sha256_work work;
+  lbr_sha256_begin(&work);
+  lbr_sha256_update(&work, data, n);
+  lbr_sha256_finish(&work, digest);
+}
+
+static void hexadecimal(const uint8_t digest[LBR_HASH_BYTES],
+                        char text[LBR_HASH_TEXT]) {
   static const char hex[] = "0123456789abcdef";
-  uint8_t digest[LBR_HASH_BYTES];
-  lbr_sha256(data, n, digest);
   for (int i = 0; i < LBR_HASH_BYTES; i++) {
     text[2 * i] = hex[digest[i] >> 4];
     text[2 * i + 1] = hex[digest[i] & 15];
   }
   text[2 * LBR_HASH_BYTES] = '\0';
+}
+
+void lbr_sha256_finish_text(lbr_sha256_work *work, char text[LBR_HASH_TEXT]) {
+  uint8_t digest[LBR_HASH_BYTES];
+  lbr_sha256_finish(work, digest);
+  hexadecimal(digest, text);
+}
+
+void lbr_sha256_text(const void *data, size_t n, char text[LBR_HASH_TEXT]) {
+  uint8_t digest[LBR_HASH_BYTES];
+  lbr_sha256(data, n, digest);
+  hexadecimal(digest, text);
 }

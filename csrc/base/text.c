@@ -6,6 +6,8 @@
 #include <stdlib.h>
 #include <string.h>
 
+#include "base/decimal.h"
+
 #define LONGEST 400
 
 static int is_digit(char c) { return c >= '0' && c <= '9'; }
@@ -45,6 +47,8 @@ lbr_digits lbr_shortest_digits(double x) {
   lbr_digits d = {0, 1, 0};
   x = fabs(x);
   if (x == 0 || !isfinite(x))
+    return d;
+  if (lbr_digits_quickly(x, &d))
     return d;
   for (int count = x < 2.3e-308 ? 1 : 15; count <= 17; count++) {
     snprintf(text, sizeof text, "%.*e", count - 1, x);

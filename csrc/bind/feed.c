@@ -2,6 +2,7 @@
 
 #include <math.h>
 
+#include "base/hash.h"
 #include "bind/samples.h"
 
 static lbr_feed_handle *check_handle(lua_State *L) {
@@ -118,6 +119,21 @@ static double **check_blocks(lua_State *L, int arg, size_t wanted,
   return out;
 }
 
+static int refuse(lua_State *L, const lbr_feed_handle *h, lbr_status status,
+                  int64_t first) {
+  const char *why = h->feed.why ? h->feed.why(h->feed.context) : NULL;
+  lua_getiuservalue(L, 1, 1);
+  if (why) {
+    lua_pushnil(L);
+    lua_pushfstring(L, "%s: %s", lua_tostring(L, -2), why);
+    lua_pushstring(L, lbr_status_code(status));
+    return 3;
+  }
+  lua_pushfstring(L, "%s: the samples from number %I on",
+                  luaL_tolstring(L, -1, NULL), (LUAI_UACINT)(first + 1));
+  return lbr_refuse(L, status, lua_tostring(L, -1));
+}
+
 typedef lbr_status (*reader)(const lbr_feed *, int64_t, size_t, size_t,
                              const int *, double *const *);
 
@@ -132,10 +148,7 @@ static int read_with(lua_State *L, reader read) {
   lbr_status status = read(&h->feed, (int64_t)first, count, wanted, channel,
                            out);
   if (status == LBR_OK) return 1;
-  lua_getiuservalue(L, 1, 1);
-  lua_pushfstring(L, "%s: the samples from number %I on",
-                  luaL_tolstring(L, -1, NULL), (LUAI_UACINT)first + 1);
-  return lbr_refuse(L, status, lua_tostring(L, -1));
+  return refuse(L, h, status, (int64_t)first);
 }
 
 /***
@@ -180,6 +193,36 @@ static int feed_scale(lua_State *L) {
   return 0;
 }
 
+#define DIGEST_BLOCK 65536
+
+/***
+ * SHA-256 of the values of one channel, as doubles in this machine's byte
+ * order; what core.store.digest gives for the whole block.
+ * @param channel integer: from 1
+ * @return string: 64 hexadecimal digits; or nil, message, code
+ * @usage
+ * local x = core.samples.from { 1, 2 }
+ * assert(core.store.feed({ x }):digest(1) == core.store.digest(x))
+ */
+static int feed_digest(lua_State *L) {
+  lbr_feed_handle *h = check_handle(L);
+  int channel = (int)lbr_check_count(L, 2, 1, h->feed.channels) - 1;
+  double *block = lbr_push_unset_samples(L, DIGEST_BLOCK);
+  lbr_sha256_work work;
+  char text[LBR_HASH_TEXT];
+  lbr_sha256_begin(&work);
+  for (int64_t at = 0; at < h->feed.samples; at += DIGEST_BLOCK) {
+    int64_t left = h->feed.samples - at;
+    size_t n = left < DIGEST_BLOCK ? (size_t)left : DIGEST_BLOCK;
+    lbr_status status = lbr_feed_read(&h->feed, at, n, 1, &channel, &block);
+    if (status != LBR_OK) return refuse(L, h, status, at);
+    lbr_sha256_update(&work, block, n * sizeof *block);
+  }
+  lbr_sha256_finish_text(&work, text);
+  lua_pushstring(L, text);
+  return 1;
+}
+
 /***
  * Closes the feed and its file; doing so again is allowed.
  * @usage
@@ -208,7 +251,8 @@ static int feed_text(lua_State *L) {
 static const luaL_Reg methods[] = {
     {"channels", feed_channels}, {"samples", feed_samples},
     {"read", feed_read},         {"codes", feed_codes},
-    {"scale", feed_scale},       {"close", feed_close},
+    {"scale", feed_scale},       {"digest", feed_digest},
+    {"close", feed_close},
     {NULL, NULL},
 };
 
@@ -297,6 +341,47 @@ static int store_feed(lua_State *L) {
   return 1;
 }
 
-static const luaL_Reg functions[] = {{"feed", store_feed}, {NULL, NULL}};
+/***
+ * A feed over a stretch of some channels of another feed, which it keeps.
+ * @param whole feed: the other one
+ * @param first integer: its sample that becomes sample 1
+ * @param count integer: samples
+ * @param channels table: its channel numbers; nil takes all
+ * @param factors table: value = stored * factor, one per channel; nil: 1
+ * @return feed: of the stored samples and these factors
+ * @usage
+ * local x, y = core.samples.from { 1, 2, 3 }, core.samples.from { 4, 5, 6 }
+ * local part = core.store.part(core.store.feed { x, y }, 2, 2, { 2 }, { 10 })
+ * assert(part:samples() == 2 and part:read(1, 1)[1][1] == 50)
+ */
+static int store_part(lua_State *L) {
+  const lbr_feed_handle *whole = check_handle(L);
+  size_t wanted;
+  lua_settop(L, 5);
+  size_t first = lbr_check_count(L, 2, 1, (size_t)whole->feed.samples + 1);
+  size_t count = lbr_check_count(L, 3, 0, (size_t)whole->feed.samples + 1 -
+                                              first);
+  const int *channel = check_channels(L, 4, &whole->feed, &wanted);
+  lbr_part *part = lua_newuserdatauv(L, sizeof *part, 1);
+  *part = (lbr_part){&whole->feed, (int64_t)first - 1, channel};
+  lua_insert(L, -2);
+  lua_setiuservalue(L, -2, 1); /* the part keeps the numbers */
+  lua_createtable(L, 2, 0);
+  lua_insert(L, -2);
+  lua_seti(L, -2, 1);
+  lua_pushvalue(L, 1);
+  lua_seti(L, -2, 2);
+  lbr_feed_handle *h = lbr_push_feed(L);
+  lua_insert(L, -2);
+  lua_setiuservalue(L, -2, 2); /* the feed keeps part and whole */
+  h->feed = lbr_feed_part(part, wanted, (int64_t)count);
+  lua_getiuservalue(L, 1, 1);
+  lua_setiuservalue(L, -2, 1);
+  lbr_set_factors(L, lua_gettop(L), 5);
+  return 1;
+}
+
+static const luaL_Reg functions[] = {
+    {"feed", store_feed}, {"part", store_part}, {NULL, NULL}};
 
 void lbr_add_feeds(lua_State *L) { luaL_setfuncs(L, functions, 0); }

@@ -3,9 +3,11 @@
 
 #include "base/hash.h"
 #include "bind/bind.h"
+#include "bind/draft.h"
 #include "bind/feed.h"
 #include "bind/samples.h"
 #include "bind/sound.h"
+#include "bind/store_files.h"
 #include "samples/rails.h"
 #include "store/sound.h"
 #include "store/write.h"
@@ -154,5 +156,7 @@ int lbr_open_store(lua_State *L) {
   luaL_newlib(L, functions);
   lbr_add_sounds(L);
   lbr_add_feeds(L);
+  lbr_add_drafts(L);
+  lbr_add_files(L);
   return 1;
 }

@@ -16,6 +16,7 @@ lbr_status lbr_feed_codes(const lbr_feed *feed, int64_t first, size_t count,
                           double *const *out) {
   lbr_status status = check(feed, first, count, wanted, channel);
   if (status != LBR_OK || count == 0) return status;
+  if (!feed->read) return LBR_IO; /* closed under a part of it */
   return feed->read(feed->context, first, count, wanted, channel, out);
 }
 
@@ -75,4 +76,34 @@ lbr_feed lbr_feed_raw(const lbr_raw_run *run, size_t channels) {
                     .is_integer = run->kind != LBR_RAW_FLOAT32,
                     .bits = 8 * (int)lbr_raw_size(run->kind),
                     .read = read_raw};
+}
+
+#define AT_ONCE 256 /* channels asked of the whole together */
+
+static lbr_status read_part(void *context, int64_t first, size_t count,
+                            size_t wanted, const int *channel,
+                            double *const *out) {
+  const lbr_part *part = context;
+  int map[AT_ONCE];
+  for (size_t from = 0; from < wanted; from += AT_ONCE) {
+    size_t n = wanted - from < AT_ONCE ? wanted - from : AT_ONCE;
+    for (size_t k = 0; k < n; k++) map[k] = part->channel[channel[from + k]];
+    lbr_status status = lbr_feed_codes(part->whole, part->first + first, count,
+                                       n, map, out + from);
+    if (status != LBR_OK) return status;
+  }
+  return LBR_OK;
+}
+
+static const char *why_part(void *context) {
+  const lbr_feed *whole = ((const lbr_part *)context)->whole;
+  return whole->why ? whole->why(whole->context) : NULL;
+}
+
+lbr_feed lbr_feed_part(lbr_part *part, size_t channels, int64_t samples) {
+  const lbr_feed *whole = part->whole;
+  return (lbr_feed){.context = part, .channels = channels, .samples = samples,
+                    .is_parallel = whole->is_parallel,
+                    .is_integer = whole->is_integer, .bits = whole->bits,
+                    .read = read_part, .why = why_part};
 }

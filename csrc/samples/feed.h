@@ -29,6 +29,8 @@ typedef struct lbr_feed {
    * stored, into out[k][0 .. count - 1]; the range is inside the feed. */
   lbr_status (*read)(void *context, int64_t first, size_t count,
                      size_t wanted, const int *channel, double *const *out);
+  /* What failed last, in words that follow a path, or NULL; NULL: no words. */
+  const char *(*why)(void *context);
 } lbr_feed;
 
 /* Values of samples first .. first + count - 1 (from 0) of `wanted` channels
@@ -58,5 +60,16 @@ typedef struct lbr_raw_run {
 /* A feed over packed samples in memory, all of one length and kind: `run` and
  * the data must outlive the feed. */
 lbr_feed lbr_feed_raw(const lbr_raw_run *run, size_t channels);
+
+/* A stretch of some channels of another feed. */
+typedef struct lbr_part {
+  const lbr_feed *whole;
+  int64_t first;      /* its sample that is sample 0 here */
+  const int *channel; /* its channel that is channel k here */
+} lbr_part;
+
+/* A feed of the stored codes of a part: *part and what it points to must
+ * outlive the feed.  The range and the channels must exist. */
+lbr_feed lbr_feed_part(lbr_part *part, size_t channels, int64_t samples);
 
 #endif

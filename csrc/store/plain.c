@@ -1,10 +1,9 @@
 #include "store/plain.h"
 
-#include <errno.h>
 #include <string.h>
-#include <unistd.h>
 
 #include "base/workers.h"
+#include "store/file.h"
 
 #define BUFFER 65536          /* bytes read at once; stays in the cache */
 #define PART ((size_t)131072) /* frames that a thread takes at once */
@@ -30,11 +29,32 @@
       }                                                                       \
   }
 
-SPREAD(spread_u8, uint8_t, (double)x - 128.0)
+static float float_of(uint32_t bits) {
+  float x;
+  memcpy(&x, &bits, sizeof x);
+  return x;
+}
+
+static double double_of(uint64_t bits) {
+  double x;
+  memcpy(&x, &bits, sizeof x);
+  return x;
+}
+
+SPREAD(spread_i8, int8_t, (double)x)
+SPREAD(spread_u8, uint8_t, (double)x)
 SPREAD(spread_i16, int16_t, (double)x)
+SPREAD(spread_u16, uint16_t, (double)x)
 SPREAD(spread_i32, int32_t, (double)x)
+SPREAD(spread_u32, uint32_t, (double)x)
 SPREAD(spread_f32, float, (double)x)
 SPREAD(spread_f64, double, x)
+SPREAD(spread_i16_big, uint16_t, (double)(int16_t)__builtin_bswap16(x))
+SPREAD(spread_u16_big, uint16_t, (double)__builtin_bswap16(x))
+SPREAD(spread_i32_big, uint32_t, (double)(int32_t)__builtin_bswap32(x))
+SPREAD(spread_u32_big, uint32_t, (double)__builtin_bswap32(x))
+SPREAD(spread_f32_big, uint32_t, (double)float_of(__builtin_bswap32(x)))
+SPREAD(spread_f64_big, uint64_t, double_of(__builtin_bswap64(x)))
 
 HOT static void spread_i24(double *restrict to, const unsigned char *from,
                            size_t step, size_t n) {
@@ -48,40 +68,42 @@ HOT static void spread_i24(double *restrict to, const unsigned char *from,
 typedef void (*spreader)(double *restrict, const unsigned char *, size_t,
                          size_t);
 
-static spreader spreader_of(const lbr_plain *p) {
-  switch (p->bits) {
-    case 8: return p->is_integer ? spread_u8 : NULL;
-    case 16: return p->is_integer ? spread_i16 : NULL;
-    case 24: return p->is_integer ? spread_i24 : NULL;
-    case 32: return p->is_integer ? spread_i32 : spread_f32;
-    case 64: return p->is_integer ? NULL : spread_f64;
-    default: return NULL;
-  }
+static const struct {
+  int bits;
+  bool is_integer, is_unsigned;
+  spreader little, big;
+} codings[] = {
+    {8, true, false, spread_i8, spread_i8},
+    {8, true, true, spread_u8, spread_u8},
+    {16, true, false, spread_i16, spread_i16_big},
+    {16, true, true, spread_u16, spread_u16_big},
+    {24, true, false, spread_i24, NULL},
+    {32, true, false, spread_i32, spread_i32_big},
+    {32, true, true, spread_u32, spread_u32_big},
+    {32, false, false, spread_f32, spread_f32_big},
+    {64, false, false, spread_f64, spread_f64_big},
+};
+
+static spreader spreader_of(const lbr_coding *c) {
+  for (size_t i = 0; i < sizeof codings / sizeof *codings; i++)
+    if (codings[i].bits == c->bits && codings[i].is_integer == c->is_integer &&
+        codings[i].is_unsigned == c->is_unsigned)
+      return c->is_big ? codings[i].big : codings[i].little;
+  return NULL;
 }
 
-static size_t frame_bytes(const lbr_plain *p) {
-  return p->channels * (size_t)p->bits / 8;
+static size_t sample_bytes(const lbr_plain *p) {
+  return (size_t)p->coding.bits / 8;
 }
 
 bool lbr_plain_can(const lbr_plain *p) {
 #if __BYTE_ORDER__ == __ORDER_LITTLE_ENDIAN__
-  return p->data_at > 0 && spreader_of(p) && frame_bytes(p) <= BUFFER;
+  return p->channels > 0 && spreader_of(&p->coding) && p->step <= BUFFER &&
+         p->channels <= p->step / sample_bytes(p);
 #else
   (void)p;
   return false;
 #endif
-}
-
-static bool read_all(int fd, int64_t at, unsigned char *to, size_t n) {
-  while (n > 0) {
-    ssize_t got = pread(fd, to, n, (off_t)at);
-    if (got < 0 && errno == EINTR) continue;
-    if (got <= 0) return false;
-    to += got;
-    at += got;
-    n -= (size_t)got;
-  }
-  return true;
 }
 
 /* One call's work, handed out in parts. */
@@ -93,23 +115,33 @@ typedef struct job {
   double *const *out;
 } job;
 
+static void spread_block(const job *j, size_t at, size_t n,
+                         const unsigned char *buffer) {
+  spreader spread = spreader_of(&j->plain->coding);
+  double zero = j->plain->coding.zero;
+  for (size_t k = 0; k < j->wanted; k++) {
+    double *to = j->out[k] + at;
+    size_t offset = (size_t)j->channel[k] * sample_bytes(j->plain);
+    spread(to, buffer + offset, j->plain->step, n);
+    if (zero != 0.0)
+      for (size_t i = 0; i < n; i++) to[i] -= zero;
+  }
+}
+
 static lbr_status read_part(void *context, size_t task, unsigned worker) {
   const job *j = context;
   unsigned char buffer[BUFFER];
-  spreader spread = spreader_of(j->plain);
-  size_t step = frame_bytes(j->plain), block = BUFFER / step;
+  size_t step = j->plain->step, block = BUFFER / step;
+  size_t frame = j->plain->channels * sample_bytes(j->plain);
   size_t end = j->count - task * PART < PART ? j->count : (task + 1) * PART;
   (void)worker;
   for (size_t at = task * PART; at < end; at += block) {
     size_t n = end - at < block ? end - at : block;
-    int64_t frame = j->first + (int64_t)at;
-    if (!read_all(j->plain->fd, j->plain->data_at + frame * (int64_t)step,
-                  buffer, n * step))
-      return LBR_FORMAT;
-    for (size_t k = 0; k < j->wanted; k++) {
-      size_t offset = (size_t)j->channel[k] * (size_t)j->plain->bits / 8;
-      spread(j->out[k] + at, buffer + offset, step, n);
-    }
+    int64_t from = j->plain->data_at + (j->first + (int64_t)at) * (int64_t)step;
+    lbr_status status = lbr_file_read(j->plain->fd, from, buffer,
+                                      (n - 1) * step + frame);
+    if (status != LBR_OK) return status;
+    spread_block(j, at, n, buffer);
   }
   return LBR_OK;
 }

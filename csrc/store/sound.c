@@ -133,8 +133,11 @@ static lbr_status try_last_frame(lbr_sound *s, lbr_why *why) {
 /* Samples are read in place only where both readings of the headers agree. */
 static void find_plain(lbr_sound *s, int fd, const lbr_layout *layout) {
   const lbr_sound_facts *f = &s->facts;
-  lbr_plain plain = {fd, layout->data_at, (size_t)f->channels, f->bits,
-                     f->is_integer};
+  bool excess = f->is_integer && f->bits == 8;
+  lbr_plain plain = {fd, layout->data_at, (size_t)f->channels,
+                     (size_t)layout->frame_bytes,
+                     {f->bits, f->is_integer, excess, false,
+                      excess ? 128.0 : 0.0}};
   bool agree = layout->frame_bytes == (int64_t)f->channels * f->bits / 8 &&
                layout->frame_bytes > 0 &&
                layout->data_bytes / layout->frame_bytes == f->frames;
@@ -238,7 +241,7 @@ lbr_status lbr_sound_read(lbr_sound *s, size_t count, size_t wanted,
   if (count > (uint64_t)(s->facts.frames - s->at))
     return lbr_because(why, LBR_DOMAIN, "has %lld frames from here, not %zu",
                        (long long)(s->facts.frames - s->at), count);
-  if (s->plain.data_at == 0)
+  if (s->plain.channels == 0)
     return read_decoded(s, count, wanted, channel, out, why);
   if (lbr_plain_read(&s->plain, s->at, count, wanted, channel, out) != LBR_OK)
     return damaged(s, count, why);
@@ -250,7 +253,7 @@ lbr_status lbr_sound_seek(lbr_sound *s, int64_t frame, lbr_why *why) {
   if (frame < 0 || frame > s->facts.frames)
     return lbr_because(why, LBR_DOMAIN, "has frames 0 to %lld, not %lld",
                        (long long)s->facts.frames, (long long)frame);
-  if (s->plain.data_at == 0 && frame != s->at &&
+  if (s->plain.channels == 0 && frame != s->at &&
       sf_seek(s->file, frame, SEEK_SET) != frame)
     return lbr_because(why, LBR_FORMAT, "cannot be wound to frame %lld",
                        (long long)frame);
@@ -276,7 +279,7 @@ static lbr_status feed_decoded(void *context, int64_t first, size_t count,
 }
 
 lbr_feed lbr_sound_feed(lbr_sound *s) {
-  bool plain = s->plain.data_at != 0;
+  bool plain = s->plain.channels != 0;
   return (lbr_feed){.context = s, .channels = (size_t)s->facts.channels,
                     .samples = s->facts.frames, .is_parallel = plain,
                     .is_integer = s->facts.is_integer, .bits = s->facts.bits,

@@ -1,28 +1,20 @@
 #include "store/write.h"
 
-#include <errno.h>
-#include <fcntl.h>
 #include <float.h>
-#include <limits.h>
 #include <math.h>
 #include <sndfile.h>
-#include <stdio.h>
 #include <stdlib.h>
-#include <string.h>
-#include <unistd.h>
 
 #include "base/checked.h"
+#include "store/draft.h"
 #include "store/sound.h"
 
 #define BLOCK_SAMPLES 16384
-#define MOST_TRIES 100
 #define WAV_BYTES 4294900000u /* most sample bytes of a plain WAV */
 
 /* A file being written; released in reverse order. */
 typedef struct draft {
-  char *name; /* of the temporary file */
-  int fd;
-  bool exists; /* the temporary file is there to be removed */
+  lbr_draft *draft;
   SNDFILE *file;
   void *block;
 } draft;
@@ -79,26 +71,6 @@ static lbr_status check_samples(const lbr_write_spec *spec, size_t frames,
   return LBR_OK;
 }
 
-/* Only a file may be replaced: never a device, a directory or a link. */
-static lbr_status check_target(const char *path, lbr_why *why) {
-  struct stat facts;
-  if (lstat(path, &facts) == 0) return lbr_regular(&facts, why);
-  return errno == ENOENT ? LBR_OK : lbr_because_errno(why, errno);
-}
-
-static lbr_status open_draft(const char *path, draft *d, lbr_why *why) {
-  size_t room = strlen(path) + 48;
-  d->name = lbr_alloc(room, 1);
-  if (!d->name) return lbr_because(why, LBR_NO_MEMORY, "does not fit memory");
-  for (int i = 0; i < MOST_TRIES; i++) {
-    snprintf(d->name, room, "%s.%ld-%d.part", path, (long)getpid(), i);
-    d->fd = open(d->name, O_RDWR | O_CREAT | O_EXCL | O_CLOEXEC, 0666);
-    d->exists = d->fd >= 0;
-    if (d->exists || errno != EEXIST) break;
-  }
-  return d->exists ? LBR_OK : lbr_because_errno(why, errno);
-}
-
 static lbr_status open_sound(draft *d, const lbr_write_spec *spec,
                              size_t frames, lbr_why *why) {
   double bytes = (double)frames * (double)spec->channels * spec->bits / 8.0;
@@ -107,7 +79,7 @@ static lbr_status open_sound(draft *d, const lbr_write_spec *spec,
   info.format = (bytes > WAV_BYTES ? SF_FORMAT_RF64 : plain) | coding(spec);
   d->block = lbr_alloc(BLOCK_SAMPLES, sizeof(double));
   if (!d->block) return lbr_because(why, LBR_NO_MEMORY, "does not fit memory");
-  d->file = sf_open_fd(d->fd, SFM_WRITE, &info, SF_FALSE);
+  d->file = sf_open_fd(lbr_draft_fd(d->draft), SFM_WRITE, &info, SF_FALSE);
   if (!d->file)
     return lbr_because(why, LBR_IO, "cannot be written (%s)",
                        sf_strerror(NULL));
@@ -154,52 +126,30 @@ static lbr_status fill(draft *d, const lbr_write_spec *spec, size_t frames,
   return LBR_OK;
 }
 
-/* The directory's entry must reach the disk too; a file system that cannot do
- * that for a directory says EINVAL, which is no failure of ours. */
-static lbr_status sync_directory(const char *path, lbr_why *why) {
-  char name[PATH_MAX];
-  const char *slash = strrchr(path, '/');
-  size_t n = slash ? (size_t)(slash - path) : 0;
-  if (n >= sizeof name) return lbr_because_errno(why, ENAMETOOLONG);
-  memcpy(name, path, n);
-  name[n] = '\0';
-  const char *directory = !slash ? "." : n ? name : "/";
-  int fd = open(directory, O_RDONLY | O_DIRECTORY | O_CLOEXEC);
-  if (fd < 0) return LBR_OK; /* writable but not readable: nothing to be had */
-  int number = fsync(fd) == 0 || errno == EINVAL ? 0 : errno;
-  close(fd);
-  return number ? lbr_because_errno(why, number) : LBR_OK;
-}
-
-static lbr_status finish(draft *d, const char *path, lbr_why *why) {
+/* The library buffers; what it could not write shows when it closes. */
+static lbr_status finish(draft *d, lbr_why *why) {
   int failed = sf_close(d->file);
   d->file = NULL;
   if (failed) return lbr_because(why, LBR_IO, "cannot be finished");
-  if (fsync(d->fd) != 0) return lbr_because_errno(why, errno);
-  if (rename(d->name, path) != 0) return lbr_because_errno(why, errno);
-  d->exists = false;
-  return sync_directory(path, why);
+  return lbr_draft_finish(d->draft, why);
 }
 
 static void discard(draft *d) {
   if (d->file) sf_close(d->file);
-  if (d->fd >= 0) close(d->fd);
-  if (d->exists) unlink(d->name);
+  lbr_draft_drop(d->draft);
   free(d->block);
-  free(d->name);
 }
 
 lbr_status lbr_sound_write(const char *path, const lbr_write_spec *spec,
                            size_t frames, const double *const *channel,
                            lbr_why *why) {
-  draft d = {.fd = -1};
+  draft d = {0};
   lbr_status status = check_spec(spec, why);
   if (status == LBR_OK) status = check_samples(spec, frames, channel, why);
-  if (status == LBR_OK) status = check_target(path, why);
-  if (status == LBR_OK) status = open_draft(path, &d, why);
+  if (status == LBR_OK) status = lbr_draft_open(path, &d.draft, why);
   if (status == LBR_OK) status = open_sound(&d, spec, frames, why);
   if (status == LBR_OK) status = fill(&d, spec, frames, channel, why);
-  if (status == LBR_OK) status = finish(&d, path, why);
+  if (status == LBR_OK) status = finish(&d, why);
   discard(&d);
   return status;
 }

@@ -1,16 +1,22 @@
 --- Records: what a digitizer delivered, with all that gives the numbers meaning.
 -- A record holds one or more channels of equal length at one exact sample rate.
--- Each channel keeps the samples as they were stored (integer codes where the
--- file has integers) and the factor that makes them values of its unit, so that
--- nothing is lost on the way. A record is treated as immutable.
+-- Its samples stay as they were stored (integer codes where there are integers),
+-- in memory or in their file, and a factor makes them values of the channel's
+-- unit on their way out, so that nothing is lost on the way. A record knows when
+-- it started, and where the converter lost samples. It is treated as immutable.
 
 local core = require "libration.core"
+local formats = require "libration.record.formats"
 local fraction = require "libration.fraction"
-local units = require "libration.units"
+local given = require "libration.record.options"
+local making = require "libration.record.making"
+local opening = require "libration.record.opening"
+local time = require "libration.record.time"
 
 local M = {}
 
 local store = core.store
+local fail, check_options, set = given.fail, given.check, given.set
 
 local Record = {}
 Record.__index = Record
@@ -19,278 +25,163 @@ Record.__name = "libration.record"
 --- The methods of every record; other modules add to it.
 M.Record = Record
 
-local function fail(level, text, ...)
-  error("record: " .. text:format(...), level + 1)
-end
-
--- Strict options: an unknown field is an error that lists the valid ones.
-local function check_options(options, valid, level)
-  if type(options) ~= "table" then
-    fail(level + 1, "the options are a table, not %s", type(options))
-  end
-  for key in pairs(options) do
-    if not valid[key] then
-      local names = {}
-      for name in pairs(valid) do names[#names + 1] = name end
-      table.sort(names)
-      fail(level + 1, "unknown field %s; valid are %s", tostring(key), table.concat(names, ", "))
-    end
-  end
-end
-
-local function set(text)
-  local out = {}
-  for word in text:gmatch("%S+") do out[word] = true end
-  return out
-end
-
-local read_fields = set "channel unit sensitivity range full_scale name rate first count"
+local read_fields = set [[channel unit sensitivity range full_scale name rate first count format
+  start]]
 local new_fields = set [[rate title channels samples codes unit sensitivity range full_scale bits
-  name]]
+  name start gaps metadata]]
 local channel_fields = set "samples codes unit sensitivity range full_scale bits name"
-local write_fields = set "bits float"
+local part_fields = set "first count"
+local block_fields = set "channel samples"
 
--- A quantity in a unit, above zero; nil stays nil.
-local function positive(options, field, unit, level)
-  local value = options[field]
-  if value == nil then
-    return nil
-  end
-  local number, reason = units.number(value, unit)
-  if not number then
-    fail(level + 1, "%s: %s", field, reason)
-  elseif not (number > 0 and number < math.huge) then
-    fail(level + 1, "%s is %s; it must be positive", field, tostring(value))
-  end
-  return number
+local function made(record)
+  return setmetatable(making.finish(record), Record)
 end
 
--- How a channel is calibrated: its unit, and the value of that unit at full scale.
-local function calibration(options, level)
-  local out = { unit = options.unit, full_scale = nil, sensitivity = nil, range = nil }
-  if out.unit ~= nil and type(out.unit) ~= "string" then
-    fail(level + 1, "unit is %s; it must be a text such as \"m/s^2\"", tostring(out.unit))
+local function checked(options, level)
+  options = options or {}
+  check_options(options, read_fields, level + 1)
+  given.count(options.first, "first", 1, level + 1)
+  given.count(options.count, "count", 1, level + 1)
+  given.calibration(given.pick(options, 1, { "unit", "sensitivity", "range", "full_scale" }),
+    level + 1)
+  local row, reason
+  if options.format ~= nil then
+    row, reason = formats.named(options.format)
+    if not row then fail(level + 1, "%s", reason) end
   end
-  out.range = positive(options, "range", "V", level + 1)
-  local named = out.unit or "V"
-  local per = named:find("^%a+$") and named or "(" .. named .. ")"
-  out.sensitivity = positive(options, "sensitivity", "V/" .. per, level + 1)
-  out.full_scale = positive(options, "full_scale", named, level + 1)
-  if out.full_scale and (out.range or out.sensitivity) then
-    fail(level + 1, "give full_scale, or range and sensitivity, but not both")
-  elseif out.sensitivity and not out.range then
-    fail(level + 1, "sensitivity needs range, the volts at full scale")
-  elseif out.range and not out.sensitivity and out.unit and out.unit ~= "V" then
-    fail(level + 1, "range is in V; sensitivity must say how many V a %s is", out.unit)
-  end
-  if out.range then
-    out.full_scale = out.range / (out.sensitivity or 1)
-    out.unit = named
-  end
-  return out
-end
-
-local function exact_rate(value, level)
-  local rate, reason = units.rate(value)
-  if not rate then
-    fail(level + 1, "rate: %s", reason)
-  elseif rate <= 0 then
-    fail(level + 1, "rate is %s; it must be positive", tostring(value))
-  end
-  return rate
-end
-
--- Option k of a field that may be one value for all or a list, one each.
-local function pick(options, k, fields)
-  local out = {}
-  for _, field in ipairs(fields) do
-    local value = options[field]
-    if type(value) == "table" then value = value[k] end
-    out[field] = value
-  end
-  return out
-end
-
-local function finish(record)
-  record.samples = #record.channels[1].data
-  return setmetatable(record, Record)
-end
-
--- Channel numbers asked for, checked for kind only.
-local function wanted_channels(channel, level)
-  local list = type(channel) == "table" and channel or { channel }
-  for _, number in ipairs(list) do
-    if math.type(number) ~= "integer" then
-      fail(level + 1, "channel is %s; it must be a number from 1 or a list of such",
-        tostring(number))
-    end
-  end
-  return channel ~= nil and list or nil
-end
-
-local function check_count(value, field, least, level)
-  if value ~= nil and (math.type(value) ~= "integer" or value < least) then
-    fail(level + 1, "%s is %s; it must be an integer from %d", field, tostring(value), least)
-  end
-end
-
-local function refuse(path, text, ...)
-  return nil, path .. ": " .. text:format(...), "domain"
-end
-
--- One channel of a file as a channel of a record; nil where its integer codes
--- were given a unit but nothing that says how much of it they are.
-local function file_channel(facts, data, number, options)
-  local c = calibration(options, 5)
-  local full_scale = c.full_scale or not c.unit and 1 or nil
-  if not full_scale and facts.integer then
-    return nil
-  end
-  return {
-    data = data, number = number, name = options.name or ("channel %d"):format(number),
-    bits = facts.integer and facts.bits or nil, integer = facts.integer, lossy = facts.lossy,
-    full_scale = full_scale, factor = full_scale and full_scale / facts.full_scale or 1,
-    unit = c.unit or "FS", sensitivity = c.sensitivity, range = c.range,
+  return options, {
+    row = row, list = given.channels(options.channel, level + 1),
+    rate = options.rate ~= nil and given.rate(options.rate, level + 1) or nil,
+    start_ns = given.moment(options.start, "start", level + 1),
   }
 end
 
--- The rate in the header is whole; an exact one must round to it.
-local function file_rate(path, facts, rate)
-  if rate and math.abs(rate:number() - facts.rate) >= 1 then
-    return refuse(path, "states %d S/s; the rate given, %s S/s, is another", facts.rate,
-      tostring(rate))
+--- Opens a file as a record whose samples stay in the file.
+-- Only what is asked for is read, in blocks, so that a record may be larger than memory. The kind
+-- of file is found from what it holds, never from its name; options and refusals are those of
+-- lb.record.read. A file that turns out to be damaged raises where its samples are used.
+-- @param path string: the file
+-- @param options table: as for lb.record.read
+-- @return table: the record; or nil, message, code
+-- @usage
+-- local path = os.tmpname()
+-- assert(lb.record.new { rate = 8000, samples = { 1, 2, 3 }, unit = "V" }:write(path,
+--   { format = "csv" }))
+-- local record = assert(lb.record.open(path))
+-- assert(record.samples == 3 and record.channels[1].unit == "V")
+-- assert(record:values()[3] == 3)
+-- os.remove(path)
+function M.open(path, options)
+  local asked
+  options, asked = checked(options, 2)
+  local record, message, code = opening.open(path, options, asked)
+  if not record then
+    return nil, message, code
   end
-  return rate or fraction.new(facts.rate)
+  return made(record)
 end
 
-local function read_open(sound, path, options, list, rate)
-  local facts = sound:facts()
-  local first = options.first or 1
-  local count = options.count or facts.frames - first + 1
-  if facts.frames == 0 then
-    return nil, path .. ": holds no samples", "format"
-  elseif first > facts.frames or count > facts.frames - first + 1 then
-    return refuse(path, "has %d samples; %d from number %d are not there", facts.frames,
-      math.max(count, 1), first)
-  end
-  for _, number in ipairs(list or {}) do
-    if number < 1 or number > facts.channels then
-      return refuse(path, "has channels 1 to %d, not %d", facts.channels, number)
-    end
-  end
-  local message, code
-  rate, message, code = file_rate(path, facts, rate)
-  if not rate then return nil, message, code end
-  local done
-  done, message, code = sound:seek(first - 1)
-  if not done then return nil, message, code end
-  local blocks
-  blocks, message, code = sound:read(count, list)
-  if not blocks then return nil, message, code end
-  local record = { rate = rate, path = path, container = facts.container, first = first,
-                   channels = {} }
-  for k, data in ipairs(blocks) do
-    record.channels[k] = file_channel(facts, data, list and list[k] or k,
-      pick(options, k, { "unit", "sensitivity", "range", "full_scale", "name" }))
-    if not record.channels[k] then
-      return refuse(path, "holds integer codes: a unit needs full_scale, or range and sensitivity")
-    end
-  end
-  return finish(record)
-end
-
---- Reads a sound file (WAV, RF64, Wave64, FLAC, Ogg Vorbis) as a record.
--- Samples stay in the stored codes. Calibration is never guessed: without unit the values are
--- shares of full scale ("FS"); a unit needs full_scale, or range and sensitivity (a range alone
--- gives V); only for a float file a unit alone says that its values are in that unit. Calibration
--- options are one value for all channels, or a list with one per channel read.
+--- Reads a file as a record in memory: WAV, RF64, Wave64, FLAC, Ogg Vorbis, CSV and more (see
+-- lb.record.formats).
+-- Samples stay in the stored codes. Calibration is never guessed: where the file says nothing, the
+-- values of a sound file are shares of full scale ("FS"), and a unit needs full_scale, or range
+-- and sensitivity (a range alone gives V); only for floats a unit alone says that the values are
+-- in that unit. Calibration options are one value for all channels, or a list with one per
+-- channel read.
 -- @param path string: the file
 -- @param options table: channel (number from 1 or a list; nil: all), unit, sensitivity (V per
 --   unit), range (V at full scale), full_scale (unit at full scale), name, rate (exact S/s, where
---   the header's whole number is rounded), first (sample number from 1, default 1), count
---   (default: all that follow)
+--   the file has none or rounds it), first (sample number from 1, default 1), count
+--   (default: all that follow), format (a name; nil: by what the file holds), start (ISO 8601
+--   text or integer nanoseconds since 1970, of the file's first sample)
 -- @return table: the record; or nil, message, code ("io", "format", "domain") when the file is
 --   refused: missing, damaged, shorter than it claims, or without what was asked for
 -- @usage
 -- local record, message, code = lb.record.read "no such file.wav"
 -- assert(record == nil and code == "io" and message:find "no such file.wav")
 function M.read(path, options)
-  options = options or {}
-  check_options(options, read_fields, 2)
-  check_count(options.first, "first", 1, 2)
-  check_count(options.count, "count", 1, 2)
-  local list = wanted_channels(options.channel, 2)
-  local rate = options.rate ~= nil and exact_rate(options.rate, 2) or nil
-  calibration(pick(options, 1, { "unit", "sensitivity", "range", "full_scale" }), 2)
-  local sound <close>, message, code = store.open(path)
-  if not sound then
+  local asked
+  options, asked = checked(options, 2)
+  local record, message, code = opening.open(path, options, asked)
+  if not record then
     return nil, message, code
   end
-  return read_open(sound, path, options, list, rate)
+  local blocks
+  blocks, message, code = record.source:codes(1, record.source:samples())
+  if not blocks then
+    return nil, message, code
+  end
+  record.file:close()
+  record.file = nil
+  record.source = store.feed(blocks, making.factors(record))
+  for k, channel in ipairs(record.channels) do channel.data = blocks[k] end
+  return made(record)
 end
 
--- The samples of a channel given by hand: a block, or a list of numbers.
-local function block_of(channel, k, level)
-  local given = channel.samples or channel.codes
-  if (channel.samples == nil) == (channel.codes == nil) then
-    fail(level + 1, "channel %d needs samples or codes, one of them", k)
+--- The formats that records are read from and written to.
+-- @return table: list of { name, title, suffixes, writes = boolean }
+-- @usage
+-- assert(lb.record.formats()[1].name == "wav")
+function M.formats()
+  local out = {}
+  for i, row in ipairs(formats) do
+    out[i] = { name = row.name, title = row.title, suffixes = { table.unpack(row.suffixes) },
+               writes = row.write ~= nil }
   end
-  local ok, block = true, given
-  if type(given) == "table" then ok, block = pcall(core.samples.from, given) end
-  if not ok or not core.samples.is(block) then
-    fail(level + 1, "the samples of channel %d are %s; give a block or a list of numbers", k,
-      ok and type(given) or "a list with " .. tostring(block))
-  elseif #block == 0 then
-    fail(level + 1, "channel %d holds no samples", k)
-  end
-  return block
+  return out
 end
 
--- Codes have bits and a full scale; samples are values and may have them.
-local function new_channel(given, k, level)
-  local c = calibration(given, level + 1)
-  local bits = given.bits
-  if bits ~= nil and (math.type(bits) ~= "integer" or bits < 2 or bits > 32) then
-    fail(level + 1, "bits is %s; it must be an integer from 2 to 32", tostring(bits))
-  elseif given.codes ~= nil and not (bits and c.full_scale) then
-    fail(level + 1, "codes need bits and full_scale, or range and sensitivity")
-  end
-  local codes = given.codes ~= nil
-  return {
-    data = block_of(given, k, level + 1), number = k, name = given.name or ("channel %d"):format(k),
-    bits = bits, integer = codes, lossy = false, full_scale = c.full_scale,
-    factor = codes and c.full_scale / 2 ^ (bits - 1) or 1,
-    unit = c.unit or "1", sensitivity = c.sensitivity, range = c.range,
-  }
+--- Reads a moment as integer nanoseconds since 1970-01-01T00:00:00Z.
+-- @param text string: ISO 8601, "2026-03-01T12:00:00.25Z"; a zone is needed, at most 9 decimals
+-- @return integer: nanoseconds; or nil and a reason
+-- @usage
+-- assert(lb.record.moment "1970-01-01T00:00:01Z" == 1000000000)
+function M.moment(text)
+  return time.read(text)
+end
+
+--- Writes a moment as ISO 8601 text in UTC.
+-- @param ns integer: nanoseconds since 1970-01-01T00:00:00Z
+-- @return string: reads back as the same integer
+-- @usage
+-- assert(lb.record.moment_text(1500000000) == "1970-01-01T00:00:01.5Z")
+function M.moment_text(ns)
+  return time.text(ns)
 end
 
 --- Makes a record from samples that are already here.
--- @param spec table: rate (exact, S/s), title, and either channels, a list of tables, or the
+-- @param spec table: rate (exact, S/s), title, start (ISO 8601 text or integer nanoseconds since
+--   1970), gaps (list of { after = sample number, lost = samples that are missing behind it }),
+--   metadata (plain table), and either channels, a list of tables, or the
 --   fields of a single channel: samples (a block or list of values in the unit) or codes
---   (integer codes), unit (default "1"), name, full_scale (unit at full scale) or range (V) and
---   sensitivity (V per unit), bits (needed for codes)
+--   (integer codes: a block, a list, or raw samples), unit (default "1"), name, full_scale (unit
+--   at full scale) or range (V) and sensitivity (V per unit), bits (needed for codes)
 -- @return table: the record
 -- @usage
 -- local record = lb.record.new { rate = 51200, samples = { 0, 0.5, -0.5 }, unit = "m/s^2" }
 -- assert(record.samples == 3 and tostring(record.rate) == "51200")
 function M.new(spec)
   check_options(spec, new_fields, 2)
-  local given = spec.channels or { {} }
-  if type(given) ~= "table" or #given == 0 then
+  local list = spec.channels or { {} }
+  if type(list) ~= "table" or #list == 0 then
     fail(2, "channels is %s; it must be a list of channels", tostring(spec.channels))
   elseif not spec.channels then
-    for field in pairs(channel_fields) do given[1][field] = spec[field] end
+    for field in pairs(channel_fields) do list[1][field] = spec[field] end
   end
-  local record = { rate = exact_rate(spec.rate, 2), title = spec.title, channels = {} }
-  for k, channel in ipairs(given) do
+  local record = { rate = given.rate(spec.rate, 2), title = spec.title, channels = {},
+                   start_ns = given.moment(spec.start, "start", 2), metadata = spec.metadata or {} }
+  local blocks = {}
+  for k, channel in ipairs(list) do
     check_options(channel, channel_fields, 2)
-    record.channels[k] = new_channel(channel, k, 2)
-    if #record.channels[k].data ~= #record.channels[1].data then
+    record.channels[k], blocks[k] = making.channel(channel, k, 2)
+    if #blocks[k] ~= #blocks[1] then
       fail(2, "channel %d has %d samples, channel 1 has %d; they must be equal", k,
-        #record.channels[k].data, #record.channels[1].data)
+        #blocks[k], #blocks[1])
     end
   end
-  return finish(record)
+  record.source = making.memory(blocks, making.factors(record))
+  record.segments = given.segments(spec.gaps, #blocks[1], 2)
+  return made(record)
 end
 
 --- Tells whether a value is a record.
@@ -327,7 +218,11 @@ end
 -- assert(rails.least == -10 and rails.most == 5 and r.channels[1].unit == "V")
 function Record:values(k)
   local channel = channel_of(self, k)
-  return channel.factor == 1 and channel.data or channel.data * channel.factor
+  if channel.factor == 1 or rawget(channel, "data") then
+    return channel.factor == 1 and channel.data or channel.data * channel.factor
+  end
+  local blocks, message = self.source:read(1, self.samples, { channel.place })
+  return blocks and blocks[1] or error(message, 2)
 end
 
 -- Where the rails of a channel's stored samples stand; half a code inwards, so
@@ -361,8 +256,9 @@ function Record:rails(k)
   return out
 end
 
---- What the record contains, as a hash: rate, length, units, and every sample.
--- Names, paths and titles do not take part.
+--- What the record contains, as a hash: rate, length, gaps, units, and the value of every sample.
+-- Names, paths, titles and moments do not take part, nor how the values were stored. Reads in
+-- blocks; a damaged file raises.
 -- @return string: 64 hexadecimal digits (SHA-256)
 -- @usage
 -- local a = lb.record.new { rate = 8000, samples = { 1, 2 } }
@@ -370,67 +266,173 @@ end
 -- assert(a:identity() == b:identity() and #a:identity() == 64)
 function Record:identity()
   local parts = { "record", tostring(self.rate), tostring(self.samples) }
-  for _, channel in ipairs(self.channels) do
-    parts[#parts + 1] = ("%s %a %s"):format(channel.unit, channel.factor,
-      store.digest(channel.data))
+  for _, segment in ipairs(#self.segments > 1 and self.segments or {}) do
+    parts[#parts + 1] = ("segment %d %d"):format(segment.first, segment.counter)
+  end
+  for k, channel in ipairs(self.channels) do
+    local digest, message = self.source:digest(k)
+    if not digest then
+      error(message, 2)
+    end
+    parts[#parts + 1] = channel.unit .. " " .. digest
   end
   return core.base.sha256(table.concat(parts, "\n"))
 end
 
--- How to write: integers in the bits asked for or stored, else 64-bit floats.
-local function write_spec(record, options, level)
-  local first = record.channels[1]
-  local bits, float = options.bits, options.float
-  if float == nil then float = bits == nil and not first.integer end
-  if bits == nil then bits = float and 64 or first.bits end
-  local valid = float and { [32] = true, [64] = true }
-    or { [8] = true, [16] = true, [24] = true, [32] = true }
-  if not valid[bits] then
-    fail(level + 1, "bits is %s; WAV holds integers of 8, 16, 24, 32 and floats of 32, 64",
-      tostring(bits))
-  end
-  return { rate = record.rate.numerator, bits = bits, integer = not float, scale = 1 }
-end
-
--- What one stored sample is multiplied by: up to full scale where it is known.
-local function stored_factor(channel, spec, level)
-  if not channel.full_scale then
-    if spec.integer then
-      fail(level + 1, "the full scale of %s is not known; write floats", channel.name)
-    end
-    return channel.factor
-  end
-  return channel.factor / channel.full_scale * (spec.integer and 2 ^ (spec.bits - 1) or 1)
-end
-
---- Writes the record as a WAV file, whole or not at all.
--- Integer codes are shares of full scale; floats too where the full scale is known (1 is full
--- scale), else they are the values. Nothing is clipped.
+--- Writes the record as a file, whole or not at all.
+-- Nothing is clipped or rounded without a word. WAV: integer codes are shares of full scale;
+-- floats too where the full scale is known (1 is full scale), else they are the values. Formats
+-- that cannot hold a gap, an exact rate or a unit refuse or say so (see lb.record.formats).
 -- @param path string: the file; an existing one is replaced
--- @param options table: bits (8, 16, 24, 32; floats 32, 64), float (true: floats); default: what
---   the record holds, else 64-bit floats
+-- @param options table: format (a name; nil: by the ending of the path, else WAV), and for WAV bits
+--   (8, 16, 24, 32; floats 32, 64) and float (true: floats), default: what the record holds, else
+--   64-bit floats; for CSV separator
 -- @return boolean: true; or nil, message, code ("domain": a sample beyond full scale, or a rate
---   that is no whole number; "io")
+--   that the format cannot hold; "io")
 -- @usage
 -- local r = lb.record.new { rate = "8000.5 S/s", samples = { 0 } }
 -- local done, message, code = r:write "never.wav"
 -- assert(not done and code == "domain" and message:find "8000.5")
 function Record:write(path, options)
   options = options or {}
-  check_options(options, write_fields, 2)
-  local spec = write_spec(self, options, 2)
-  if self.rate.denominator ~= 1 then
-    return refuse(path, "the rate, %s S/s, is not whole, and WAV holds no other",
-      fraction.text(self.rate))
-  elseif self.rate.numerator > 0x7fffffff then
-    return refuse(path, "the rate, %s S/s, is more than WAV holds", fraction.text(self.rate))
+  if type(options) ~= "table" then
+    fail(2, "the options are a table, not %s", type(options))
   end
-  local blocks = {}
+  local row, reason = formats.for_path(path), nil
+  if options.format ~= nil then
+    row, reason = formats.named(options.format)
+  end
+  if not row or not row.write then
+    fail(2, "%s", reason or row.name .. " is read, but not written")
+  end
+  local fields = { format = true }
+  for field in pairs(row.fields) do fields[field] = true end
+  check_options(options, fields, 2)
+  if #self.segments > 1 and not row.holds_gaps then
+    return nil, ("%s: %s holds no gaps, and there are %d; write the parts, or another format")
+      :format(path, row.title, #self.segments - 1), "domain"
+  end
+  return row.write(self, path, options)
+end
+
+--- A feed of the record's channels, for whatever pulls samples in blocks.
+-- @return feed: with methods channels, samples, read (values) and codes (as stored)
+-- @usage
+-- local r = lb.record.new { rate = 8000, codes = { 0, 64, -128 }, bits = 8, range = "10 V" }
+-- assert(r:feed():read(2, 1)[1][1] == 5 and r:feed():codes(2, 1)[1][1] == 64)
+function Record:feed()
+  return self.source
+end
+
+--- Closes the file of a record that was opened; doing so again is allowed.
+-- Samples that were not fetched cannot be had any more. Records read into memory stay whole.
+-- @usage
+-- local r = lb.record.new { rate = 8000, samples = { 1, 2 } }
+-- r:close()
+-- assert(#r:values() == 2)
+function Record:close()
+  if self.file then
+    self.file:close()
+    self.file = nil
+  end
+end
+
+--- Walks over the record in blocks of values, in bounded memory.
+-- A block is filled anew in every turn: what is to be kept must be copied. A damaged file raises.
+-- @param options table: channel (number, default 1; or a list, then each turn gives a list of
+--   blocks), samples (of a block, default 65536; the last one may be shorter)
+-- @return function: iterator of block, number of its first sample
+-- @usage
+-- local r = lb.record.new { rate = 8000, samples = { 1, 2, 3, 4, 5 } }
+-- local sum = 0
+-- for block, first in r:blocks { samples = 2 } do sum = sum + block:sum() * first end
+-- assert(sum == 3 * 1 + 7 * 3 + 5 * 5)
+function Record:blocks(options)
+  options = options or {}
+  check_options(options, block_fields, 2)
+  given.count(options.samples, "samples", 1, 2)
+  local list = given.channels(options.channel or 1, 2)
+  for _, k in ipairs(list) do channel_of(self, k) end
+  local size, next_at, into = options.samples or 65536, 1, nil
+  local single = type(options.channel) ~= "table"
+  return function()
+    local count = math.min(size, self.samples - next_at + 1)
+    if count < 1 then
+      return nil
+    end
+    local blocks, message = self.source:read(next_at, count, list, count == size and into or nil)
+    if not blocks then
+      error(message, 2)
+    end
+    into = count == size and blocks or into
+    next_at = next_at + count
+    return single and blocks[1] or blocks, next_at - count
+  end
+end
+
+--- A stretch of the record as a record of its own, without copying.
+-- @param options table: first (sample number from 1, default 1), count (default: all that follow)
+-- @return table: the record; its start is the moment of its first sample
+-- @usage
+-- local r = lb.record.new { rate = 8000, samples = { 1, 2, 3, 4, 5 } }
+-- assert(r:part { first = 2, count = 3 }:values():sum() == 9)
+function Record:part(options)
+  options = options or {}
+  check_options(options, part_fields, 2)
+  given.count(options.first, "first", 1, 2)
+  given.count(options.count, "count", 1, 2)
+  local first = options.first or 1
+  local count = options.count or self.samples - first + 1
+  if first > self.samples or count > self.samples - first + 1 then
+    fail(2, "there are %d samples; %d from number %d are not there", self.samples,
+      math.max(count, 1), first)
+  end
+  local part = { rate = self.rate, title = self.title, path = self.path, channels = {},
+                 container = self.container, metadata = self.metadata, first = first,
+                 start_ns = self:moment(first),
+                 segments = given.cut_segments(self.segments, first, count) }
   for k, channel in ipairs(self.channels) do
-    local factor = stored_factor(channel, spec, 2)
-    blocks[k] = factor == 1 and channel.data or channel.data * factor
+    local copy = {}
+    for key, value in pairs(channel) do copy[key] = key ~= "data" and value or nil end
+    part.channels[k] = copy
   end
-  return store.write(path, spec, blocks)
+  part.source = store.part(self.source, first, count, nil, making.factors(part))
+  return made(part)
+end
+
+--- The moment of a sample, gaps included.
+-- @param i integer: sample number from 1, default 1
+-- @return integer: nanoseconds since 1970-01-01T00:00:00Z, rounded down; nil where the start is not
+--   known
+-- @usage
+-- local r = lb.record.new { rate = 1000, samples = { 1, 2, 3 }, start = "2026-03-01T12:00:00Z",
+--   gaps = { { after = 2, lost = 10 } } }
+-- assert(lb.record.moment_text(r:moment(3)) == "2026-03-01T12:00:00.012Z")
+function Record:moment(i)
+  local n = self:counter(i or 1) - self.segments[1].counter
+  if not self.start_ns then
+    return nil
+  end
+  local over, under = self.rate.numerator, self.rate.denominator
+  local seconds = n * under // over
+  return self.start_ns + seconds * 1000000000 + (n * under % over) * 1000000000 // over
+end
+
+--- The sample counter of a sample: how many the converter had taken before it, lost ones included.
+-- @param i integer: sample number from 1
+-- @return integer: 0 for the first sample, unless the file says another
+-- @usage
+-- local r = lb.record.new { rate = 1000, samples = { 1, 2 }, gaps = { { after = 1, lost = 5 } } }
+-- assert(r:counter(1) == 0 and r:counter(2) == 6)
+function Record:counter(i)
+  if math.type(i) ~= "integer" or i < 1 or i > self.samples then
+    fail(2, "there is no sample %s; there are 1 to %d", tostring(i), self.samples)
+  end
+  local found = self.segments[1]
+  for _, segment in ipairs(self.segments) do
+    if segment.first <= i then found = segment end
+  end
+  return found.counter + i - found.first
 end
 
 local function row_of(record, k)
