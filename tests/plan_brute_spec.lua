@@ -116,8 +116,8 @@ describe("the shortest plan against brute force", function()
         feasible = feasible + 1
         local row = row_of(rows, plan)
         assert.is_truthy(row, ("problem %d: brute force rejects the plan"):format(i))
-        assert.is_true(row[5] <= plan.worst * (1 + 1e-9) + 1e-9, ("problem %d: bound %g, brute force %g")
-          :format(i, plan.worst, row[5]))
+        assert.is_true(row[5] <= plan.worst * (1 + 1e-9) + 1e-9,
+          ("problem %d: bound %g, brute force %g"):format(i, plan.worst, row[5]))
         local periods = plan.setting.divider * plan.samples
         assert.is_true(not sure or periods <= sure,
           ("problem %d: %d clock periods, brute force %s"):format(i, periods, sure))

@@ -273,7 +273,8 @@ describe("misuse", function()
     { { share = "120 %" }, 'share: "120 %%" is out of range; give more than 0 and at most 1' },
     { { effort_s = -1 }, "effort_s: %-1 is out of range; give more than 0 and at most 3600" },
     { { undersample = 1 }, "undersample: 1 is neither true nor false" },
-    { { most_rate = "3 m" }, "most_rate: " }, { { least_rate = -5 }, "least_rate: " }, { 5, "5 is not a table" },
+    { { most_rate = "3 m" }, "most_rate: " }, { { least_rate = -5 }, "least_rate: " },
+    { 5, "5 is not a table" },
   }
   for _, case in ipairs(cases) do
     it("is named with path, value and choices: " .. case[2]:gsub("%%", ""), function()
