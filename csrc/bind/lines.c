@@ -130,5 +130,6 @@ static const luaL_Reg functions[] = {{"tracker", tracker}, {NULL, NULL}};
 int lbr_open_lines(lua_State *L) {
   luaL_newlib(L, functions);
   luaL_setfuncs(L, lbr_lines_fit_functions, 0);
+  luaL_setfuncs(L, lbr_lines_list_functions, 0);
   return 1;
 }

@@ -12,7 +12,8 @@ void lbr_project(const double *x, size_t n, const double *f, size_t count,
                  double complex *sums, double *sum, double *energy);
 
 /* *sum = sum_n x[n] exp(-2 pi i f t_n), and its derivative per bin, 1 / n
- * cycles per sample: *slope = sum_n x[n] (-2 pi i t_n / n) exp(-2 pi i f t_n). */
+ * cycles per sample:
+ * *slope = sum_n x[n] (-2 pi i t_n / n) exp(-2 pi i f t_n). */
 void lbr_project_slope(const double *x, size_t n, double f,
                        double complex *sum, double complex *slope);
 

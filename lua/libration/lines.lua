@@ -6,6 +6,8 @@
 -- uncertainties (JCGM 100:2008), and has the methods csv() and json(). Amplitudes
 -- are peak values; phases are those of the cosine at the centre of the record.
 
+local core = require("libration.core").lines
+local list = require "libration.lines.list"
 local result = require "libration.lines.result"
 local sine = require "libration.lines.sine"
 
@@ -47,6 +49,54 @@ end
 -- assert(math.abs(fit.lines[2].amplitude - 1) < 1e-9)
 function M.joint(source, options)
   return sine.joint(source, options)
+end
+
+--- Lists the lines that stand above the noise around them.
+-- The floor of a bin is the median power of the nearest floor_bins bins outside peaks, corrected
+-- by the chi-square law of the averaged power; the threshold over it takes the floor's own
+-- scatter into account. Noise alone would show any line at all with the chance false_alarm at
+-- most. Each line is then tracked: read at the highest point of its windowed transform, in every
+-- segment, and averaged. Its uncertainties are those of the floor's noise. What a stronger line
+-- leaks through the window is not listed but counted.
+-- @param source record or samples
+-- @param options table: false_alarm (0.01), floor_bins (odd, 101), window ("blackman_harris4"),
+--   parameter (of the window), segment (samples; default: the whole record), overlap (0.5, share
+--   of a segment), most (lines that are too many, 512); channel, or rate and unit
+-- @return table: lines[i] = { hz, amplitude (peak), phase (first segment), u_hz, u_amplitude,
+--   leak (most that stronger lines add or take, not part of u_amplitude), over_floor_db,
+--   floor_density (unit/sqrt(Hz), one-sided), chance (of noise as high anywhere), bin }, leaks, threshold_db, averages (effective), bins_tested, first_hz, last_hz and the
+--   options used; or nil, message, code ("domain")
+-- @usage
+-- local spec = { rate = 1000, samples = 2000, density = 0.01, seed = 1 }
+-- local x = lb.synth.noise(spec)
+-- x:add(lb.synth.tones { rate = 1000, samples = 2000, tones = { { hz = 123.4, amplitude = 1 } } })
+-- local found = lb.lines.list(x, { rate = 1000, unit = "V" })
+-- assert(#found.lines == 1 and math.abs(found.lines[1].hz - 123.4) < 0.01)
+function M.list(source, options)
+  return list.list(source, options)
+end
+
+--- The estimators of a frequency from the bins of a transform, with their sources.
+-- @return table: list of { name, source, window ("rectangle" or "hann") }
+-- @usage
+-- assert(#lb.lines.estimators() == 5)
+function M.estimators()
+  return core.estimators()
+end
+
+--- Distance of a line from its bin by one of the estimators.
+-- Fast and without a search, but biased by the line's own image and by neighbours; sine() is not.
+-- @param name string: of an estimator
+-- @param x samples: the record (or its real part), 8 samples or more
+-- @param k integer: the bin of the highest power
+-- @param im samples: the imaginary part of a complex record; default none
+-- @return number: bins; or nil, message, code ("domain") where the formula has no value
+-- @usage
+-- local x = lb.samples.make(64, function(i) return math.cos(0.8 * i) end)
+-- local bins = 8 + lb.lines.estimate("grandke1983", x, 8)
+-- assert(math.abs(bins - 64 * 0.8 / (2 * math.pi)) < 0.01)
+function M.estimate(name, x, k, im)
+  return core.estimate(name, x, k, im)
 end
 
 --- A result again from the text that its json() wrote.

@@ -1,4 +1,4 @@
--- What the failing-allocator sweep runs over fits of sines.
+-- What the failing-allocator sweep runs over fits of sines and lists of peaks.
 return "lines", function()
   local core = require "libration.core"
   local lines = core.lines
@@ -9,6 +9,9 @@ return "lines", function()
   end
   assert(math.abs(need(lines.sine4(x:slice(1, 64))).amplitude - 1) < 1e-9)
   assert(#need(lines.sine_batch(x, 64, nil, 1)) == 36)
+  local w = core.samples.from { 1, 1, 1, 1, 1, 1, 1, 1, 1, 1, 1, 1, 1, 1, 1, 1, 1, 1, 1, 1, 1, 1, 1,
+    1, 1, 1, 1, 1, 1, 1, 1, 1 }
+  assert(need(lines.peaks(x, w, 16, 5, 1, 0.1)).segments == 11)
   local fit <close> = need(lines.joint(64, { 0.1, 0.2 }))
   assert(#fit:run(x) == 8)
   assert(#need(lines.joint_batch(x, 64, core.samples.from { 0.1, 0.2 }, 2, 1)) == 24)
