@@ -80,10 +80,9 @@ static double last_above(lbr_kernel *kernel, double level) {
 
 /* Own wander: relative loss, excess, and what its sidebands may add in
  * quadrature or at the flanks. */
-static lbr_smear smear_of(const lbr_case *c, size_t line, double duration,
-                          double reach) {
+static lbr_smear smear_of(const lbr_case *c, size_t line, double reach) {
   size_t asked = 0;
-  lbr_leak l = {c, line, duration, 0, 0, &asked};
+  lbr_leak l = lbr_leak_of_case(c, line, 0, &asked);
   double amplitude[LBR_SIDEBANDS], low, high, total = 0;
   size_t count = lbr_leak_sidebands(&l, line, amplitude);
   lbr_smear smear = {0, 0, 0};
@@ -102,27 +101,26 @@ static lbr_smear smear_of(const lbr_case *c, size_t line, double duration,
   return smear;
 }
 
-/* Response to the offset at the line, and the line's own image. */
-static double offset_gain(const lbr_case *c, double low_hz, double high_hz,
-                          double steer) {
+/* Response to the offset wherever the line may be read. */
+static double offset_gain(const lbr_case *c, double low_hz, double high_hz) {
   double low, high, t = lbr_duration(c);
-  lbr_kernel_range(c->kernel, low_hz * t - steer, high_hz * t + steer, &low,
-                   &high);
+  lbr_kernel_range(c->kernel, low_hz * t, high_hz * t, &low, &high);
   return high;
 }
 
-static double image_gain(const lbr_case *c, size_t line, double steer) {
+/* Response to the line's own image, wherever it is and is read. */
+static double image_gain(const lbr_case *c, size_t line) {
   size_t asked = 0;
-  double t = lbr_duration(c), from, to, read = bin_hz(c, line);
-  lbr_leak l = {c, line, t, read, steer, &asked};
+  double t = lbr_duration(c), read = bin_hz(c, line);
+  lbr_leak l = lbr_leak_of_case(c, line, 0, &asked);
   const lbr_source *s = own(c, line);
   double half = lbr_half_width(c->scene, line), timebase = c->front->timebase;
-  from = (s->hz - half) * (1 - timebase);
-  to = (s->hz + half) * (1 + timebase);
+  double from = (s->hz - half) * (1 - timebase);
+  double to = (s->hz + half) * (1 + timebase);
   bool bin = c->reading == LBR_READING_BIN;
   from += bin ? read : from;
   to += bin ? read : to;
-  return lbr_leak_spread(&l, line, from * t - steer, to * t + steer);
+  return lbr_leak_spread(&l, line, from * t, to * t);
 }
 
 /* Own lobe: how far |H| leaves 1 where the line may stand. */
@@ -142,14 +140,14 @@ static double lobe_gain(const lbr_case *c, size_t line, double steer) {
 
 /* The terms of one line for a given steering radius, joint sum apart. */
 lbr_parts lbr_bound_parts(const lbr_case *c, size_t line, double steer) {
-  double low, high, t = lbr_duration(c);
+  double low, high;
   double jitter = 2 * PI * own(c, line)->hz * c->front->jitter_s;
   double far = c->reading == LBR_READING_BIN ? 0.5 : steer;
-  lbr_smear smear = smear_of(c, line, t, far);
+  lbr_smear smear = smear_of(c, line, far);
   lbr_bound_search(c, line, &low, &high);
   lbr_parts p = {.steer = steer};
   p.lobe = lobe_gain(c, line, steer);
-  p.image = image_gain(c, line, steer);
+  p.image = image_gain(c, line);
   p.smear = c->reading == LBR_READING_BIN ? smear.loss + smear.flanks
                                           : fmax(smear.loss, smear.excess);
   p.flanks = smear.flanks;
@@ -157,7 +155,7 @@ lbr_parts lbr_bound_parts(const lbr_case *c, size_t line, double steer) {
   p.accuracy = c->front->accuracy;
   p.jitter_loss = -expm1(-jitter * jitter / 2);
   p.offset = 2 * c->scene->offset / c->path->nominal[line] *
-             offset_gain(c, low, high, steer);
+             offset_gain(c, low, high);
   return p;
 }
 
@@ -276,8 +274,7 @@ void lbr_bound_line(const lbr_case *c, size_t line, lbr_care care,
   lbr_bound_search(c, line, &low, &high);
   bool tracked = c->reading == LBR_READING_TRACKED;
   double widest = tracked ? (high - low) * t : 0;
-  double ways = tracked ? 2 * high * c->front->timebase * t : 0;
-  lbr_leak l = {c, line, t, bin_hz(c, line), ways, &b->asked};
+  lbr_leak l = lbr_leak_of_case(c, line, INFINITY, &b->asked);
   *b = (lbr_bound){.sigma = sigma(c, line)};
   double anywhere = lbr_leak_crude(&l), leak = anywhere;
   lbr_parts p = lbr_bound_parts(c, line, widest);
@@ -319,7 +316,7 @@ static double least_own(const lbr_case *c, size_t line, double read_hz) {
 static double least_ratio(const lbr_case *c, size_t line, double enough,
                           double (*sum)(const lbr_leak *, double),
                           size_t *asked) {
-  lbr_leak l = {c, line, lbr_duration(c), bin_hz(c, line), 0, asked};
+  lbr_leak l = lbr_leak_of_case(c, line, 0, asked);
   lbr_bound b = {.sigma = sigma(c, line)};
   b.own = least_own(c, line, l.read_hz);
   double room = affordable(c, line, b.own, 0, b.sigma, enough);

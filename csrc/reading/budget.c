@@ -29,7 +29,7 @@ size_t lbr_bound_budget(const lbr_case *c, size_t line,
   lbr_parts p = lbr_bound_parts(c, line, bound->steer);
   lbr_variance v = lbr_bound_variance(c, line);
   double a = bound->amplitude, k = c->coverage / sqrt((double)c->averages);
-  double t = lbr_duration(c), systematic = bound->own * a + bound->others;
+  double systematic = bound->own * a + bound->others;
   const lbr_term own[] = {{LBR_TERM_SCALLOP, line, p.lobe * a},
                           {LBR_TERM_IMAGE, line, p.image * a},
                           {LBR_TERM_SMEAR, line, p.smear * a},
@@ -44,8 +44,7 @@ size_t lbr_bound_budget(const lbr_case *c, size_t line,
     sum += own[i].value;
   }
   size_t asked = 0;
-  lbr_leak l = {c, line, t, rint(c->scene->sources[line].hz * t) / t,
-                bound->steer, &asked};
+  lbr_leak l = lbr_leak_of_case(c, line, bound->steer, &asked);
   for (size_t j = 0; j < c->scene->n_sources; j++) {
     if (j == line) continue;
     double value = lbr_leak_of(&l, j);

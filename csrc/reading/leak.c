@@ -28,30 +28,49 @@ static span widen(span s, double relative) {
                 s.high + fabs(s.high) * relative};
 }
 
+lbr_leak lbr_leak_of_case(const lbr_case *c, size_t line, double steer,
+                          size_t *asked) {
+  double t = (double)c->n / c->path->rate;
+  lbr_leak l = {.c = c, .line = line, .duration = t, .asked = asked};
+  l.steer = c->reading == LBR_READING_BIN ? 0 : steer;
+  l.read_hz = rint(c->scene->sources[line].hz * t) / t;
+  lbr_bound_search(c, line, &l.from_hz, &l.to_hz);
+  return l;
+}
+
+/* The part of a span of distances, Hz, that lies within steering of a line
+ * and within the interval that is searched, in bins. */
+static span steered(const lbr_leak *l, span to, span other, double sign) {
+  double t = l->duration;
+  double low = sign > 0 ? other.low - l->to_hz : other.low + l->from_hz;
+  double high = sign > 0 ? other.high - l->from_hz : other.high + l->to_hz;
+  span x = {fmax(to.low * t - l->steer, low * t),
+            fmin(to.high * t + l->steer, high * t)};
+  if (x.low > x.high) x.low = x.high = (x.low + x.high) / 2; /* rounding */
+  return x;
+}
+
 /* Distance (sign = 1: f_j - f, sign = -1: f_j + f) to the place where the
  * line is read, in bins. */
 static span distance(const lbr_leak *l, size_t j, double e1, double e2,
                      double d1, double d2, bool locked, double sign) {
-  double timebase = l->c->front->timebase;
-  span to;
-  if (l->c->reading == LBR_READING_BIN) {
-    to = widen(place(l, j, d1, d2), timebase);
-    to.low -= sign * l->read_hz;
-    to.high -= sign * l->read_hz;
-  } else if (locked) {
+  double timebase = l->c->front->timebase, t = l->duration;
+  span other = widen(place(l, j, d1, d2), timebase), to;
+  if (l->c->reading == LBR_READING_BIN)
+    return (span){(other.low - sign * l->read_hz) * t,
+                  (other.high - sign * l->read_hz) * t};
+  if (locked) {
     const lbr_source *a = source(l, l->line), *b = source(l, j);
     double lock = b->lock_hz - sign * a->lock_hz;
     double free = a->free_hz + b->free_hz, hz = b->hz - sign * a->hz;
-    to = widen((span){hz + fmin(lock * e1, lock * e2) - free,
-                      hz + fmax(lock * e1, lock * e2) + free}, timebase);
+    to = (span){hz + fmin(lock * e1, lock * e2) - free,
+                hz + fmax(lock * e1, lock * e2) + free};
   } else {
-    span own = place(l, l->line, e1, e2), other = place(l, j, d1, d2);
-    to = sign > 0 ? (span){other.low - own.high, other.high - own.low}
-                  : (span){other.low + own.low, other.high + own.high};
-    to = widen(to, timebase);
+    span own = place(l, l->line, e1, e2), at = place(l, j, d1, d2);
+    to = sign > 0 ? (span){at.low - own.high, at.high - own.low}
+                  : (span){at.low + own.low, at.high + own.high};
   }
-  return (span){to.low * l->duration - l->steer,
-                to.high * l->duration + l->steer};
+  return steered(l, widen(to, timebase), other, sign);
 }
 
 size_t lbr_leak_sidebands(const lbr_leak *l, size_t j,

@@ -15,11 +15,17 @@ typedef struct lbr_leak {
   const lbr_case *c;
   size_t line;
   double duration; /* T, s */
-  double read_hz;  /* bin: where the line is read */
+  double read_hz;  /* bin: where the line is read, Hz */
   double steer;    /* tracked: most distance between the line and the place
                       where it is read, bins */
+  double from_hz;  /* tracked: the interval that is searched, as the record */
+  double to_hz;    /* sees it, Hz */
   size_t *asked;   /* kernel enclosures asked for, counted up */
 } lbr_leak;
+
+/* `steer` may be INFINITY: the line may be read anywhere in its interval. */
+lbr_leak lbr_leak_of_case(const lbr_case *c, size_t line, double steer,
+                          size_t *asked);
 
 /* Sideband amplitudes |J_k(beta)|, k = 0 .. count - 1, of a source that
  * wanders; count is 1 for a steady one. */
