@@ -6,6 +6,8 @@
 #define PIECES 12          /* most pieces a driver's interval is cut into */
 #define GAIN 0.995         /* a cut that lowers the bound by less is the last */
 #define PROBES 7           /* deviations tried for a sum that is reached */
+#define WIDE 64.0          /* enclosures wider than this cost no more, bins */
+#define PER_ASKED 4.0      /* bins that cost as much as a narrow enclosure */
 #define SIDEBAND_END 1e-12 /* sidebands below this are left to the sum */
 
 typedef struct span {
@@ -88,8 +90,8 @@ size_t lbr_leak_sidebands(const lbr_leak *l, size_t j,
 }
 
 static double most(const lbr_leak *l, span x) {
-  double low, high;
-  ++*l->asked;
+  double low, high, width = fmin(x.high - x.low, WIDE);
+  *l->asked += 1 + (size_t)(width / PER_ASKED);
   lbr_kernel_range(l->c->kernel, x.low, x.high, &low, &high);
   return high;
 }

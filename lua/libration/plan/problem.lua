@@ -79,7 +79,13 @@ local function top_hz(demand, timebase)
   return top
 end
 
-local function most_samples(digitizer)
+--- The longest record of a digitizer.
+-- @param digitizer table: from lb.digitizer
+-- @return number: samples per channel
+-- @usage
+-- local digitizer = lb.digitizer { rates = { "1 kHz" }, memory = "4 Ki", channels = 2 }
+-- assert(require("libration.plan.problem").most_samples(digitizer) == 2048)
+function M.most_samples(digitizer)
   local most = digitizer.samples and digitizer.samples.most or 2 ^ 24
   if digitizer.memory then
     most = math.min(most, digitizer.memory // (digitizer.channels or 1))
@@ -97,7 +103,7 @@ end
 -- assert(holds(digitizer, 64) and not holds(digitizer, 65))
 function M.holds(digitizer, samples)
   local least = digitizer.samples and digitizer.samples.least or 16
-  return samples >= least and samples <= most_samples(digitizer)
+  return samples >= least and samples <= M.most_samples(digitizer)
     and samples % (digitizer.block or 1) == 0
 end
 
@@ -153,7 +159,7 @@ function M.new(demand, digitizer, options)
     offset = demand.offset or 0, noise = demand.noise or 0,
     front = M.front(demand, digitizer), rates = described, modes = mode_list,
     least_samples = digitizer.samples and digitizer.samples.least or 16,
-    most_samples = most_samples(digitizer), block = digitizer.block or 1,
+    most_samples = M.most_samples(digitizer), block = digitizer.block or 1,
     averages = demand.averages or 1, coverage = demand.coverage or 3,
   }
   return { handle = handle, modes = mode_list, source = names, rate = exact }

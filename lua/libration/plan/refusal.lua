@@ -17,6 +17,7 @@ function Refusal:__tostring()
 end
 
 local MOST_SHARE = 40 -- errors beyond this many tolerances are not pursued
+local LONGEST = 2 ^ 20 -- samples of the records looked at to say what binds
 local STEPS = 5         -- bisections of the smallest share
 
 local function new(fields)
@@ -75,9 +76,9 @@ local function smallest_share(posed, read, demand)
   return high, found
 end
 
+-- The line that is worst off for a choice (rate, mode, samples), and by what.
 local function worst_line(posed, choice)
-  local rate = posed.rate(choice.setting):number()
-  local judged = core.plan.judge(posed.handle, rate, choice.mode, choice.samples)
+  local judged = core.plan.judge(posed.handle, choice.rate, choice.mode, choice.samples)
   local worst = 1
   for i, row in ipairs(judged) do
     if row.ratio > judged[worst].ratio then
@@ -88,10 +89,30 @@ local function worst_line(posed, choice)
   if row.ratio_hz >= row.ratio then
     return worst, row.ratio, { term = "frequency" }
   end
-  local terms = core.plan.budget(posed.handle, rate, choice.mode, choice.samples, worst)
+  local terms = core.plan.budget(posed.handle, choice.rate, choice.mode, choice.samples, worst)
   table.sort(terms, function(a, b) return a.value > b.value end)
   return worst, row.ratio, { term = terms[1].term,
     from = terms[1].source and posed.source[terms[1].source].name }
+end
+
+-- The longest record each window and reading could have at the lowest and the
+-- highest rate: the least bad of them, where no share of the tolerances helped.
+local function least_bad(demand, digitizer, posed, read)
+  local _, low, high = core.plan.rates(posed.handle)
+  local block, best, least = digitizer.block or 1, nil, math.huge
+  local most = math.min(problem.most_samples(digitizer), LONGEST)
+  for _, rate in ipairs { low, high } do
+    local within = (read.within or math.huge) / (demand.averages or 1) * rate
+    local samples = math.floor(math.min(most, within) / block) * block
+    for mode = 1, samples >= 64 and #posed.modes or 0 do
+      local choice = { rate = rate, mode = mode, samples = math.tointeger(samples) }
+      local _, ratio = worst_line(posed, choice)
+      if ratio < least then
+        best, least = choice, ratio
+      end
+    end
+  end
+  return best
 end
 
 -- Limits that no longer record and no other rate can move.
@@ -141,15 +162,17 @@ function M.explain(demand, digitizer, posed, read, code)
       :format(read.effort_s)
   end
   local share, choice = smallest_share(posed, read, demand)
-  if choice then
-    local line, ratio, term = worst_line(posed, choice)
+  local shown = choice or least_bad(demand, digitizer, posed, read)
+  if shown then
+    local line, ratio, term = worst_line(posed, shown)
     refusal.binding = { line = demand.lines[line].name, term = term.term, from = term.from,
-      limit = limit_of(demand, digitizer, posed, read, choice, term.term), ratio = ratio }
-    refusal.message = ("line %s would be off by %.3g times its tolerance")
+      limit = limit_of(demand, digitizer, posed, read, shown, term.term), ratio = ratio }
+    refusal.message = (choice and "line %s would be off by %.3g times its tolerance"
+      or "line %s would be off by %.3g times its tolerance even in the longest record")
       :format(demand.lines[line].name, ratio)
   else
-    refusal.binding = { term = "every term", limit = "the demand as a whole" }
-    refusal.message = ("no record comes within %g times the tolerances"):format(MOST_SHARE)
+    refusal.binding = { term = "record length", limit = "within, memory or longest record" }
+    refusal.message = "no admissible record is long enough to read lines in"
   end
   refusal.relaxations = relax.all(demand, digitizer, read, refusal.binding, share)
   return refusal
