@@ -69,7 +69,7 @@ static const double *check_places(lua_State *L, size_t n, size_t *count) {
  * @param keep number: share of the rate, below 0.5, default 0.4
  * @param ratio number: values per sample where fewer are taken than there
  *   are samples, at most 1, the default
- * @param db number: 8 to 160, default 100
+ * @param db number: 8 to 140, default 100
  * @return samples: a value for each place
  * @usage
  * local x = core.samples.new(200):fill(2)
@@ -85,7 +85,7 @@ static int samples_values_at(lua_State *L) {
   double db = luaL_optnumber(L, 5, 100);
   luaL_argcheck(L, keep > 0 && keep < 0.5, 3, "keep lies between 0 and 0.5");
   luaL_argcheck(L, ratio > 0 && ratio <= 1, 4, "ratio lies in (0, 1]");
-  luaL_argcheck(L, db >= 8 && db <= 160, 5, "the error is 8 to 160 dB down");
+  luaL_argcheck(L, db >= 8 && db <= 140, 5, "the error is 8 to 140 dB down");
   double *y = lbr_push_unset_samples(L, count);
   static const luaL_Reg none[] = {{NULL, NULL}};
   lbr_places *kernel = lua_newuserdatauv(L, sizeof *kernel, 0);
@@ -119,7 +119,7 @@ static int samples_refine(lua_State *L) {
   luaL_argcheck(L, n - 1 <= MOST_VALUES / per, 2, "more than 2^31 values");
   size_t count = (n - 1) * per + 1;
   double *y = lbr_push_unset_samples(L, count);
-  lbr_table_even(x, n, 1 / (double)per, y, count);
+  lbr_table_even(x, n, per, y, count);
   return 1;
 }
 

@@ -43,9 +43,10 @@ static powers sum_powers(const double *x, size_t n, double mean) {
 lbr_moments lbr_moments_of(const double *x, size_t n) {
   double count = (double)n, mean = lbr_sum(x, n) / count;
   powers p = sum_powers(x, n, mean);
-  double rest = p.p1 / count;
-  return (lbr_moments){mean + rest, p.p2 / count - rest * rest, p.p3 / count,
-                       p.p4 / count};
+  double r = p.p1 / count, m2 = p.p2 / count, m3 = p.p3 / count;
+  return (lbr_moments){mean + r, m2 - r * r, m3 - 3 * r * m2 + 2 * r * r * r,
+                       p.p4 / count - 4 * r * m3 + 6 * r * r * m2 -
+                           3 * r * r * r * r};
 }
 
 static void swap(double *a, double *b) {

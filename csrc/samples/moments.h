@@ -16,7 +16,7 @@ typedef struct lbr_moments {
 } lbr_moments;
 
 /* Central moments of n > 0 samples, in two passes; what rounding left in the
- * mean is taken out of the second moment. */
+ * mean is taken out of the others. */
 lbr_moments lbr_moments_of(const double *x, size_t n);
 
 /* The sample that would stand at `rank` (0 .. n - 1) were x sorted.  Puts x in

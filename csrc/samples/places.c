@@ -37,8 +37,9 @@ static double kernel(double t, double ratio, double half, double beta) {
 lbr_status lbr_places_make(double keep, double ratio, double db,
                            lbr_places *out) {
   if (!(keep > 0 && keep < 0.5) || !(ratio > 0 && ratio <= 1) ||
-      !(db >= 8 && db <= 160))
+      !(db >= 8 && db <= 140))
     return LBR_DOMAIN;
+  db += 6;
   double width = (1 - 2 * keep) * ratio, beta = shape_of(db);
   double reach = ceil(0.5 * (db - 7.95) / (2.285 * 2 * PI * width) + 0.5);
   if (!(reach <= (double)MOST_HALF)) return LBR_OVERFLOW;
@@ -120,11 +121,11 @@ void lbr_places_take(const lbr_places *p, const double *x, size_t n,
   take(p, x, n, at, y, count);
 }
 
-void lbr_table_even(const double *table, size_t n, double step, double *y,
+void lbr_table_even(const double *table, size_t n, size_t per, double *y,
                     size_t count) {
   double w[4];
   for (size_t i = 0; i < count; i++) {
-    double at = (double)i * step;
+    double at = (double)i / (double)per;
     size_t cell = at > 1 ? (size_t)at : 1;
     if (cell > n - 3) cell = n - 3;
     cubic_weights(at - (double)cell, w);

@@ -22,8 +22,9 @@ typedef struct lbr_places {
 /* A kernel for values taken `ratio` times as often as the samples (0 < ratio
  * <= 1; 1 when they are taken as often or more often): what lies below keep *
  * ratio of the sample rate (0 < keep < 0.5) is kept to 10^(-db/20) of its
- * amplitude (8 <= db <= 160), what lies above (1 - keep) * ratio is taken away
- * likewise, by Kaiser's estimate.  The caller frees row. */
+ * amplitude (8 <= db <= 140), what lies above (1 - keep) * ratio is taken away
+ * likewise.  Kaiser's estimate for 6 dB more leaves room for what the images
+ * add up to.  The caller frees row. */
 LBR_CHECKED lbr_status lbr_places_make(double keep, double ratio, double db,
                                        lbr_places *out);
 
@@ -33,10 +34,10 @@ LBR_CHECKED lbr_status lbr_places_make(double keep, double ratio, double db,
 void lbr_places_take(const lbr_places *p, const double *x, size_t n,
                      const double *at, double *y, size_t count);
 
-/* y[i] = value at argument i * step (0 .. n - 1) of a table given at 0, 1, ...
+/* y[i] = value at argument i / per (0 .. n - 1) of a table given at 0, 1, ...
  * n - 1 (n >= 4): the cubic through the four nearest.  Exact for cubics, else
  * off by 3/128 of the fourth difference, more in the first and last cell. */
-void lbr_table_even(const double *table, size_t n, double step, double *y,
+void lbr_table_even(const double *table, size_t n, size_t per, double *y,
                     size_t count);
 
 #endif

@@ -23,7 +23,7 @@ void lbr_calculus_apply(const lbr_calculus *c, double complex *bins,
   const double *t = turn[c->times & 3];
   double complex i_power = CMPLX(t[0], t[1]);
   for (size_t k = 0; k <= n / 2; k++) {
-    double hz = c->rate * ((double)k / (double)n), share = share_of(c, hz);
+    double hz = c->rate * (double)k / (double)n, share = share_of(c, hz);
     if (share > 0)
       bins[k] *= i_power * (share * power_of(hz, c->times));
     else

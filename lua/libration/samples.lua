@@ -129,7 +129,7 @@ end
 function M.by_angle(x, pulses, spec)
   local read = options.take(angle_schema, spec, "by_angle")
   local turns = turn_places(pulses, read.pulses_per_turn)
-  local places = turns:refine(read.per_turn):clip(0, #x - 1)
+  local places = turns:refine(read.per_turn)
   local steps = places:differences()
   local ratio, keep = math.min(1, 1 / steps:max()), read.keep
   local y = x:values_at(places, keep, ratio, read.error_db)

@@ -3,6 +3,7 @@
 records.py DOUBLES REQUESTS: a file of little-endian doubles and a file of
 requests, a line each; prints a line of numbers per request.
 
+  first N                     from here on the record is the first N of all
   trend mean|linear           scipy.signal.detrend
   moments                     var (ddof 1), skew, kurtosis (fisher False)
   percentile P...             numpy.percentile
@@ -19,7 +20,8 @@ import sys
 import numpy as np
 from scipy import signal, stats
 
-x = np.fromfile(sys.argv[1])
+whole = np.fromfile(sys.argv[1])
+x = whole
 BANDS = {"low": "lowpass", "high": "highpass", "pass": "bandpass",
          "stop": "bandstop"}
 
@@ -86,4 +88,8 @@ def answer(name, words):
 
 for line in open(sys.argv[2]):
     words = line.split()
+    if words[0] == "first":
+        x = whole[:int(words[1])]
+        print(len(x))
+        continue
     print(" ".join("%.17g" % v for v in answer(words[0], words[1:])))
