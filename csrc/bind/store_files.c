@@ -23,9 +23,10 @@ static lua_Integer integer_field(lua_State *L, int arg, const char *field,
 }
 
 /***
- * The first bytes of a regular file.
+ * Bytes of a regular file, the first ones unless said.
  * @param path string: the file
  * @param count integer: how many at most, 1 .. 2^26
+ * @param at integer: offset of the first, default 0
  * @return string: fewer where the file is shorter; or nil, message, code
  * @return integer: size of the file, bytes
  * @usage
@@ -37,16 +38,18 @@ static int store_head(lua_State *L) {
   size_t count = lbr_check_count(L, 2, 1, (size_t)1 << 26);
   lbr_why why;
   int fd = -1;
-  int64_t bytes = 0;
+  int64_t bytes = 0, at = luaL_optinteger(L, 3, 0);
   luaL_Buffer buffer;
+  luaL_argcheck(L, at >= 0, 3, "an offset is 0 or more");
   lbr_status status = lbr_file_open(path, &fd, &bytes, &why);
   if (status != LBR_OK) return lbr_refuse_file(L, status, path, &why);
   close(fd); /* making room may raise */
-  if ((uint64_t)bytes < count) count = (size_t)bytes;
+  int64_t left = at < bytes ? bytes - at : 0;
+  if ((uint64_t)left < count) count = (size_t)left;
   char *room = luaL_buffinitsize(L, &buffer, count ? count : 1);
   status = lbr_file_open(path, &fd, &bytes, &why);
   if (status != LBR_OK) return lbr_refuse_file(L, status, path, &why);
-  status = lbr_file_read(fd, 0, room, count);
+  status = lbr_file_read(fd, at, room, count);
   close(fd);
   if (status != LBR_OK) return lbr_refuse(L, status, path);
   luaL_pushresultsize(&buffer, count);
