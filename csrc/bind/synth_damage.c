@@ -93,14 +93,14 @@ static int synth_coarsen(lua_State *L) {
  * @param damage table: bits (width kept, 32), keep (mask of bits that survive,
  *   0xffffffff), force (mask of bits that are always 1, 0), skip (0: none; else
  *   codes c with c mod skip == skip // 2 become c + 1)
- * @return samples: the same; raises where a sample is no code
+ * @return integer: codes that changed; raises where a sample is no code
  * @usage
- * local x = core.synth.damage_codes(core.samples.from { 5, 127 },
- *   { bits = 8, force = 2 })
- * assert(x[1] == 7 and x[2] == 127)
+ * local x = core.samples.from { 5, 127 }
+ * local changed = core.synth.damage_codes(x, { bits = 8, force = 2 })
+ * assert(changed == 1 and x[1] == 7 and x[2] == 127)
  */
 static int synth_damage_codes(lua_State *L) {
-  size_t n;
+  size_t n, changed = 0;
   double *x = lbr_check_writable_samples(L, 1, &n);
   luaL_checktype(L, 2, LUA_TTABLE);
   lbr_code_damage d = {
@@ -108,9 +108,28 @@ static int synth_damage_codes(lua_State *L) {
       .keep = (uint32_t)lbr_whole_field(L, 2, "keep", 0xffffffff),
       .force = (uint32_t)lbr_whole_field(L, 2, "force", 0),
       .skip = (int32_t)lbr_whole_field(L, 2, "skip", 0)};
-  lbr_status status = lbr_damage_codes(x, n, &d);
+  lbr_status status = lbr_damage_codes(x, n, &d, &changed);
   if (status != LBR_OK) return lbr_raise(L, status, "codes");
-  lua_settop(L, 1);
+  lua_pushinteger(L, (lua_Integer)changed);
+  return 1;
+}
+
+/***
+ * One sample of every few, as a decimation without a filter leaves them.
+ * @param x samples: not changed
+ * @param step integer: 1 or more
+ * @return samples: number 1, 1 + step, 1 + 2 step ...
+ * @usage
+ * local y = core.synth.every(core.samples.from { 1, 2, 3, 4 }, 3)
+ * assert(#y == 2 and y[2] == 4)
+ */
+static int synth_every(lua_State *L) {
+  size_t n;
+  const double *x = lbr_check_samples(L, 1, &n);
+  size_t step = lbr_check_count(L, 2, 1, (size_t)1 << 40);
+  size_t left = n / step + (n % step != 0);
+  double *y = lbr_push_unset_samples(L, left);
+  for (size_t i = 0; i < left; i++) y[i] = x[i * step];
   return 1;
 }
 
@@ -202,6 +221,7 @@ const luaL_Reg lbr_synth_damage_functions[] = {
     {"bend", synth_bend},
     {"coarsen", synth_coarsen},
     {"damage_codes", synth_damage_codes},
+    {"every", synth_every},
     {"low_pass", synth_low_pass},
     {"resonate", synth_resonate},
     {"warp", synth_warp},

@@ -49,12 +49,17 @@ static int64_t damaged(int64_t code, const lbr_code_damage *d) {
   return value;
 }
 
-lbr_status lbr_damage_codes(double *x, size_t n, const lbr_code_damage *d) {
+lbr_status lbr_damage_codes(double *x, size_t n, const lbr_code_damage *d,
+                            size_t *changed) {
+  size_t count = 0;
   if (d->bits < 1 || d->bits > 32) return LBR_DOMAIN;
   for (size_t i = 0; i < n; i++) {
     if (!(fabs(x[i]) <= 0x1p31) || x[i] != rint(x[i])) return LBR_DOMAIN;
-    x[i] = (double)damaged((int64_t)x[i], d);
+    double code = (double)damaged((int64_t)x[i], d);
+    count += code != x[i];
+    x[i] = code;
   }
+  *changed = count;
   return LBR_OK;
 }
 

@@ -34,9 +34,11 @@ typedef struct lbr_code_damage {
 } lbr_code_damage;
 
 /* Codes in doubles, each a whole number of at most 32 bits, else LBR_DOMAIN
- * (samples before that one are then already changed). */
+ * (samples before that one are then already changed); *changed counts those
+ * that are other codes now. */
 LBR_CHECKED lbr_status lbr_damage_codes(double *x, size_t n,
-                                        const lbr_code_damage *damage);
+                                        const lbr_code_damage *damage,
+                                        size_t *changed);
 
 /* A filter y[n] = b0 x[n] + b1 x[n-1] + b2 x[n-2] - a1 y[n-1] - a2 y[n-2]. */
 typedef struct lbr_section {

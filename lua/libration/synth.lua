@@ -8,6 +8,7 @@ local common = require "libration.synth.common"
 local filters = require "libration.filter"
 local multisine = require "libration.synth.multisine"
 local options = require "libration.options"
+local plants = require "libration.synth.plant"
 local signals = require "libration.synth.signals"
 
 local M = {}
@@ -315,6 +316,37 @@ end
 -- assert(#at > 100 and x:peak() / x:rms() > 3)
 function M.impacts(spec)
   return signals.impacts(spec)
+end
+
+--- Plants a failure into a record: the copy lies in the way the name says.
+-- The record given is not changed. Integer channels hold integer codes again afterwards; gaps and
+-- counters are not kept, so that nothing gives the failure away. The same options give the same
+-- bits.
+-- @param record record: what is to be spoilt
+-- @param failure string: a name of failures
+-- @param spec table: its options, as failures lists them; all have defaults except where required
+-- @return record: the spoilt record
+-- @return table: failure, row, options (as they were used) and what happened, such as at, clipped,
+--   changed, seen_hz; raises where an option or the failure does not fit the record
+-- @usage
+-- local x = lb.synth.tones { rate = 1000, samples = 1000, tones = { { hz = 50, amplitude = 1 } } }
+-- local record = lb.record.new { rate = 1000, samples = x }
+-- local lying, facts = lb.synth.plant(record, "lost_samples", { at = 501, count = 3 })
+-- assert(lying.samples == 997 and facts.row == 28 and lying:values()[501] == x[504])
+function M.plant(record, failure, spec)
+  return plants.plant(record, failure, spec)
+end
+
+--- The failures that can be planted, and those that cannot.
+-- @return table: list of { name, row (of the project's catalogue of failures), does, options = list
+--   of { name, unit, default (nil: depends on the record, see text), required, text } }
+-- @return table: list of { row, why } of the catalogue's other rows: mistakes of an analysis, which
+--   no record carries
+-- @usage
+-- local list = lb.synth.failures()
+-- assert(#list > 30 and list[1].name == "adc_clipping" and list[1].row == 1)
+function M.failures()
+  return plants.failures()
 end
 
 return M

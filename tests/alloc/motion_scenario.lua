@@ -16,5 +16,9 @@ return "motion", function()
   local list = synth.multisine { hz = 3, count = 7, amplitude = 1 }
   assert(#synth.tones(with { tones = list }) == 300)
   local warped = core.synth.warp(x, { shift = 0.3, sigma = 0.1 })
+  local record = require("libration.record").new { rate = 1000, samples = x }
+  for _, name in ipairs { "lost_samples", "overload_recovery", "clock_jitter", "mains" } do
+    assert(synth.plant(record, name).samples > 200)
+  end
   assert(core.synth.clip(core.synth.resonate(warped, 0.1, 3), -1, 1) >= 0)
 end
