@@ -5,6 +5,7 @@
 #include "bind/draft.h"
 #include "bind/feed.h"
 #include "bind/sound.h"
+#include "store/columns.h"
 #include "store/file.h"
 #include "store/packed.h"
 #include "store/rows.h"
@@ -156,7 +157,60 @@ static int store_packed(lua_State *L) {
   return 1;
 }
 
+static void close_columns(void *context) { lbr_columns_close(context); }
+
+/***
+ * Opens a text file with numbers in columns of fixed width as a feed.
+ * @param path string: the file
+ * @param channels table: for each channel at (byte offset of its first line),
+ *   width (characters of a number), per_line (numbers in a line), line (bytes
+ *   from line to line)
+ * @param samples integer: of every channel
+ * @return feed: the numbers; or nil, message, code
+ * @usage
+ * local path = os.tmpname()
+ * local file = io.open(path, "w")
+ * file:write("  1.5E+00 -2.5E-01\n  3.0E+00\n")
+ * file:close()
+ * local channel = { at = 0, width = 9, per_line = 2, line = 19 }
+ * local feed <close> = core.store.columns(path, { channel }, 3)
+ * assert(feed:read(2, 2)[1][1] == -0.25 and feed:read(3, 1)[1][1] == 3)
+ * os.remove(path)
+ */
+static int store_columns(lua_State *L) {
+  const char *path = lbr_check_path(L, 1);
+  luaL_checktype(L, 2, LUA_TTABLE);
+  lua_settop(L, 3);
+  lua_Integer channels = luaL_len(L, 2);
+  luaL_argcheck(L, channels >= 1 && channels <= LBR_PACKED_MOST_CHANNELS, 2,
+                "a list of 1 to 65536 channels");
+  int64_t samples = (int64_t)lbr_check_count(L, 3, 0, INT64_MAX / 2);
+  lbr_columns_channel *list = lua_newuserdatauv(
+      L, (size_t)channels * sizeof *list, 0);
+  for (lua_Integer k = 0; k < channels; k++) {
+    lua_geti(L, 2, k + 1);
+    int at = lua_gettop(L);
+    list[k].at = integer_field(L, at, "at", 0, INT64_MAX / 2);
+    list[k].width = (size_t)integer_field(L, at, "width", 1, 64);
+    list[k].per_line = (size_t)integer_field(L, at, "per_line", 1, 1024);
+    list[k].line = (size_t)integer_field(L, at, "line", 1, 1024);
+    lua_pop(L, 1);
+  }
+  lbr_feed_handle *h = lbr_push_feed(L);
+  lua_pushvalue(L, 1);
+  lua_setiuservalue(L, -2, 1);
+  lbr_columns *columns;
+  lbr_why why;
+  lbr_status status = lbr_columns_open(path, list, (size_t)channels, samples,
+                                       &columns, &why);
+  if (status != LBR_OK) return lbr_refuse_file(L, status, path, &why);
+  h->feed = lbr_columns_feed(columns);
+  h->close = close_columns;
+  return 1;
+}
+
 static const luaL_Reg functions[] = {
+    {"columns", store_columns},
     {"head", store_head}, {"rows", store_rows}, {"packed", store_packed}, {NULL, NULL}};
 
 void lbr_add_files(lua_State *L) { luaL_setfuncs(L, functions, 0); }

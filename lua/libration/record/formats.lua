@@ -15,6 +15,7 @@ local M = {
   require "libration.record.sound",
   require "libration.record.sigmf",
   require "libration.record.raw",
+  require "libration.record.universal",
   (require "libration.record.csv"),
 }
 
