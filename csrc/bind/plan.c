@@ -336,6 +336,7 @@ static bench *push_bench(lua_State *L) {
     status = lbr_second_moment(&h->modes[mode].window, &b->c.second_moment);
   if (status != LBR_OK) lbr_raise(L, status, "window");
   b->c.kernel = b->kernel;
+  b->c.noise_bandwidth = lbr_kernel_noise_bandwidth(b->kernel);
   return b;
 }
 

@@ -20,6 +20,7 @@ typedef struct mode_state {
   lbr_kernel *endless; /* kernel of an endless record */
   lbr_kernel *kernel;  /* kernel at the candidate's length */
   double moment;       /* lbr_second_moment */
+  double enbw;         /* noise bandwidth, bins; 0: depends on the length */
   size_t fewest;       /* samples */
   size_t stern;        /* the line that failed last, tried first */
 } mode_state;
@@ -67,6 +68,8 @@ static lbr_status open_mode(const search *s, size_t m) {
     status = lbr_kernel_new(&mode->window, 1024, &state->kernel);
   if (status == LBR_OK)
     status = lbr_second_moment(&mode->window, &state->moment);
+  if (status == LBR_OK && mode->window.shape->terms > 0)
+    state->enbw = lbr_kernel_noise_bandwidth(state->endless);
   size_t fewest = lbr_mode_least_samples(mode);
   state->fewest = fewest > s->p->least_samples ? fewest : s->p->least_samples;
   return status;
@@ -160,8 +163,12 @@ static lbr_status make_case(search *s, const lbr_node *node, lbr_case *c) {
                   .n = node->n,
                   .averages = s->p->averages,
                   .coverage = s->p->coverage,
-                  .second_moment = m->moment};
-  return lbr_kernel_resize(m->kernel, node->n);
+                  .second_moment = m->moment,
+                  .noise_bandwidth = m->enbw};
+  lbr_status status = lbr_kernel_resize(m->kernel, node->n);
+  if (status == LBR_OK && m->enbw <= 0)
+    c->noise_bandwidth = lbr_kernel_noise_bandwidth(m->kernel);
+  return status;
 }
 
 /* Runs over the lines, the one that failed last first. */

@@ -8,8 +8,11 @@
 #include "plan/fold.h"
 
 #define PATHS 4096   /* paths kept, by rate modulo this */
-#define LEVELS 400   /* reach of a kernel, tabled at -k dB */
-#define TRUST 0.97   /* kernels of finite length may be lower by this */
+#define LEVELS 8000  /* reach of a kernel, tabled at -k STEP_DB */
+#define STEP_DB 0.05
+#define LONG 2048          /* samples; kernels of records that long ... */
+#define TRUST 0.9995       /* ... reach nearly as far as the endless one */
+#define TRUST_SHORT 0.95   /* shorter ones may reach less far */
 #define BIN_OFF 0.5  /* a bin reading may be this far off the line, bins */
 
 typedef struct mode_limits {
@@ -72,10 +75,11 @@ static double to_db(double ratio) { return 20 * log10(ratio); }
 
 /* Lower bound of the distance at which the kernel has fallen by `db`. */
 static double reach(mode_limits *m, lbr_kernel *kernel, double db) {
-  int level = db < LEVELS - 1 ? (int)db : LEVELS - 1;
+  double place = db / STEP_DB;
+  int level = place < LEVELS - 1 ? (int)place : LEVELS - 1;
   if (isnan(m->reach[level])) {
-    double found = lbr_kernel_reach(kernel, pow(10, -level / 20.0));
-    m->reach[level] = (float)(found * TRUST);
+    double found = lbr_kernel_reach(kernel, pow(10, -level * STEP_DB / 20));
+    m->reach[level] = (float)found;
   }
   return m->reach[level];
 }
@@ -106,7 +110,8 @@ static double least_for(const lbr_limits *l, mode_limits *m,
     distance = fmin(distance, lbr_fold_distance(hz - far, hz + far, rate));
   }
   if (bins <= 0) return 0;
-  return distance > 0 ? bins / distance : INFINITY;
+  double t = bins / distance; /* INFINITY where it folds onto the line */
+  return t * (t * rate > LONG ? TRUST : TRUST_SHORT);
 }
 
 static double noise_least(const lbr_problem *p, const lbr_path *path, size_t i,

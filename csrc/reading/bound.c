@@ -37,8 +37,7 @@ void lbr_bound_search(const lbr_case *c, size_t line, double *low,
 lbr_variance lbr_bound_variance(const lbr_case *c, size_t line) {
   const lbr_front_end *f = c->front;
   double nyquist = c->path->rate / 2, slopes = 0;
-  double per_density = lbr_kernel_noise_bandwidth(c->kernel) /
-                       lbr_duration(c) /
+  double per_density = c->noise_bandwidth / lbr_duration(c) /
                        (c->path->nominal[line] * c->path->nominal[line]);
   for (size_t j = 0; f->jitter_s > 0 && j < c->scene->n_sources; j++) {
     const lbr_source *s = &c->scene->sources[j];
@@ -313,28 +312,30 @@ static double least_own(const lbr_case *c, size_t line, double read_hz) {
   return own;
 }
 
-static double least_ratio(const lbr_case *c, size_t line, double enough,
-                          double (*sum)(const lbr_leak *, double),
-                          size_t *asked) {
-  lbr_leak l = lbr_leak_of_case(c, line, 0, asked);
+double lbr_bound_glance(const lbr_case *c, size_t line, double enough) {
+  size_t asked = 0;
+  lbr_leak l = lbr_leak_of_case(c, line, 0, &asked);
   lbr_bound b = {.sigma = sigma(c, line)};
   b.own = least_own(c, line, l.read_hz);
   double room = affordable(c, line, b.own, 0, b.sigma, enough);
-  if (room >= 0) b.others = sum(&l, room * (1 + 1e-9));
+  if (room >= 0) b.others = lbr_leak_nominal(&l, room * (1 + 1e-9));
   judge(c, line, &b);
   return b.ratio;
 }
 
-double lbr_bound_glance(const lbr_case *c, size_t line, double enough) {
-  size_t asked = 0;
-  return least_ratio(c, line, enough, lbr_leak_nominal, &asked);
-}
-
 double lbr_bound_reached(const lbr_case *c, size_t line, lbr_care care,
                          double enough, size_t *asked) {
-  return least_ratio(c, line, enough,
-                     care == LBR_CARE_JOINT ? lbr_leak_reached
-                                            : lbr_leak_plain, asked);
+  lbr_leak l = lbr_leak_of_case(c, line, 0, asked);
+  lbr_bound b = {.sigma = sigma(c, line)};
+  lbr_parts p = lbr_bound_parts(c, line, 0);
+  b.own = own_product(&p);
+  double room = affordable(c, line, b.own, p.offset, b.sigma, enough);
+  bool joint = care == LBR_CARE_JOINT;
+  if (room >= 0)
+    b.others = joint ? lbr_leak_reached(&l, room) : lbr_leak_plain(&l, room);
+  b.others = b.others * lbr_parts_scale(c) + p.offset;
+  judge(c, line, &b);
+  return b.ratio;
 }
 
 static double square(double x) { return x * x; }

@@ -35,6 +35,7 @@ typedef struct lbr_case {
   unsigned averages;    /* records averaged, at least 1 */
   double coverage;      /* k: random terms enter as k sigma */
   double second_moment; /* sum w^2 u^2 / sum w^2, u = time / T */
+  double noise_bandwidth; /* of the window, bins */
 } lbr_case;
 
 /* sum w^2 u^2 / sum w^2 of a window, by quadrature. */
