@@ -11,6 +11,7 @@
 #define MODEL 4096     /* length at which finite kernels are looked at */
 #define THIN 1e-3      /* of what is allowed: pairs below do not matter */
 #define ENOUGH 1.25    /* bins of an interval's near end that hold its peak */
+#define LOBES 16       /* no main lobe reaches further, bins */
 #define FLANK 32.5     /* bins from which envelopes can be compared */
 #define MARGIN 1e-8    /* and enclosures looser by this */
 #define STEADY 0.9999  /* noise bandwidths differ less with the length */
@@ -190,6 +191,16 @@ static span ever(double low, double high, double n, double t1, double t2) {
   return (span){fmin(low * t1, low * t2) - n, fmax(high * t1, high * t2) - n};
 }
 
+/* Lower bound of the kernel over an interval; beyond the main lobes every bin
+ * has a zero. */
+static double least_anywhere(lbr_kernel *kernel, span x) {
+  double least, most;
+  bool far = x.from > LOBES || x.to < -LOBES;
+  if (far && x.to - x.from >= 1) return 0;
+  lbr_kernel_range(kernel, x.from, x.to, &least, &most);
+  return fmax(least - MARGIN, 0);
+}
+
 /* Lower bound of the supremum of the kernel over what the distance is always
  * able to be; without such points, of the kernel wherever it may be. */
 static double least_most(lbr_kernel *kernel, span certain, span possible) {
@@ -202,8 +213,7 @@ static double least_most(lbr_kernel *kernel, span certain, span possible) {
     lbr_kernel_range(kernel, certain.from, certain.to, &least, &most);
     return fmax(most - MARGIN, 0);
   }
-  lbr_kernel_range(kernel, possible.from, possible.to, &least, &most);
-  return fmax(least - MARGIN, 0);
+  return least_anywhere(kernel, possible);
 }
 
 /* Lower bound of the kernel's mean over the distance's interval: sources that
@@ -211,10 +221,7 @@ static double least_most(lbr_kernel *kernel, span certain, span possible) {
  * bin of |sin| has the mean 2 / pi. */
 static double least_mean(lbr_kernel *kernel, span certain, span possible) {
   double least, most, width = certain.to - certain.from;
-  if (width < 1) {
-    lbr_kernel_range(kernel, possible.from, possible.to, &least, &most);
-    return fmax(least - MARGIN, 0);
-  }
+  if (width < 1) return least_anywhere(kernel, possible);
   bool beyond = fabs(certain.to) > fabs(certain.from);
   double far = beyond ? certain.to : certain.from;
   double near = beyond ? far - 1 : far + 1;
