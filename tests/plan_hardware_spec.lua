@@ -39,12 +39,16 @@ describe("a rate", function()
 
   it("of a list is one of the list", function()
     local p = plan { rates = { "1 kS/s", "44.1 kS/s", fraction.new(8000, 3) } }
-    assert.are.equal(p.digitizer.rates.rates[p.setting.entry], p.rate)
+    local found = false
+    for _, rate in ipairs(p.digitizer.rates.rates) do
+      found = found or rate == p.rate
+    end
+    assert.is_true(found and next(p.setting) == nil)
   end)
 
   it("of a range with a step stands on a step", function()
     local p = plan { rate = "1..2 kS/s", rate_step = "7 S/s" }
-    assert.are.equal(fraction.new(1000) + fraction.new(7) * p.setting.step, p.rate)
+    assert.are.equal(1, ((p.rate - fraction.new(1000)) / 7).denominator)
     assert.is_true(p.rate <= fraction.new(2000))
   end)
 

@@ -140,7 +140,7 @@ describe("a refusal", function()
       { name = "a", hz = 100, drift = "0.5 %", amplitude = "1 V", tolerance = "1 %" },
       { name = "b", hz = 100.5, drift = "0.5 %", amplitude = "1 V", tolerance = "1 %" } },
       digitizer = { rates = { "1 kHz" } } }
-    local refusal = check(t, "every term", ".", { "drift" })
+    local refusal = check(t, "leakage", ".", { "drift" })
     assert.matches("no record comes within 40 times the tolerances", refusal.message)
   end)
 
