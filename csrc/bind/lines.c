@@ -131,5 +131,6 @@ int lbr_open_lines(lua_State *L) {
   luaL_newlib(L, functions);
   luaL_setfuncs(L, lbr_lines_fit_functions, 0);
   luaL_setfuncs(L, lbr_lines_list_functions, 0);
+  luaL_setfuncs(L, lbr_lines_shaft_functions, 0);
   return 1;
 }

@@ -5,6 +5,7 @@
 #include "bind/lines.h"
 #include "bind/samples.h"
 #include "lines/joint.h"
+#include "lines/project.h"
 #include "lines/sine.h"
 
 #define JOINT_CLASS "libration.joint"
@@ -320,7 +321,40 @@ static int joint_batch(lua_State *L) {
   return 2;
 }
 
+/*** A record less an offset and lines.
+ * @param x samples: the record
+ * @param offset number: to be taken away
+ * @param flat table: frequency (cycles per sample), amplitude and phase (rad,
+ *   of the cosine at the record's centre) of line 1, then of line 2 ...
+ * @return samples: what is left
+ * @usage
+ * local x = lb.samples.make(101, function(i) return 3 + math.cos(i - 51) end)
+ * local left = core.lines.without(x, 3, { 0.5 / math.pi, 1, 0 })
+ * assert(left:peak() < 1e-14)
+ */
+static int without(lua_State *L) {
+  size_t n;
+  const double *x = lbr_check_samples(L, 1, &n);
+  double offset = luaL_checknumber(L, 2);
+  luaL_checktype(L, 3, LUA_TTABLE);
+  lua_Integer numbers = luaL_len(L, 3);
+  luaL_argcheck(L, numbers % 3 == 0, 3, "not three numbers a line");
+  double *y = lbr_push_unset_samples(L, n);
+  for (size_t i = 0; i < n; i++) y[i] = x[i] - offset;
+  for (lua_Integer i = 1; i <= numbers; i += 3) {
+    double row[3];
+    for (lua_Integer k = 0; k < 3; k++) {
+      lua_geti(L, 3, i + k);
+      row[k] = luaL_checknumber(L, -1);
+      lua_pop(L, 1);
+    }
+    lbr_take_away(y, n, row[0], row[1] * cos(row[2]), -row[1] * sin(row[2]));
+  }
+  return 1;
+}
+
 const luaL_Reg lbr_lines_fit_functions[] = {
     {"joint", joint},       {"joint_batch", joint_batch},
     {"sine3", sine3},       {"sine4", sine4},
-    {"sine_batch", sine_batch}, {NULL, NULL}};
+    {"sine_batch", sine_batch}, {"without", without},
+    {NULL, NULL}};

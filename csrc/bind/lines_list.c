@@ -176,7 +176,9 @@ static int unknown_estimator(lua_State *L) {
  * @return number: bins; or nil, message, code ("domain") where the formula has
  *   no value
  * @usage
- * local x = lb.samples.make(64, function(i) return math.cos(math.pi * i / 4) end)
+ * local x = lb.samples.make(64, function(i)
+ *   return math.cos(math.pi * i / 4)
+ * end)
  * assert(math.abs(core.lines.estimate("candan2013", x, 8)) < 1e-12)
  */
 static int estimate(lua_State *L) {

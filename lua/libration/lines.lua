@@ -8,6 +8,8 @@
 
 local core = require("libration.core").lines
 local list = require "libration.lines.list"
+local orders = require "libration.lines.orders"
+local quality = require "libration.lines.quality"
 local result = require "libration.lines.result"
 local sine = require "libration.lines.sine"
 
@@ -64,8 +66,9 @@ end
 --   of a segment), most (lines that are too many, 512); channel, or rate and unit
 -- @return table: lines[i] = { hz, amplitude (peak), phase (first segment), u_hz, u_amplitude,
 --   leak (most that stronger lines add or take, not part of u_amplitude), over_floor_db,
---   floor_density (unit/sqrt(Hz), one-sided), chance (of noise as high anywhere), bin }, leaks, threshold_db, averages (effective), bins_tested, first_hz, last_hz and the
---   options used; or nil, message, code ("domain")
+--   floor_density (unit/sqrt(Hz), one-sided), chance (of noise as high anywhere), bin },
+--   leaks, threshold_db, averages (effective), bins_tested, first_hz, last_hz and the options
+--   used; or nil, message, code ("domain")
 -- @usage
 -- local spec = { rate = 1000, samples = 2000, density = 0.01, seed = 1 }
 -- local x = lb.synth.noise(spec)
@@ -97,6 +100,77 @@ end
 -- assert(math.abs(bins - 64 * 0.8 / (2 * math.pi)) < 0.01)
 function M.estimate(name, x, k, im)
   return core.estimate(name, x, k, im)
+end
+
+--- Distortion and noise beside one sine: THD, THD + noise, SINAD, effective bits, spurs.
+-- The sine is fitted (four parameters, three when hz is known), the harmonics are fitted jointly
+-- where they appear after folding, and spurs are read in what the fit leaves, so that nothing
+-- leaks from the fundamental as long as it is a steady sine; where it is not, or where the
+-- record repeats itself or harmonics fall on each other, warnings say so. Two conventions of
+-- effective bits are given: of_full_scale = log2(2 full_scale / (residual rms sqrt 12)) (IEEE Std
+-- 1057-2017) and of_sinad = (SINAD - 1.76 dB) / 6.02 dB; they differ below full scale.
+-- @param source record or samples: 256 samples or more
+-- @param options table: hz (known) or near_hz (start); harmonics (the highest, 10); full_scale
+--   (peak, unit; default: the record's own); channel, or rate and unit
+-- @return table: hz, amplitude (peak), u_hz, u_amplitude, thd and u_thd (ratio to the
+--   fundamental), thd_db, residual_rms (noise and distortion), thd_plus_noise (ratio), sinad_db,
+--   u_sinad_db, noise_rms, snr_db (without the harmonics), effective_bits = { of_full_scale,
+--   of_sinad }, spur = { hz, amplitude, db, harmonic or nil }, spurious_free_db, harmonics[i] =
+--   { harmonic, hz, appears_hz, amplitude, u_amplitude, db, or hidden_by }, warnings (texts); or
+--   nil, message, code
+-- @usage
+-- local x = lb.synth.tones { rate = 1000, samples = 1000, tones = {
+--   { hz = 101.3, amplitude = 1 }, { hz = 202.6, amplitude = 0.01 } } }
+-- x:add(lb.synth.noise { rate = 1000, samples = 1000, density = 1e-5 })
+-- local q = lb.lines.quality(x, { rate = 1000 })
+-- assert(math.abs(q.thd - 0.01) < 1e-4 and q.spur.harmonic == 2)
+function M.quality(source, options)
+  return quality.quality(source, options)
+end
+
+--- Fits amplitudes and phases of orders of a shaft, all at once.
+-- The shaft runs at a steady, known speed, or its pulses say where it is: then the samples between
+-- first and last pulse are fitted against its angle, which steady speed and steady acceleration
+-- meet exactly. Trigger jitter takes from high orders (half the power where order x speed x
+-- jitter = 0.1325); the loss is stated, not corrected.
+-- @param source record or samples
+-- @param options table: orders (list, or a text such as "1..10"; up to 64, need not be whole);
+--   speed_hz (turns a second), or pulses (times, s from the first sample; a list or samples, 3 or
+--   more) and per_turn (pulses in a turn, 1); jitter_s (standard deviation of a pulse's time;
+--   default: estimated from the pulses, at most); channel, or rate and unit
+-- @return table: lines[i] = { order, hz (mean), amplitude (peak), phase (rad, of the cosine, at
+--   the record's centre for speed_hz, at the first pulse for pulses), u_amplitude, u_phase,
+--   jitter_loss_db (pulses) }, offset, residual_rms, speed_hz, used (samples), turns, jitter_s,
+--   half_power_order; or nil, message, code ("domain")
+-- @usage
+-- local x = lb.synth.tones { rate = 1000, samples = 1000,
+--   tones = { { hz = 24.6, amplitude = 2 }, { hz = 7 * 24.6, amplitude = 0.5 } } }
+-- local r = lb.lines.orders(x, { rate = 1000, speed_hz = 24.6, orders = { 1, 7 } })
+-- assert(math.abs(r.lines[2].amplitude - 0.5) < 1e-9)
+function M.orders(source, options)
+  return orders.orders(source, options)
+end
+
+--- Averages a record over the turns of a shaft: what is not tied to it averages out.
+-- Every turn is read at the same angles, between samples too (1e-5 of a tone's amplitude up to
+-- 0.4 of the rate), from the pulses' times to a small part of a sample.
+-- @param source record or samples
+-- @param options table: pulses (times, s from the first sample; a list or samples, 3 or more),
+--   per_turn (pulses in a turn, 1), points (angles of a turn, 256; orders above half of them
+--   fold), orders (whole ones to be read from the average, "1..10"), jitter_s (as in orders);
+--   channel, or rate and unit
+-- @return table: points[i] = { angle_turns (since a pulse), mean, u_mean (standard uncertainty
+--   from the scatter of the turns) }, turns, deviation_rms, orders[i] = { order, amplitude (peak),
+--   phase (rad, of the cosine, at the pulse), u_amplitude, jitter_loss_db }, speed_hz, jitter_s,
+--   half_power_order; or nil, message, code ("domain": no whole turn in the record)
+-- @usage
+-- local x = lb.synth.tones { rate = 1000, samples = 1000, tones = { { hz = 20, amplitude = 2 } } }
+-- local pulses = {}
+-- for i = 0, 19 do pulses[i + 1] = 0.05 * i end
+-- local r = lb.lines.synchronous(x, { rate = 1000, pulses = pulses })
+-- assert(r.turns == 18 and math.abs(r.orders[1].amplitude - 2) < 1e-4)
+function M.synchronous(source, options)
+  return orders.synchronous(source, options)
 end
 
 --- A result again from the text that its json() wrote.
