@@ -219,7 +219,7 @@ end)
 
 describe("decimators", function()
   it("hold flatness and rejection on tones, whatever the stages", function()
-    for _, factor in ipairs { 2, 5, 12, 64, 97, 1000 } do
+    for _, factor in ipairs { 2, 5, 12, 64, 97, 210 } do
       local d = lb.filter.decimator { factor = factor, rejection = 90, keep = 0.38 }
       assert(d.rejection_db >= 90 and d.flatness <= 1e-4)
       local n = factor * 300

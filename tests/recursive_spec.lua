@@ -78,6 +78,35 @@ describe("recursive filters", function()
     end
   end)
 
+  -- The law of the bilinear transformation (Oppenheim and Schafer, ch. 7): the gain at f is that
+  -- of the analog low-pass at the frequency that f is moved to. Coefficients are doubles: the
+  -- error grows as the inverse square of the edge.
+  it("have the analog gain at the moved frequency, at edges down to 1e-4 of the rate", function()
+    local function t(share) return math.tan(math.pi * share) end
+    local function moved(band, low, high, at)
+      if band == "low" then return t(at) / t(low) end
+      if band == "high" then return t(low) / t(at) end
+      local w = math.abs((t(at) ^ 2 - t(low) * t(high)) / (t(at) * (t(high) - t(low))))
+      return band == "pass" and w or 1 / w
+    end
+    for k = 1, 320 do
+      local low = 10 ^ random(-4, -0.4)
+      local spec = { shape = shapes[k % 4 + 1], order = 1 + k % 16, band = bands[k // 4 % 4 + 1],
+        edge = { low }, rate = 1 }
+      if k // 4 % 4 > 1 then spec.edge[2] = math.min(0.49, low * random(1.1, 3)) end
+      if k % 4 == 1 or k % 4 == 3 then spec.ripple = random(0.05, 1) end
+      if k % 4 == 3 then spec.stop = random(40, 80) end
+      local f = lb.filter.digital(spec)
+      local analog = lb.filter { shape = spec.shape, order = spec.order, corner = "1 Hz",
+        ripple = spec.ripple, stop = spec.stop }
+      for _ = 1, 20 do
+        local at = math.min(0.499, low * 10 ^ random(-1, 1))
+        local want = analog:gain(moved(spec.band, low, spec.edge[2], at))
+        assert.near(want, f:gain(at), 3e-15 / low ^ 2 + 1e-10, tostring(f))
+      end
+    end
+  end)
+
   it("keep the gain at 0 Hz even for edges far below the rate", function()
     local f = lb.filter.digital { shape = "butterworth", order = 8, edge = 0.01, rate = 1000 }
     assert.near(1, f:gain(0), 1e-12)

@@ -102,7 +102,7 @@ end
 --   rejection = "60 dB" }
 -- assert(math.abs(f:gain(0) - 1) < 1e-12 and math.abs(f:gain(300)) < 1e-3)
 function Taps:gain(hz)
-  local share, gain = self.rate and hz / self.rate:number() or hz, 1
+  local share, gain = self.rate and hz / self.rate or hz, 1
   for _, part in ipairs(self.design) do
     gain = gain * core.taps_gain(part.taps, share / part.rate)
   end
@@ -148,9 +148,9 @@ local rejection = { options.quantity(units.db, { least = 20, most = 160 }), defa
 local linear_schema = {
   band = { options.choice { "low", "high", "pass", "stop" }, default = "low" },
   edge = { parts.edges(), required = true, hint = 'such as "100 Hz" or "100..200 Hz"' },
-  rate = { options.quantity(units.rate, { above = base.fraction(0) }), required = true,
+  rate = { options.quantity(parts.rate, { above = 0 }), required = true,
     hint = 'such as "51.2 kS/s"' },
-  transition = { options.quantity(units.hz, { above = base.fraction(0) }), required = true,
+  transition = { options.quantity(parts.hz, { above = 0 }), required = true,
     hint = 'the width of a transition, such as "20 Hz"' },
   rejection = rejection,
 }
@@ -168,8 +168,8 @@ local function bands(band, edge, half)
 end
 
 local function check_transition(spec, mistakes)
-  local half, low, high = spec.transition:number() / 2, spec.edge[1], spec.edge[2]
-  if low - half <= 0 or (high or low) + half >= spec.rate:number() / 2
+  local half, low, high = spec.transition / 2, spec.edge[1], spec.edge[2]
+  if low - half <= 0 or (high or low) + half >= spec.rate / 2
       or (high and low + half >= high - half) then
     mistakes:add("transition", "transitions reach over 0, half the rate or each other")
   end
@@ -190,16 +190,16 @@ end
 -- assert(f.rejection_db >= 60 and f.flatness <= 1e-3 and math.abs(f:gain(150) - 1) < 1e-3)
 function M.linear(spec)
   local read = parts.read(linear_schema, spec, "linear-phase filter", check_transition)
-  local rate = read.rate:number()
-  local edge, width = {}, read.transition:number() / rate
+  local rate = read.rate
+  local edge, width = {}, read.transition / rate
   for i, hz in ipairs(read.edge) do
     edge[i] = hz / rate
   end
   local pass, stop = bands(read.band, edge, width / 2)
   local h, flat, gain = parts.taps(read.band, edge, width, ratio(read.rejection), pass, stop)
   local names = { low = "low-pass", high = "high-pass", pass = "band-pass", stop = "band-stop" }
-  local title = ("linear-phase %s, %s at %s S/s"):format(names[read.band],
-    parts.edges_text(read.edge), tostring(read.rate))
+  local title = ("linear-phase %s, %s at %.12g S/s"):format(names[read.band],
+    parts.edges_text(read.edge), read.rate)
   return finish({ title = title, taps = h, rate = read.rate, flatness = flat,
     rejection_db = db(gain), band = read.band, edge = read.edge }, { { taps = h, rate = 1 } },
     { {} })
@@ -349,7 +349,7 @@ function M.resampler(spec)
   end
   local h, flat, gain = parts.taps("low", { 0.5 * lower }, stop - pass, ratio(read.rejection),
     { { 0, pass } }, { { stop, 0.5 } })
-  return finish({ title = title, up = read.up, down = read.down, rate = read.from, flatness = flat,
+  return finish({ title = title, up = read.up, down = read.down, rate = read.from and read.from:number(), flatness = flat,
     rejection_db = db(gain) }, { { taps = h, rate = read.up } },
     { { up = read.up, down = read.down } })
 end

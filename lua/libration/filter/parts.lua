@@ -30,20 +30,40 @@ function M.edges()
     end
     local read = {}
     for i, one in ipairs(ends) do
-      local hz, reason = units.hz(one)
+      local hz, reason = units.number(one, "Hz")
       if not hz then
         return mistakes:add(path, reason)
       end
-      read[i] = hz:number()
+      read[i] = hz
     end
     return read
   end
 end
 
+--- A sample rate as a number; no fraction is needed where nothing is divided.
+-- @param value any: "51.2 kS/s", a number of S/s, a fraction
+-- @return number: S/s; or nil and a reason
+function M.rate(value)
+  local rate, reason = units.rate(value)
+  if rate then
+    return rate:number()
+  elseif type(value) == "number" and value - value == 0 then
+    return value + 0.0
+  end
+  return nil, reason
+end
+
+--- A frequency as a number.
+-- @param value any: "20 Hz", a number of Hz, a fraction
+-- @return number: Hz; or nil and a reason
+function M.hz(value)
+  return units.number(value, "Hz")
+end
+
 -- Edges that the band cannot have, as a mistake.
 local function complain(spec, mistakes)
   local two = spec.band == "pass" or spec.band == "stop"
-  local low, high, half = spec.edge[1], spec.edge[2], spec.rate:number() / 2
+  local low, high, half = spec.edge[1], spec.edge[2], spec.rate / 2
   if two ~= (high ~= nil) then
     mistakes:add("edge", two and ('a band "%s" has two edges ("100..200 Hz")'):format(spec.band)
       or ('a band "%s" has one edge ("100 Hz")'):format(spec.band))
