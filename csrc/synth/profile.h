@@ -5,7 +5,9 @@
  *
  * where f is the speed and turns[n] its integral from the first point.  Before
  * the first and after the last point the speed stays as it is there.  Turns
- * are kept in 64 bits of mantissa: below 1e-9 turns for 1e10 turns.
+ * are kept in 64 bits of mantissa, below 1e-9 turns of error for 1e10 turns, at
+ * multiples of LBR_SPREAD_BLOCK and at the points; the samples between follow
+ * in doubles.
  */
 #ifndef LBR_SYNTH_PROFILE_H
 #define LBR_SYNTH_PROFILE_H
