@@ -43,26 +43,56 @@ static job *push_job(lua_State *L, size_t points, const char *what) {
   return j;
 }
 
-/* Windowed and padded transform of argument 1 into two new views. */
+#define SMALL 1024 /* points that are transformed on the stack */
+
+/* No allocation, and nothing that can raise, while the plan is held. */
+static void run_small(lua_State *L, const double *x, const double *w, size_t n,
+                      size_t points, double *re, double *im) {
+  _Alignas(64) double scratch[SMALL];
+  _Alignas(64) double complex bins[SMALL / 2 + 1];
+  lbr_transform *t;
+  lbr_status status = lbr_transform_get(points, &t);
+  if (status != LBR_OK) {
+    lbr_raise(L, status, "transform");
+    return;
+  }
+  lbr_transform_windowed(t, x, w, n, scratch, bins);
+  lbr_transform_put(t);
+  for (size_t k = 0; k <= points / 2; k++) {
+    re[k] = creal(bins[k]);
+    im[k] = cimag(bins[k]);
+  }
+}
+
+/* One of the two blocks that take the result: argument `arg` or a new one. */
+static double *block_at(lua_State *L, int arg, size_t bins) {
+  size_t n;
+  if (lua_isnoneornil(L, arg)) return lbr_push_unset_samples(L, bins);
+  double *block = lbr_check_writable_samples(L, arg, &n);
+  luaL_argcheck(L, n == bins, arg, "not points // 2 + 1 values");
+  lua_pushvalue(L, arg);
+  return block;
+}
+
+/* Windowed and padded transform of argument 1 into two views, those of
+ * arguments points_arg + 1 and + 2 or new ones. */
 static int forward_of(lua_State *L, const double *w, int points_arg) {
   size_t n;
+  lua_settop(L, points_arg + 2);
   const double *x = lbr_check_samples(L, 1, &n);
   if (n < 1) luaL_argerror(L, 1, "no samples to transform");
-  size_t points = lua_isnoneornil(L, points_arg)
+  size_t points = lua_isnil(L, points_arg)
                       ? n
                       : lbr_check_count(L, points_arg, n, LBR_TRANSFORM_MOST);
   if (points > LBR_TRANSFORM_MOST)
     luaL_argerror(L, 1, "more than 2^27 samples");
-  double *re = lbr_push_samples(L, points / 2 + 1);
-  double *im = lbr_push_samples(L, points / 2 + 1);
-  job *j = push_job(L, points, "transform");
-  lbr_transform_windowed(j->transform, x, w, n, j->scratch, j->bins);
-  for (size_t k = 0; k <= points / 2; k++) {
-    re[k] = creal(j->bins[k]);
-    im[k] = cimag(j->bins[k]);
-  }
-  lua_closeslot(L, -1);
-  lua_pop(L, 1);
+  double *re = block_at(L, points_arg + 1, points / 2 + 1);
+  double *im = block_at(L, points_arg + 2, points / 2 + 1);
+  luaL_argcheck(L, re != im, points_arg + 2, "the same block twice");
+  if (points <= SMALL)
+    run_small(L, x, w, n, points, re, im);
+  else
+    lbr_run_single(L, x, w, n, points, re, im);
   return 2;
 }
 
@@ -72,6 +102,9 @@ static int forward_of(lua_State *L, const double *w, int points_arg) {
  * 2^27, products of small primes fastest.  Raises on other lengths.
  * @param x samples: the record, at least one sample
  * @param points integer: length after zero padding, at least #x, default #x
+ * @param re samples: points // 2 + 1 values that take the real parts, default
+ *   a new block
+ * @param im samples: the same for the imaginary parts
  * @return samples: real parts, points // 2 + 1 values
  * @return samples: imaginary parts
  * @usage
@@ -86,6 +119,9 @@ static int forward(lua_State *L) { return forward_of(L, NULL, 2); }
  * @param x samples: the record
  * @param w samples: the window, as long as the record
  * @param points integer: length after zero padding, at least #x, default #x
+ * @param re samples: points // 2 + 1 values that take the real parts, default
+ *   a new block
+ * @param im samples: the same for the imaginary parts
  * @return samples: real parts, points // 2 + 1 values
  * @return samples: imaginary parts
  * @usage
@@ -164,6 +200,8 @@ static const luaL_Reg functions[] = {
 int lbr_open_spectrum(lua_State *L) {
   luaL_newlib(L, functions);
   lbr_add_averages(L);
+  lbr_add_singles(L);
   lbr_add_statistics(L);
+  lbr_add_zoom(L);
   return 1;
 }

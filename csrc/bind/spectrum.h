@@ -7,6 +7,13 @@
 #include "bind/bind.h"
 
 void lbr_add_averages(lua_State *L);
+void lbr_add_singles(lua_State *L);
 void lbr_add_statistics(lua_State *L);
+void lbr_add_zoom(lua_State *L);
+
+/* The transform of w[n] x[n] (w NULL: no window) into re and im, by an object
+ * that is kept for the next of the same length; raises when memory is out. */
+void lbr_run_single(lua_State *L, const double *x, const double *w, size_t n,
+                    size_t points, double *re, double *im);
 
 #endif

@@ -1,18 +1,23 @@
+#define _GNU_SOURCE /* madvise */
 #include "spectrum/transform.h"
 
 #include <fftw3.h>
 #include <pthread.h>
 #include <stdbool.h>
+#include <stdint.h>
 #include <stdlib.h>
 #include <string.h>
+#include <sys/mman.h>
 
 #include "base/checked.h"
 
 #define IDLE_PLANS 32          /* plans kept although nobody uses them */
+#define HUGE_PAGE ((size_t)2 << 20)
 #define HEADROOM (1024 * 1024) /* bytes that must be free before planning */
 
 struct lbr_transform {
   size_t points;
+  bool is_complex;
   fftw_plan forward, back;
   size_t users;       /* how many hold the plan */
   bool forgotten;     /* not in the cache: the last user frees it */
@@ -23,12 +28,25 @@ struct lbr_transform {
 static pthread_mutex_t lock = PTHREAD_MUTEX_INITIALIZER;
 static lbr_transform *cache;
 
-double *lbr_transform_buffer(size_t count) {
+/* Large pages for large buffers: first writes cost a tenth.  Only a hint. */
+static void advise(void *data, size_t bytes) {
+  uintptr_t from = ((uintptr_t)data + HUGE_PAGE - 1) & ~(HUGE_PAGE - 1);
+  uintptr_t to = ((uintptr_t)data + bytes) & ~(HUGE_PAGE - 1);
+  if (to > from) (void)madvise((void *)from, to - from, MADV_HUGEPAGE);
+}
+
+double *lbr_transform_unset(size_t count) {
   size_t bytes;
   if (lbr_size(count ? count : 1, sizeof(double), &bytes) != LBR_OK)
     return NULL;
   double *buffer = fftw_malloc(bytes);
-  if (buffer) memset(buffer, 0, bytes);
+  if (buffer) advise(buffer, bytes);
+  return buffer;
+}
+
+double *lbr_transform_buffer(size_t count) {
+  double *buffer = lbr_transform_unset(count);
+  if (buffer) memset(buffer, 0, (count ? count : 1) * sizeof *buffer);
   return buffer;
 }
 
@@ -40,21 +58,32 @@ static void free_plan(lbr_transform *t) {
   free(t);
 }
 
+static void plan_real(lbr_transform *t, double *x, double *bins) {
+  int n = (int)t->points;
+  t->forward = fftw_plan_dft_r2c_1d(n, x, (fftw_complex *)bins,
+                                    FFTW_ESTIMATE | FFTW_PRESERVE_INPUT);
+  t->back = fftw_plan_dft_c2r_1d(n, (fftw_complex *)bins, x,
+                                 FFTW_ESTIMATE | FFTW_DESTROY_INPUT);
+}
+
 /* Planning on scratch of our own; the lock is held. */
-static lbr_status make_plan(size_t n, lbr_transform **out) {
+static lbr_status make_plan(size_t n, bool is_complex, lbr_transform **out) {
   lbr_transform *t = lbr_alloc(1, sizeof *t);
-  double *x = lbr_transform_buffer(n);
-  double *bins = lbr_transform_buffer(2 * (n / 2 + 1));
+  double *x = lbr_transform_buffer(2 * n);
+  double *bins = lbr_transform_buffer(2 * n + 2);
   void *headroom = malloc(HEADROOM);
   free(headroom);
   lbr_status status = LBR_NO_MEMORY;
   if (!t || !x || !bins || !headroom) goto done;
   t->points = n;
-  t->forward = fftw_plan_dft_r2c_1d((int)n, x, (fftw_complex *)bins,
-                                    FFTW_ESTIMATE | FFTW_PRESERVE_INPUT);
-  t->back = fftw_plan_dft_c2r_1d((int)n, (fftw_complex *)bins, x,
-                                 FFTW_ESTIMATE | FFTW_DESTROY_INPUT);
-  if (t->forward && t->back) status = LBR_OK;
+  t->is_complex = is_complex;
+  if (is_complex)
+    t->forward = fftw_plan_dft_1d((int)n, (fftw_complex *)x,
+                                  (fftw_complex *)bins, FFTW_FORWARD,
+                                  FFTW_ESTIMATE | FFTW_PRESERVE_INPUT);
+  else
+    plan_real(t, x, bins);
+  if (t->forward && (t->back || is_complex)) status = LBR_OK;
 done:
   lbr_transform_drop(x);
   lbr_transform_drop(bins);
@@ -65,9 +94,9 @@ done:
   return status;
 }
 
-static lbr_transform *find_plan(size_t n) {
+static lbr_transform *find_plan(size_t n, bool is_complex) {
   for (lbr_transform *t = cache; t; t = t->next)
-    if (t->points == n) return t;
+    if (t->points == n && t->is_complex == is_complex) return t;
   return NULL;
 }
 
@@ -85,13 +114,13 @@ static void trim(size_t keep) {
   }
 }
 
-lbr_status lbr_transform_get(size_t n, lbr_transform **out) {
+static lbr_status get(size_t n, bool is_complex, lbr_transform **out) {
   if (n < 1 || n > LBR_TRANSFORM_MOST) return LBR_DOMAIN;
   lbr_status status = LBR_OK;
   pthread_mutex_lock(&lock);
-  lbr_transform *t = find_plan(n);
+  lbr_transform *t = find_plan(n, is_complex);
   if (!t) {
-    status = make_plan(n, &t);
+    status = make_plan(n, is_complex, &t);
     if (status == LBR_OK) {
       t->next = cache;
       cache = t;
@@ -103,6 +132,14 @@ lbr_status lbr_transform_get(size_t n, lbr_transform **out) {
   }
   pthread_mutex_unlock(&lock);
   return status;
+}
+
+lbr_status lbr_transform_get(size_t n, lbr_transform **out) {
+  return get(n, false, out);
+}
+
+lbr_status lbr_transform_get_complex(size_t n, lbr_transform **out) {
+  return get(n, true, out);
 }
 
 void lbr_transform_put(lbr_transform *t) {
@@ -132,6 +169,11 @@ size_t lbr_transform_points(const lbr_transform *t) { return t->points; }
 void lbr_transform_forward(const lbr_transform *t, double *x,
                            double complex *bins) {
   fftw_execute_dft_r2c(t->forward, x, (fftw_complex *)bins);
+}
+
+void lbr_transform_complex(const lbr_transform *t, double complex *x,
+                           double complex *bins) {
+  fftw_execute_dft(t->forward, (fftw_complex *)x, (fftw_complex *)bins);
 }
 
 void lbr_transform_back(const lbr_transform *t, double complex *bins,

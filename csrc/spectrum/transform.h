@@ -43,8 +43,18 @@ void lbr_transform_windowed(const lbr_transform *transform, const double *x,
                             const double *w, size_t n, double *scratch,
                             double complex *bins);
 
+/* A complex transform, X[k] = sum_n x[n] exp(-2 pi i k n / n_points), from the
+ * same cache; given back with lbr_transform_put.  Only lbr_transform_complex
+ * may run it: from x to bins, n_points values each, not the same memory, both
+ * aligned as lbr_transform_buffer aligns (to 16 bytes at least).  x survives. */
+LBR_CHECKED lbr_status lbr_transform_get_complex(size_t n_points,
+                                                 lbr_transform **out);
+void lbr_transform_complex(const lbr_transform *transform, double complex *x,
+                           double complex *bins);
+
 /* Aligned, zeroed memory for count doubles (a bin takes two), or NULL. */
 double *lbr_transform_buffer(size_t count);
+double *lbr_transform_unset(size_t count); /* the same, not zeroed */
 void lbr_transform_drop(void *buffer); /* NULL is fine */
 
 /* The smallest length >= n whose prime factors are 2, 3 and 5. */
