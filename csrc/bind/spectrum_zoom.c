@@ -93,7 +93,8 @@ static double check_frequency(lua_State *L, int arg) {
  * @param workers integer: threads; default 0: one per core
  * @return zoom: methods run(x), decimation(), close()
  * @usage
- * local re = core.spectrum.zoom(4, 0, 0.25, 3):run(core.samples.from { 1, 1, 1, 1 })
+ * local x = core.samples.from { 1, 1, 1, 1 }
+ * local re = core.spectrum.zoom(4, 0, 0.25, 3):run(x)
  * assert(math.abs(re[1] - 4) < 1e-14 and math.abs(re[2]) < 1e-14)
  */
 static int zoom(lua_State *L) {
@@ -116,7 +117,7 @@ static int zoom(lua_State *L) {
  * @param x samples: the record, up to 2^27
  * @return samples: as many
  * @usage
- * local x = lb.samples.make(8, function(i) return math.cos(math.pi / 4 * i) end)
+ * local x = core.samples.from { 1, 0, -1, 0 }
  * assert(math.abs(core.spectrum.quadrature(x)[2] - 1) < 1e-15)
  */
 static int quadrature(lua_State *L) {

@@ -25,8 +25,9 @@ LBR_CHECKED lbr_status lbr_fourier_new(size_t n, unsigned workers,
 void lbr_fourier_free(lbr_fourier *fourier); /* NULL is fine */
 
 /* From in to out, n values each, not the same memory; out from
- * lbr_transform_buffer.  weights: NULL, or 2 n numbers, one for each real and imaginary part of the
- * input (a window of a real record read as complex pairs).  `in` survives. */
+ * lbr_transform_buffer.  weights: NULL, or 2 n numbers, one for each real and
+ * imaginary part of the input (a window of a real record read as complex
+ * pairs).  `in` survives. */
 LBR_CHECKED lbr_status lbr_fourier_run(lbr_fourier *fourier,
                                        const double complex *in,
                                        const double *weights,

@@ -48,7 +48,8 @@ lbr_status lbr_thin_make(lbr_thin *t, size_t by, double half, double shift) {
     average_over(t->re, r * (by - 1) + 1, by);
   /* h is even: tap i in the order of samples is h[taps - 1 - i] = h[i] */
   for (size_t i = 0; t->im && i < t->taps; i++) {
-    double complex w = conj(lbr_phase_product(shift, (double)(t->taps - 1 - i)));
+    double back = (double)(t->taps - 1 - i);
+    double complex w = conj(lbr_phase_product(shift, back));
     t->im[i] = t->re[i] * cimag(w);
     t->re[i] *= creal(w);
   }

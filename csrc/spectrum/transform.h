@@ -46,7 +46,7 @@ void lbr_transform_windowed(const lbr_transform *transform, const double *x,
 /* A complex transform, X[k] = sum_n x[n] exp(-2 pi i k n / n_points), from the
  * same cache; given back with lbr_transform_put.  Only lbr_transform_complex
  * may run it: from x to bins, n_points values each, not the same memory, both
- * aligned as lbr_transform_buffer aligns (to 16 bytes at least).  x survives. */
+ * aligned as lbr_transform_buffer does it (to 16 bytes).  x survives. */
 LBR_CHECKED lbr_status lbr_transform_get_complex(size_t n_points,
                                                  lbr_transform **out);
 void lbr_transform_complex(const lbr_transform *transform, double complex *x,

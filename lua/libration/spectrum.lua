@@ -75,7 +75,8 @@ end
 -- @return samples: the frequencies, Hz
 -- @usage
 -- local x = lb.samples.make(1000, function(i) return math.cos(2 * math.pi * 0.1003 * (i - 1)) end)
--- local re, im, hz = lb.spectrum.zoom(x, { rate = 1000, first_hz = 100, step_hz = 0.1, points = 9 })
+-- local band = { rate = 1000, first_hz = 100, step_hz = 0.1, points = 9 }
+-- local re, im, hz = lb.spectrum.zoom(x, band)
 -- assert(math.abs(hz[4] - 100.3) < 1e-12 and math.abs(re[4] - 500) < 3 and #im == 9)
 function M.zoom(x, options)
   for key in pairs(options) do
