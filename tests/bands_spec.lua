@@ -388,6 +388,32 @@ describe("spectral kurtosis", function()
 end)
 
 describe("analyses of a record", function()
+  it("average over segments, from memory and from a file alike", function()
+    local x = noise(40000, 6, 8000)
+    local path = os.tmpname()
+    local record = lb.record.new { rate = 8000, samples = x, unit = "V" }
+    assert(record:write(path, { float = true }))
+    local file = assert(lb.record.open(path, { unit = "V" }))
+    local spec = { fraction = 1, segment = 8192 }
+    local a, b = lb.bands.levels(record, spec), lb.bands.levels(file, spec)
+    file:close()
+    os.remove(path)
+    assert(a.segments == 4 and a.unused_samples == 40000 - 4 * 8192 and b.segments == 4)
+    local sums = {}
+    for k = 0, 3 do
+      local part = x:slice(k * 8192 + 1, (k + 1) * 8192)
+      for i, band in ipairs(lb.bands.levels(part, { rate = 8000, fraction = 1 }).bands) do
+        sums[i] = (sums[i] or 0) + band.rms ^ 2 / 4
+      end
+    end
+    for i, band in ipairs(a.bands) do
+      near(band.rms, math.sqrt(sums[i]), 1e-12)
+      assert(band.rms == b.bands[i].rms)
+    end
+    local none, message, code = lb.bands.levels(record, { segment = 50000 })
+    assert(not none and code == "domain" and message:find "50000 samples of 40000", message)
+  end)
+
   it("take rate and unit from it", function()
     local record = lb.record.new { rate = 8000, unit = "Pa", samples = noise(8000, 1, 8000) }
     local levels = lb.bands.levels(record, { fraction = 1, weighting = "A", reference = 20e-6 })

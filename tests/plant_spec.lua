@@ -381,6 +381,15 @@ describe("planted in the signal", function()
   end)
 end)
 
+describe("a spoilt record", function()
+  it("keeps its start, and hides its gaps", function()
+    local record = lb.record.new { rate = 100, samples = tones(sine, 200, 100),
+      start = "2026-03-01T12:00:00Z", gaps = { { after = 100, lost = 7 } } }
+    local lying = plant(record, "polarity")
+    assert(lying.start_ns == record.start_ns and lying:counter(150) < record:counter(150))
+  end)
+end)
+
 describe("planted between channels", function()
   local x, y = tones(sine), tones { { hz = 333, amplitude = 0.5 } }
   local record = lb.record.new { rate = RATE, channels = {

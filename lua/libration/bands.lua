@@ -152,17 +152,30 @@ end
 
 local levels_schema = input.schema(band_fields())
 levels_schema.window = { input.window, default = windows.window "hann" }
+levels_schema.segment = { options.integer(2, 1 << 27) }
+
+-- Mean line powers of segments, and how many there are.
+local function mean_powers(x, read, size)
+  local window, sum, count = read.window:samples(size), nil, 0
+  for block in input.segments(x, read, size) do
+    local power = core.line_powers(block, window)
+    sum, count = sum and sum:add(power) or power, count + 1
+  end
+  return sum:scale(1 / count), count
+end
 
 --- Fractional-octave levels of a record, class 1 of IEC 61260-1:2014.
--- The whole record is transformed at once; its line powers are summed with a band-pass of
--- Butterworth magnitude over each band.
+-- The whole record is transformed at once, or in segments, in bounded memory; the line powers
+-- are summed with a band-pass of Butterworth magnitude over each band.
 -- @param x record or samples
 -- @param spec table: rate (for samples), channel (1), fraction (3), order (of the band-pass, 3 to
---   32, default 6), weighting ("A", "C", "Z"), reference (rms at 0 dB, 1), window ("hann"), from_hz
+--   32, default 6), weighting ("A", "C", "Z"), reference (rms at 0 dB, 1), window ("hann"), segment
+--   (samples of each of the segments whose powers are averaged, default: the whole record), from_hz
 --   and to_hz (default: all bands that hold 16 lines and end below half the rate)
 -- @return table: bands, a list as from list with rms and db; total_rms, total_db (of all lines, 0
---   Hz included), kind, unit, resolution_hz, window, weighting; prints as a table; or nil, message,
---   "domain" where a band asked for is not resolved
+--   Hz included), kind, unit, resolution_hz, window, weighting, segments, unused_samples; prints as
+--   a table; or nil, message, "domain" where a band asked for is not resolved, a segment is longer
+--   than the record, or a transform longer than 2^27
 -- @usage
 -- local x = lb.synth.tones { rate = 8000, samples = 8000,
 --   tones = { { hz = 1000, amplitude = 2 } } }
@@ -170,9 +183,15 @@ levels_schema.window = { input.window, default = windows.window "hann" }
 -- assert(#levels.bands == 7 and math.abs(levels.bands[4].rms - math.sqrt(2)) < 1e-3)
 function M.levels(x, spec)
   local read = options.take(levels_schema, spec, "levels")
-  local samples, rate, unit = input.signal(x, read, "levels")
-  local power = core.line_powers(samples, read.window:samples(#samples))
-  return levels_of(power, rate / #samples, read, { unit = unit, window = read.window.name })
+  local n, rate, unit = input.facts(x, read, "levels")
+  local size = read.segment or n
+  if size > n or size > 1 << 27 then
+    return nil, ("levels: a segment of %d samples of %d; at most 2^27: give segment"):format(size,
+      n), "domain"
+  end
+  local power, segments = mean_powers(x, read, size)
+  return levels_of(power, rate / size, read, { unit = unit, window = read.window.name,
+    segments = segments, unused_samples = n - segments * size })
 end
 
 local lines_schema = band_fields()

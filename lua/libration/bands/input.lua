@@ -48,8 +48,8 @@ function M.schema(extra)
   return extra
 end
 
--- The samples, their rate in S/s and their unit.
-function M.signal(x, read, what)
+-- How many samples there are, their rate in S/s and their unit.
+function M.facts(x, read, what)
   if record.is(x) then
     if read.rate then
       error(what .. ": rate is given, but the record has one", 0)
@@ -57,7 +57,7 @@ function M.signal(x, read, what)
       error(("%s: channel %d does not exist; there are 1 to %d"):format(what, read.channel,
         #x.channels), 0)
     end
-    return x:values(read.channel), x.rate:number(), x.channels[read.channel].unit
+    return x.samples, x.rate:number(), x.channels[read.channel].unit
   elseif not core.samples.is(x) then
     error(("%s: a %s is neither samples nor a record"):format(what, type(x)), 0)
   elseif not read.rate then
@@ -65,7 +65,33 @@ function M.signal(x, read, what)
   elseif #x == 0 then
     error(what .. ": there are no samples", 0)
   end
-  return x, read.rate, "1"
+  return #x, read.rate, "1"
+end
+
+-- The samples, their rate in S/s and their unit.
+function M.signal(x, read, what)
+  local _, rate, unit = M.facts(x, read, what)
+  return record.is(x) and x:values(read.channel) or x, rate, unit
+end
+
+-- Iterator over whole segments of `size` samples, one after the other; what is left is left out.
+-- A block may be filled anew in every turn.
+function M.segments(x, read, size)
+  if record.is(x) then
+    local blocks = x:blocks { channel = read.channel, samples = size }
+    return function()
+      local block = blocks()
+      return block and #block == size and block or nil
+    end
+  end
+  local done = 0
+  return function()
+    if done + size > #x then
+      return nil
+    end
+    done = done + size
+    return x:slice(done - size + 1, done)
+  end
 end
 
 return M

@@ -135,7 +135,7 @@ end
 
 local function put_together(bench, given)
   local spec = { rate = bench.exact_rate, title = given.title, start = given.start_ns,
-                 metadata = given.start_ns and given.metadata or nil, channels = {} }
+                 metadata = given.metadata, channels = {} }
   local n = math.huge
   for _, channel in ipairs(bench.channels) do
     n = math.min(n, #channel.values)
