@@ -87,6 +87,13 @@ describe("crossings", function()
     for i = 1, #up do assert.near(3.3 + 50 * (i - 1), up[i], 2e-3) end
     for i = 1, #down do assert.near(28.3 + 50 * (i - 1), down[i], 2e-3) end
     assert(#up == 20 and #down == 20)
+    up, down = x:crossings(0, 0.2, false, "cubic"), x:crossings(0, 0.2, true, "cubic")
+    for i = 2, 19 do
+      assert.near(3.3 + 50 * (i - 1), up[i], 5e-6)
+      assert.near(28.3 + 50 * (i - 1), down[i], 5e-6)
+    end
+    local ok, message = pcall(x.crossings, x, 0, 0, false, "spline")
+    assert(not ok and message:find("choose line or cubic", 1, true))
   end)
 
   it("count a noisy edge once, with hysteresis", function()
@@ -106,6 +113,8 @@ describe("crossings", function()
     local x = lb.samples.new { -1, 0 / 0, 1, -1, 1 }
     local at = x:crossings(0)
     assert(#at == 1 and at[1] == 3.5)
+    at = lb.samples.new { 0 / 0, -1, 1, 2 }:crossings(0, 0, false, "cubic")
+    assert(#at == 1 and at[1] == 1.5)
     assert.equal(0, #lb.samples.new(0):crossings(1))
     assert(not pcall(x.crossings, x, 0, -1))
   end)
@@ -162,7 +171,7 @@ describe("samples by angle", function()
   it("make an order of a speeding shaft a steady tone", function()
     local function pulse(i) return math.sin(2 * math.pi * turns(i - 1)) end
     local tacho = lb.samples.make(20000, pulse)
-    local pulses = tacho:crossings(0, 0.2)
+    local pulses = tacho:crossings(0, 0.2, false, "cubic")
     local x = lb.samples.make(20000, function(i)
       return 1.7 * math.cos(2 * math.pi * 5 * turns(i - 1) + 0.4)
     end)
@@ -174,8 +183,7 @@ describe("samples by angle", function()
       local want = 1.7 * math.cos(2 * math.pi * 5 * (i - 1) / 64 + 0.4)
       worst = math.max(worst, math.abs(y[i] - want))
     end
-    -- the straight line between tacho samples moves a pulse by up to 1e-5 turns
-    assert(worst < 2e-3, worst)
+    assert(worst < 1.7e-4, worst) -- 80 dB below the amplitude
   end)
 
   it("take one pulse a turn of many", function()

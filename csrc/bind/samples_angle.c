@@ -23,11 +23,14 @@ static const luaL_Reg kernel_meta[] = {
     {"__gc", kernel_close}, {"__close", kernel_close}, {NULL, NULL}};
 
 /***
- * Places where a level is crossed, on the straight line between samples.
+ * Places where a level is crossed, between the samples.
  * @param level number: the level, unit of the samples
  * @param hysteresis number: before a crossing counts the record must have been
  *   this far below the level (above it for falling ones), default 0
  * @param falling boolean: true for downward crossings, default upward
+ * @param curve string: "line" (default: on the straight line between the two
+ *   samples, right for pulses with edges of a sample or less) or "cubic" (on
+ *   the cubic through four samples, for smooth signals)
  * @return samples: places in samples, counted from 0 at the first sample;
  *   divided by the rate they are times
  * @usage
@@ -39,7 +42,12 @@ static int samples_crossings(lua_State *L) {
   size_t n;
   const double *x = lbr_check_samples(L, 1, &n);
   lbr_crossing_rule rule = {luaL_checknumber(L, 2), luaL_optnumber(L, 3, 0),
-                            lua_toboolean(L, 4)};
+                            lua_toboolean(L, 4), 0};
+  const char *curve = luaL_optstring(L, 5, "line");
+  rule.cubic = strcmp(curve, "cubic") == 0;
+  if (!rule.cubic && strcmp(curve, "line") != 0)
+    return luaL_argerror(L, 5, lua_pushfstring(
+        L, "\"%s\" is no curve; choose line or cubic", curve));
   luaL_argcheck(L, isfinite(rule.level), 2, "the level must be finite");
   luaL_argcheck(L, rule.hysteresis >= 0 && isfinite(rule.hysteresis), 3,
                 "the hysteresis must be 0 or more");

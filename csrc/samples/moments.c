@@ -55,45 +55,44 @@ static void swap(double *a, double *b) {
   *b = t;
 }
 
-/* The middle one of three, as the value to split at. */
-static double middle(double a, double b, double c) {
-  double low = a < b ? a : b, high = a < b ? b : a;
-  return c < low ? low : c > high ? high : c;
-}
-
-/* A value to split at that no order of the samples makes bad for long. */
-static double split_at(const double *x, size_t from, size_t to,
-                       unsigned *state) {
-  size_t n = to - from, pick[3];
-  for (int i = 0; i < 3; i++) {
-    *state = *state * 1664525u + 1013904223u;
-    pick[i] = from + (size_t)(*state) % n;
+/* Splits x[left .. right] about x[rank]; *low and *high are left where the two
+ * walks met: all up to *high are not more, all from *low on not less. */
+static void split(double *x, ptrdiff_t left, ptrdiff_t right, ptrdiff_t rank,
+                  ptrdiff_t *low, ptrdiff_t *high) {
+  double at = x[rank];
+  ptrdiff_t i = left, j = right;
+  while (i <= j) {
+    while (x[i] < at) i++;
+    while (x[j] > at) j--;
+    if (i <= j) swap(&x[i++], &x[j--]);
   }
-  return middle(x[pick[0]], x[pick[1]], x[pick[2]]);
+  *low = i;
+  *high = j;
 }
 
-/* Hoare's selection with a split in three: less, equal, more. */
-double lbr_select(double *x, size_t n, size_t rank) {
-  size_t from = 0, to = n;
-  unsigned state = 12345;
-  while (to - from > 1) {
-    double at = split_at(x, from, to, &state);
-    size_t less = from, i = from, more = to;
-    while (i < more) {
-      if (x[i] < at)
-        swap(&x[i++], &x[less++]);
-      else if (x[i] > at)
-        swap(&x[i], &x[--more]);
-      else
-        i++;
+/* Floyd and Rivest, Algorithm 489, Comm. ACM 18 (1975) 173: a long run is
+ * split about a sample that is near the rank, found by selecting in a small
+ * part around it. */
+static void narrow(double *x, ptrdiff_t left, ptrdiff_t right,
+                   ptrdiff_t rank) {
+  while (right > left) {
+    if (right - left > 600) {
+      double n = (double)(right - left + 1), i = (double)(rank - left + 1);
+      double z = log(n), s = 0.5 * exp(2 * z / 3);
+      double sd = 0.5 * sqrt(z * s * (n - s) / n) * (i < n / 2 ? -1 : 1);
+      double from = (double)rank - i * s / n + sd, to = from + s;
+      narrow(x, from > (double)left ? (ptrdiff_t)from : left,
+             to < (double)right ? (ptrdiff_t)to : right, rank);
     }
-    if (rank < less)
-      to = less;
-    else if (rank >= more)
-      from = more;
-    else
-      return at;
+    ptrdiff_t low, high;
+    split(x, left, right, rank, &low, &high);
+    if (high < rank) left = low;
+    if (rank < low) right = high;
   }
+}
+
+double lbr_select(double *x, size_t n, size_t rank) {
+  narrow(x, 0, (ptrdiff_t)n - 1, (ptrdiff_t)rank);
   return x[rank];
 }
 

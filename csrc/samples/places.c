@@ -6,7 +6,7 @@
 
 #define PI 3.14159265358979323846
 #define STEPS LBR_PLACES_STEPS
-#define MOST_HALF ((size_t)1 << 17)
+#define MOST_HALF ((size_t)1 << 14)
 #define LANES 8
 #define CLONES __attribute__((target_clones("avx512f", "avx2", "default")))
 

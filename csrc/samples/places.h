@@ -24,7 +24,8 @@ typedef struct lbr_places {
  * ratio of the sample rate (0 < keep < 0.5) is kept to 10^(-db/20) of its
  * amplitude (8 <= db <= 140), what lies above (1 - keep) * ratio is taken away
  * likewise.  Kaiser's estimate for 6 dB more leaves room for what the images
- * add up to.  The caller frees row. */
+ * add up to.  LBR_OVERFLOW where the kernel would be longer than 2^15 samples.
+ * The caller frees row. */
 LBR_CHECKED lbr_status lbr_places_make(double keep, double ratio, double db,
                                        lbr_places *out);
 

@@ -349,9 +349,9 @@ function M.resampler(spec)
   end
   local h, flat, gain = parts.taps("low", { 0.5 * lower }, stop - pass, ratio(read.rejection),
     { { 0, pass } }, { { stop, 0.5 } })
-  return finish({ title = title, up = read.up, down = read.down, rate = read.from and read.from:number(), flatness = flat,
-    rejection_db = db(gain) }, { { taps = h, rate = read.up } },
-    { { up = read.up, down = read.down } })
+  return finish({ title = title, up = read.up, down = read.down, flatness = flat,
+    rejection_db = db(gain), rate = read.from and read.from:number() },
+    { { taps = h, rate = read.up } }, { { up = read.up, down = read.down } })
 end
 
 return M
