@@ -248,6 +248,14 @@ static void push_effort(lua_State *L, const lbr_search_count *count) {
   set_number(L, "work", count->work);
 }
 
+static void push_setting(lua_State *L, const lbr_rate *rate) {
+  lua_createtable(L, 3, 0);
+  for (int k = 0; k < 3; k++) {
+    lua_pushinteger(L, rate->setting[k]);
+    lua_rawseti(L, -2, k + 1);
+  }
+}
+
 static void push_choice(lua_State *L, const lbr_problem *p,
                         const lbr_choice *choice) {
   const lbr_rate *rate = &p->rates->item[choice->rate];
@@ -255,19 +263,32 @@ static void push_choice(lua_State *L, const lbr_problem *p,
   set_number(L, "rate", rate->value);
   set_count(L, "samples", choice->n);
   set_count(L, "mode", choice->mode + 1);
-  lua_createtable(L, 3, 0);
-  for (int k = 0; k < 3; k++) {
-    lua_pushinteger(L, rate->setting[k]);
-    lua_rawseti(L, -2, k + 1);
-  }
+  push_setting(L, rate);
   lua_setfield(L, -2, "setting");
+}
+
+/*** One rate of a problem's digitizer.
+ * @param problem problem: from core.plan.problem
+ * @param index integer: 1 (the lowest) to core.plan.rates(problem)
+ * @return number: S/s
+ * @return table: setting (three numbers), as in a choice
+ * @usage
+ * assert(type(core.plan.rate_at) == "function")
+ */
+static int plan_rate_at(lua_State *L) {
+  const lbr_rates *rates = &lbr_check_problem(L, 1)->rates;
+  size_t index = lbr_check_count(L, 2, 1, rates->count) - 1;
+  const lbr_rate *rate = &rates->item[index];
+  lua_pushnumber(L, rate->value);
+  push_setting(L, rate);
+  return 2;
 }
 
 /*** The shortest record that holds a problem's demand.
  * @param problem problem: from core.plan.problem
  * @param t table: share (of the tolerances that errors may take, default 1),
- *   most_duration (s), most_work and care_work (about microseconds); absent:
- *   the problem's
+ *   most_duration, least_duration (s; nothing shorter is looked for), most_work
+ *   and care_work (about microseconds); absent: the problem's
  * @return table: rate, samples, mode (index), setting (three numbers); or nil,
  *   message, code ("infeasible": nothing fits, "stopped": gave up)
  * @return table: effort: ranges, candidates, bounds, work (after a refusal it
@@ -281,6 +302,7 @@ static int plan_search(lua_State *L) {
   problem.share = lbr_field_or(L, 2, "share", problem.share);
   problem.most_duration =
       lbr_field_or(L, 2, "most_duration", problem.most_duration);
+  problem.least_duration = lbr_field_or(L, 2, "least_duration", 0);
   problem.most_work = lbr_field_or(L, 2, "most_work", problem.most_work);
   problem.care_work = lbr_field_or(L, 2, "care_work", problem.care_work);
   lbr_choice choice;
@@ -444,6 +466,7 @@ static const luaL_Reg functions[] = {
     {"fold_band", plan_fold_band},
     {"judge", plan_judge},
     {"problem", plan_problem},
+    {"rate_at", plan_rate_at},
     {"rates", plan_rates},
     {"search", plan_search},
     {NULL, NULL},

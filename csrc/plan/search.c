@@ -137,6 +137,7 @@ lbr_status lbr_search_run(const lbr_problem *p, lbr_choice *choice,
   lbr_status status = search_once(p, LBR_CARE_PLAIN, choice, count);
   if (status != LBR_OK && status != LBR_INFEASIBLE) return status;
   lbr_problem narrow = status == LBR_OK ? beat(p, choice) : *p;
+  if (status == LBR_OK && p->care_work <= 0) return LBR_OK;
   lbr_status again = search_once(&narrow, LBR_CARE_JOINT, &shorter, &more);
   add_count(count, &more);
   if (again == LBR_OK) {

@@ -7,6 +7,7 @@ local core = require "libration.core"
 local demand_room = require "libration.demand"
 local digitizer_room = require "libration.digitizer"
 local choices = require "libration.plan.choices"
+local coarse = require "libration.plan.coarse"
 local file = require "libration.plan.file"
 local problem = require "libration.plan.problem"
 local rates = require "libration.plan.rates"
@@ -109,8 +110,9 @@ local function build(demand, digitizer, posed, choice)
   return plan
 end
 
-local function search(posed, within, share, effort_s)
+local function search(posed, within, share, effort_s, least_s)
   return core.plan.search(posed.handle, { share = share, most_duration = within,
+    least_duration = least_s or 0, care_work = least_s and 0 or nil,
     most_work = effort_s * 1e6 })
 end
 
@@ -156,14 +158,22 @@ function M.plan(demand, digitizer, options)
   if choice then
     return build(demand, digitizer, posed, choice)
   end
-  if code ~= "infeasible" and code ~= "stopped" then
+  if code == "stopped" then
+    local some = coarse.find(demand, digitizer, posed, read)
+    local plan = some and build(demand, digitizer, posed, some)
+    if plan then
+      table.insert(plan.notes, 1, ("The search for the shortest plan gave up after about %g s of "
+        .. "work (effort_s); this one holds, a shorter one may exist."):format(read.effort_s))
+      return plan
+    end
+  elseif code ~= "infeasible" then
     return nil, message, code
   end
   return nil, refusal.explain(demand, digitizer, posed, read, code), "infeasible"
 end
 
-local SHARES = { 1, 0.7, 0.5, 0.35, 0.25, 0.15, 0.1 }
-local SLOWER = { 1, 0.5, 0.25, 0.125 }
+local SHARES = { 1, 0.7, 0.5, 0.25, 0.1 }
+local SLOWER = { 1, 0.25 }
 
 local function dominates(a, b)
   return a.duration_s <= b.duration_s and a.worst <= b.worst and a.samples <= b.samples
@@ -200,8 +210,9 @@ local function copy(options)
 end
 
 --- The trade-off front: plans none of which is beaten in time, error and samples.
--- For shares of the tolerances from 100 % down to 10 %, and for ever lower
--- highest rates, the shortest plan each; those beaten by another are left out.
+-- For shares of the tolerances from 100 % down to 10 %, with all rates and with
+-- those up to a quarter of the best plan's, the shortest plan each (by plain
+-- bounds after the first); those beaten by another are left out.
 -- @param demand table: from lb.demand
 -- @param digitizer table: from lb.digitizer
 -- @param options table: as for lb.plan
@@ -223,13 +234,17 @@ function M.plans(demand, digitizer, options)
     local narrowed = copy(read)
     narrowed.most_rate = slower < 1 and best.rate:number() * slower or read.most_rate
     local posed = problem.new(demand, digitizer, narrowed)
-    for _, share in ipairs(SHARES) do
-      local choice = core.plan.rates(posed.handle) > 0
-        and search(posed, per_record(demand, read), read.share * share, read.effort_s)
-      if not choice then
+    local before = best -- smaller shares and slower rates never take less time
+    for k, share in ipairs(SHARES) do
+      local known = slower == 1 and k == 1
+      local choice = not known and core.plan.rates(posed.handle) > 0 and search(posed,
+        per_record(demand, read), read.share * share, read.effort_s,
+        before.duration_s * (1 - 1e-9))
+      if not (choice or known) then
         break
       end
-      list[#list + 1] = build(demand, digitizer, posed, choice)
+      before = known and best or build(demand, digitizer, posed, choice)
+      list[#list + 1] = before
     end
   end
   return setmetatable(front_of(list), { __tostring = text.front })

@@ -168,6 +168,8 @@ function M.explain(demand, digitizer, posed, read, code)
     refusal.binding = { line = demand.lines[line].name, term = term.term, from = term.from,
       limit = limit_of(demand, digitizer, posed, read, shown, term.term), ratio = ratio }
     refusal.message = (choice and "line %s would be off by %.3g times its tolerance"
+      or code == "stopped" and "no plan was found; in long records line %s would still be off by "
+      .. "%.3g times its tolerance"
       or "line %s would be off by %.3g times its tolerance even in the longest record")
       :format(demand.lines[line].name, ratio)
   else
