@@ -62,13 +62,13 @@ static void add_source(lbr_relax *r, size_t i, size_t j, double weight) {
   const lbr_source *a = &s->sources[i], *b = &s->sources[j];
   double spread = s->spread[b->driver], own = b->lock_hz * spread;
   bool locked = a->driver == b->driver;
-  if (b->wander > 0) return; /* spread over sidebands: left to the bound */
   for (double sign = 1; sign >= -1; sign -= 2) {
     double hz = b->hz - sign * a->hz;
     double half = locked ? fabs(b->lock_hz - sign * a->lock_hz) * spread
                          : own + a->lock_hz * s->spread[a->driver];
     add(r, (lbr_pair){i, hz - half, hz + half, b->hz, own,
-                      alone(s, i, j), locked, sign, weight});
+                      alone(s, i, j), locked, sign, weight,
+                      b->wander * b->hz / 2});
   }
 }
 
@@ -91,11 +91,11 @@ static void fill(lbr_relax *r) {
         add_source(r, i, j, p->scene->sources[j].most *
                                 least_gain(p, r->rate, j) / most);
     double hz = p->scene->sources[i].hz;
-    if (p->scene->sources[i].wander <= 0)
-      add(r, (lbr_pair){i, 2 * hz, 2 * hz, hz, 0, true, true, -1,
-                        p->scene->sources[i].least});
+    add(r, (lbr_pair){i, 2 * hz, 2 * hz, hz, 0, true, true, -1,
+                      p->scene->sources[i].least,
+                      p->scene->sources[i].wander * hz / 2});
     add(r, (lbr_pair){i, hz, hz, 0, 0, true, false, -1,
-                      2 * p->scene->offset / most});
+                      2 * p->scene->offset / most, 0});
   }
   if (r->n_pairs > 1)
     qsort(r->pair, r->n_pairs, sizeof *r->pair, by_line_then_weight);
@@ -169,7 +169,7 @@ double lbr_relax_least(const lbr_relax *r, lbr_reading reading,
   for (size_t k = 0; k < r->n_pairs; k++) {
     const lbr_pair *p = &r->pair[k];
     double level = r->allowed[p->line] / (p->weight * kept[k]);
-    if (level >= 1) continue;
+    if (level >= 1 || p->swing > 0) continue;
     double reach = fmax(lbr_kernel_reach(kernel, level) - off, 0);
     if (reach <= 0) continue;
     least = fmax(least, p->low > 0 ? TRUST_SHORT * reach / p->low : INFINITY);
@@ -296,8 +296,11 @@ static double line_least(const view *v, size_t i, double *work) {
   for (size_t k = r->first[i]; known && k < r->first[i + 1]; k++) {
     if (v->kept[k] <= 0) continue;
     if (sum > r->allowed[i]) break;
-    sum += r->pair[k].weight * v->kept[k] * trust *
-           pair_least(v, &r->pair[k], bin);
+    double index = r->pair[k].swing * v->t2;
+    double carrier = fmax(1 - index * index / 4, 0);
+    if (carrier > 0)
+      sum += r->pair[k].weight * v->kept[k] * trust * carrier *
+             pair_least(v, &r->pair[k], bin);
     *work += 0.4;
   }
   return sum;

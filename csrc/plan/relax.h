@@ -19,6 +19,8 @@ typedef struct lbr_pair {
   bool locked;      /* it shares the driver of the line */
   double sign;      /* 1: difference, -1: sum of the frequencies */
   double weight;    /* least amplitude at the reading, unit */
+  double swing;     /* half the source's wander, Hz: it keeps at least
+                       1 - (swing t)^2 / 4 of itself (J0 of its index) */
 } lbr_pair;
 
 typedef struct lbr_relax {
