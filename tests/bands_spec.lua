@@ -157,6 +157,10 @@ describe("fractional-octave bands", function()
     assert(not none and code == "domain" and message:find "a longer record", message)
     none, message = lb.bands.levels(x, { rate = 8000, to_hz = 4000 })
     assert(not none and message:find "half the rate", message)
+    for _, n in ipairs { 1, 2, 31, 40 } do
+      none, message, code = lb.bands.levels(noise(n, 1), { rate = 8000 })
+      assert(not none and code == "domain" and message, n)
+    end
     local ok, text = pcall(lb.bands.levels, x, { rate = 8000, fractoin = 3 })
     assert(not ok and text:find 'did you mean "fraction"', text)
     ok, text = pcall(lb.bands.levels, x, {})
@@ -337,6 +341,8 @@ describe("the envelope", function()
     local x = noise(100, 1)
     local none, message, code = lb.bands.envelope(x, { rate = 1000, from_hz = 11, to_hz = 19 })
     assert(not none and code == "domain" and message:find "no line lies", message)
+    none, message = lb.bands.envelope_spectrum(noise(3, 1), { rate = 10, from_hz = 0, to_hz = 5 })
+    assert(not none and message:find "at least 4", message)
     none, message = lb.bands.envelope(x, { rate = 1000, from_hz = 11, to_hz = 519 })
     assert(not none and message:find "half the rate", message)
   end)
@@ -384,6 +390,25 @@ describe("spectral kurtosis", function()
     assert(math.abs(k.values[60]) < 6 * k.noise_sigma, k.values[60])
     local none, message = lb.bands.kurtosis(x, { rate = rate, segment = n })
     assert(not none and message:find "at least 2", message)
+  end)
+end)
+
+describe("a result", function()
+  it("prints as a table with units, the largest first", function()
+    local x = lb.synth.modulated { rate = 8000, samples = 8000, hz = 2000, amplitude = 1,
+      am = { { hz = 40, depth = 0.5 }, { hz = 100, depth = 0.2 } } }
+    local record = lb.record.new { rate = 8000, samples = x, unit = "m/s^2" }
+    local rows = {}
+    local text = tostring(lb.bands.envelope_spectrum(record, { from_hz = 1800, to_hz = 2200 }))
+    for row in text:gmatch "[^\n]+" do rows[#rows + 1] = row end
+    assert(rows[1]:find "envelope of 1800 .. 2200 Hz, hann window, lines 1 Hz apart, mean 1 m/s^2")
+    assert(rows[3]:match "^%s+40%.000000%s+0%.5$" and rows[4]:match "^%s+100%.000000%s+0%.2$", text)
+    text = tostring(lb.bands.kurtosis(noise(6400, 1), { rate = 6400, segment = 64 }))
+    assert(text:find "unbiased, 100 segments, hann window, lines 100 Hz apart", text)
+    local y = core.samples.new(256)
+    y[1], y[33] = 1, 0.5
+    text = tostring(lb.bands.cepstrum(y, { rate = 1000 }))
+    assert(text:find "0%.032%s+31%.250000%s+0%.25", text)
   end)
 end)
 

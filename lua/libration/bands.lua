@@ -91,6 +91,10 @@ end
 -- The bands asked for, or all that the lines resolve; nil and why.
 local function bands_of(read, resolution_hz, top_hz)
   local b = read.fraction
+  if top_hz < LEAST_LINES * resolution_hz then
+    return nil, ("the lines are %.6g Hz apart up to %.6g Hz: no band holds %d of them"):format(
+      resolution_hz, top_hz, LEAST_LINES), "domain"
+  end
   local function lines_in(number)
     local _, low, high = core.band(b, number)
     return (high - low) / resolution_hz
@@ -185,9 +189,9 @@ function M.levels(x, spec)
   local read = options.take(levels_schema, spec, "levels")
   local n, rate, unit = input.facts(x, read, "levels")
   local size = read.segment or n
-  if size > n or size > 1 << 27 then
-    return nil, ("levels: a segment of %d samples of %d; at most 2^27: give segment"):format(size,
-      n), "domain"
+  if size > n or size > 1 << 27 or size < 2 * LEAST_LINES then
+    return nil, ("levels: a segment of %d samples of %d; it must be %d to 2^27"):format(size, n,
+      2 * LEAST_LINES), "domain"
   end
   local power, segments = mean_powers(x, read, size)
   return levels_of(power, rate / size, read, { unit = unit, window = read.window.name,
