@@ -134,6 +134,32 @@ describe("a list of lines", function()
     assert.matches("\n50%.0002771", r:csv())
   end)
 
+  it("tracks wanted lines, folded ones too, and says which are not there", function()
+    local n, rate = 8192, 1000
+    local x = noise(n, rate, 1e-3, 3)
+    x:add(lb.synth.tones { rate = rate, samples = n, tones = { { hz = 123.4, amplitude = 1 },
+      { hz = 1310.25, amplitude = 0.2 } } })
+    local r = assert(lb.lines.track(x, { rate = rate, unit = "V", segment = 2048, lines = {
+      { name = "shaft", from_hz = 122, to_hz = 125 },
+      { name = "high", from_hz = 1308, to_hz = 1312 },
+      { name = "absent", from_hz = 400, to_hz = 401 },
+      { name = "slope", from_hz = 124, to_hz = 125 },
+    } }))
+    local shaft, high, absent, slope = table.unpack(r.lines)
+    assert.near(123.4, shaft.hz, 5 * shaft.u_hz)
+    assert.near(1, shaft.amplitude, 5 * shaft.u_amplitude)
+    assert.near(1310.25, high.hz, 5 * high.u_hz)
+    assert.near(0.2, high.amplitude, 5 * high.u_amplitude)
+    assert.is_true(shaft.found and high.found)
+    assert.is_false(absent.found or slope.found)
+    assert.is_true(slope.at_edge)
+    assert.matches("absent .* not above the noise", tostring(r))
+    assert.equal(tostring(r), tostring(lb.lines.from_json(r:json())))
+    assert.error_matches(function()
+      lb.lines.track(x, { rate = rate, lines = { { from_hz = 2, to_hz = 1 } } })
+    end, "lines%[1%] from 2.0 to 1.0 Hz")
+  end)
+
   it("refuses records too short for the floor and misspelt options", function()
     local _, message, code = lb.lines.list(noise(100, 1, 1, 1), { rate = 1 })
     assert.equal("domain", code)

@@ -223,6 +223,31 @@ describe("a result", function()
     end
   end)
 
+  it("is refused, never half read, when its JSON was damaged", function()
+    local text = lb.lines.joint(x, { rate = "1/3 Hz", unit = "V", lines = { 0.03, 0.05 } }):json()
+    local seed = 1
+    local function draw(most)
+      seed = (seed * 16807) % 2147483647
+      return seed % most + 1
+    end
+    local refused = 0
+    for _ = 1, 1000 do
+      local at, kind = draw(#text), draw(3)
+      local damaged = kind == 1 and text:sub(1, at)
+        or kind == 2 and text:sub(1, at - 1) .. string.char(draw(255)) .. text:sub(at + 1)
+        or text:sub(1, at - 1) .. text:sub(at + draw(40))
+      local r, message, code = lb.lines.from_json(damaged)
+      if r then
+        assert.is_true(#tostring(r) > 0 and #r:csv() > 0)
+      else
+        refused = refused + 1
+        assert.equal("format", code)
+        assert.matches("^lines: ", message)
+      end
+    end
+    assert.is_true(refused > 500)
+  end)
+
   it("has numbers in its CSV that read back bit for bit", function()
     local r = lb.lines.joint(x, { rate = 1, lines = { { hz = 0.11, name = "a, b" } } })
     local cells = {}

@@ -79,6 +79,27 @@ function M.list(source, options)
   return list.list(source, options)
 end
 
+--- Tracks wanted lines: reads each at the highest point of its interval of frequencies.
+-- The reading is that of plans with reading = "tracked", its uncertainty that of the noise around
+-- it, as in list. A line is found when it stands above the threshold of list and inside its
+-- interval; what is not found is reported all the same, with the reason.
+-- @param source record or samples
+-- @param options table: lines (list of { from_hz =, to_hz =, name = }; frequencies beyond half the
+--   rate are those of undersampled lines), and false_alarm, floor_bins, window, parameter,
+--   segment, overlap as in list; channel, or rate and unit
+-- @return table: lines[i] = { name, hz, amplitude (peak), phase (first segment), u_hz,
+--   u_amplitude, over_floor_db, floor_density, chance, bin, found, at_edge }, threshold_db,
+--   averages (effective), and the options used; or nil, message, code ("domain")
+-- @usage
+-- local x = lb.synth.noise { rate = 1000, samples = 2000, density = 0.01, seed = 1 }
+-- x:add(lb.synth.tones { rate = 1000, samples = 2000, tones = { { hz = 123.4, amplitude = 1 } } })
+-- local r = lb.lines.track(x, { rate = 1000, lines = { { from_hz = 120, to_hz = 126 },
+--   { from_hz = 200, to_hz = 201 } } })
+-- assert(r.lines[1].found and not r.lines[2].found)
+function M.track(source, options)
+  return list.track(source, options)
+end
+
 --- The estimators of a frequency from the bins of a transform, with their sources.
 -- @return table: list of { name, source, window ("rectangle" or "hann") }
 -- @usage

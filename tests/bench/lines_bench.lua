@@ -35,10 +35,16 @@ end
 return {
   { name = "W3 script", work = "10 000 sine fits of 4096", ours = fits(2), peer = "w3_script.py",
     limit = read(x), goal = 0.065 },
+  { name = "W3 tuned", work = "the same against a tuned script", ours = fits(2),
+    peer = "w3_tuned.py", limit = read(x), goal = 0.065 },
   { name = "W3 one thread", work = "the same on one thread", ours = fits(1) },
   { name = "W3b same", work = "1000 x 16384, the same 20 lines in all", ours = joints(shared, 2),
     peer = "w3b_same.py", limit = read(y), goal = 0.035 },
+  { name = "W3b same tuned", work = "the same against a tuned script", ours = joints(shared, 2),
+    peer = "w3b_same_tuned.py", limit = read(y), goal = 0.035 },
   { name = "W3b own", work = "the same, every record its own 20", ours = joints(own, 2),
     peer = "w3b_own.py", limit = read(y), goal = 0.035 },
+  { name = "W3b own tuned", work = "the same against a tuned script", ours = joints(own, 2),
+    peer = "w3b_own_tuned.py", limit = read(y), goal = 0.035 },
   { name = "W3b one thread", work = "every record its own, on one thread", ours = joints(own, 1) },
 }

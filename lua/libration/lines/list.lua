@@ -10,14 +10,29 @@ local window = require("libration.window").window
 
 local M = {}
 
-local schema = source.schema {
+local common = {
   window = { options.text(60), default = "blackman_harris4" },
   parameter = { options.number() },
   segment = { options.integer(64, 1 << 27) },
   overlap = { options.number { least = 0, most = 0.95 }, default = 0.5 },
   false_alarm = { options.number { above = 0, below = 0.5 }, default = 0.01 },
   floor_bins = { options.integer(5, 100001), default = 101 },
-  most = { options.integer(1, 4096), default = 512 },
+}
+
+local function schema_with(extra)
+  for name, row in pairs(common) do extra[name] = row end
+  return source.schema(extra)
+end
+
+local schema = schema_with { most = { options.integer(1, 4096), default = 512 } }
+
+local wanted = options.record {
+  name = { options.text(80) }, from_hz = { source.hertz, required = true },
+  to_hz = { source.hertz, required = true },
+}
+
+local track_schema = schema_with {
+  lines = { options.list(wanted, 1, 512), required = true },
 }
 
 local LEAK_MARGIN = 2 -- a peak less than this above what leaks there is not a line
@@ -29,17 +44,15 @@ local function leak(shape, m, bins)
   return math.max(math.abs(least), math.abs(most))
 end
 
--- Amplitudes and frequencies by tracking, averaged over the segments.
-local function track(from, w, m, step, bins)
-  local searches, flat = {}, {}
-  for i, k in ipairs(bins) do
-    searches[2 * i - 1], searches[2 * i] = (k - 1) / m, (k + 1) / m
-  end
+-- Amplitudes and frequencies by tracking, averaged over the segments; searches
+-- are low, high, low, high ... in cycles per sample.
+local function track(from, w, m, step, searches)
+  local flat = {}
   local tracker <close> = core.tracker(w, searches)
   local segments = 1 + (#from.x - m) // step
   for s = 0, segments - 1 do
     local one = tracker:run(from.x, 1 + s * step)
-    for i = 1, #bins do
+    for i = 1, #searches // 2 do
       local row = flat[i] or { amplitude = 0, frequency = 0, phase = one[3 * i] }
       row.amplitude = row.amplitude + one[3 * i - 2] / segments
       row.frequency = row.frequency + one[3 * i - 1] / segments
@@ -123,8 +136,11 @@ function M.list(what, given)
   if #peaks > read.most then
     return nil, ("lines: %d peaks; most = %d"):format(#peaks, read.most), "domain"
   end
-  local lines = {}
-  for i, row in ipairs(track(from, w, s.m, s.step, peaks)) do
+  local lines, searches = {}, {}
+  for i, k in ipairs(peaks) do
+    searches[2 * i - 1], searches[2 * i] = (k - 1) / s.m, (k + 1) / s.m
+  end
+  for i, row in ipairs(track(from, w, s.m, s.step, searches)) do
     lines[i] = line_of(row, peaks[i], floor[peaks[i] + 1], peaks, rate)
   end
   local kept, hidden = set_apart(lines, s.shape, s.m, rate)
@@ -162,6 +178,71 @@ local function text(r)
     { head = "over floor", unit = "dB", align = "point" },
     { head = "floor", unit = r.unit .. "/sqrt(Hz)", align = "point" } }, rows, notes)
 end
+
+-- The searches of the wanted lines; each at most half the rate wide.
+local function searches_of(lines, rate)
+  local out = {}
+  for i, line in ipairs(lines) do
+    if line.to_hz < line.from_hz or line.to_hz - line.from_hz > rate / 2 then
+      error(("track: lines[%d] from %s to %s Hz; to_hz must be from_hz to from_hz + %s"):format(i,
+        tostring(line.from_hz), tostring(line.to_hz), tostring(rate / 2)), 0)
+    end
+    out[2 * i - 1], out[2 * i] = line.from_hz / rate, line.to_hz / rate
+  end
+  return out
+end
+
+-- The bin in which a frequency appears, kept where the floor is known.
+local function bin_of(frequency, m, facts)
+  local folded = math.abs(frequency - math.floor(frequency + 0.5))
+  return math.max(facts.first, math.min(facts.last, math.floor(folded * m + 0.5)))
+end
+
+--- See lines.track.
+function M.track(what, given)
+  local read = options.take(track_schema, given, "track")
+  local from = source.take(what, read, "track")
+  local s, message, code = setup_of(from, read)
+  if not s then return nil, message, code end
+  local rate = from.rate:number()
+  local w, searches = s.shape:samples(s.m), searches_of(read.lines, rate)
+  local peaks, _, floor = core.peaks(from.x, w, s.step, read.floor_bins, s.guard, read.false_alarm)
+  if not peaks then return nil, _, floor end
+  local lines = {}
+  for i, row in ipairs(track(from, w, s.m, s.step, searches)) do
+    local k = bin_of(row.frequency, s.m, peaks)
+    local line = line_of(row, k, floor[k + 1], peaks, rate)
+    line.name = read.lines[i].name or tostring(i)
+    line.at_edge = row.frequency <= searches[2 * i - 1] or row.frequency >= searches[2 * i]
+    line.found = line.over_floor_db > 10 * math.log(peaks.factor, 10) and not line.at_edge
+    lines[i] = line
+  end
+  return result.new("tracked", result.facts(from, { lines = lines, window = read.window,
+    segment = s.m, segments = peaks.segments, averages = peaks.freedom / 2,
+    false_alarm = read.false_alarm, threshold_db = 10 * math.log(peaks.factor, 10) }))
+end
+
+local function tracked_text(r)
+  local rows = {}
+  for i, l in ipairs(r.lines) do
+    rows[i] = { l.name, result.with(l.hz, l.u_hz), result.u(l.u_hz),
+                result.with(l.amplitude, l.u_amplitude), result.u(l.u_amplitude),
+                round(l.over_floor_db, 3), l.found and "" or l.at_edge and "end of its interval"
+                  or "not above the noise" }
+  end
+  return result.page(("%d tracked lines: %s"):format(#rows, result.origin(r)), {
+    { head = "line" }, { head = "frequency", unit = "Hz", align = "point" },
+    { head = "u (k=1)", unit = "Hz", align = "point" },
+    { head = "amplitude", unit = r.unit, align = "point" },
+    { head = "u (k=1)", unit = r.unit, align = "point" },
+    { head = "over floor", unit = "dB", align = "point" }, { head = "remark" } }, rows, {
+    ("  %s, %d segment%s of %d samples; threshold %s dB over the floor"):format(r.window,
+      r.segments, r.segments == 1 and "" or "s", r.segment, round(r.threshold_db, 3)) })
+end
+
+result.define("tracked", { text = tracked_text, rows = function(r) return r.lines end,
+  columns = { "name", "hz", "u_hz", "amplitude", "u_amplitude", "phase", "over_floor_db",
+              "floor_density", "found", "at_edge" } })
 
 result.define("lines", { text = text, rows = function(r) return r.lines end,
   columns = { "hz", "u_hz", "amplitude", "u_amplitude", "leak", "phase", "over_floor_db",

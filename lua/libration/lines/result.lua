@@ -93,7 +93,15 @@ local function revive(value)
   end
   local out = {}
   for key, item in pairs(value) do out[key] = revive(item) end
+  out.samples = math.tointeger(out.samples) or out.samples
   return out
+end
+
+-- Whether all is there that its table and its CSV are made of.
+local function is_whole(value)
+  return math.type(value.samples) == "integer" and type(value.unit) == "string"
+    and pcall(kinds[value.kind].text, value)
+    and pcall(M.csv, value)
 end
 
 --- A result from what json() wrote.
@@ -107,6 +115,9 @@ function M.read(text)
   fine, value = pcall(revive, value)
   if not fine or not base.is_fraction(value.rate) then
     return nil, "lines: a measurement of lines without an exact rate", "format"
+  end
+  if not is_whole(value) then
+    return nil, "lines: a measurement of lines with fields missing or of another type", "format"
   end
   return setmetatable(value, Result)
 end
