@@ -194,6 +194,47 @@ describe("a record's survey", function()
     assert.is_truthy(tostring(a:density(2)):find("room", 1, true))
   end)
 
+  it("reads files in blocks, raw integers as well", function()
+    local codes = lb.samples.make(20000, function(i) return (i * i * 7919) % 65535 - 32767 end)
+    local rec = lb.record.new { rate = 48000, channels = {
+      { codes = codes, bits = 16, range = "10 V" }, { codes = codes * -1, bits = 16, range = "10 V" },
+    } }
+    local path = os.tmpname()
+    assert(rec:write(path, { format = "wav" }))
+    local open = assert(lb.record.open(path, { range = "10 V" }))
+    local o = { segment = 512, cross = true }
+    local a, b = lb.survey.averages(open, o), lb.survey.averages(rec, o)
+    assert.are.equal(b:density(2).values, a:density(2).values)
+    assert.are.equal(b:cross_density(1, 2).re, a:cross_density(1, 2).re)
+    local one = lb.survey.density(open, { segment = 512, channels = { 2 } })
+    assert.are.equal(b:density(2).values, one.values)
+    open:close()
+    os.remove(path)
+  end)
+
+  it("never reaches across a gap", function()
+    local x = noise(1000, 5)
+    local rec = lb.record.new { rate = 1, samples = x, gaps = { { after = 450, lost = 3 } } }
+    for _, averaging in ipairs { "mean", "median", "peak" } do
+      local o = { segment = 100, averaging = averaging }
+      local s = lb.survey.density(rec, o)
+      assert.are.equal(8 + 10, s.segments)
+      if averaging == "mean" then
+        o.rate = 1
+        local a = lb.survey.density(x:slice(1, 450), o)
+        local b = lb.survey.density(x:slice(451, 1000), o)
+        for k = 1, 51 do
+          near((8 * a.values[k] + 10 * b.values[k]) / 18, s.values[k], 1e-13)
+        end
+        near(18 ^ 2 / (64 / a.averages + 100 / b.averages), s.averages, 1e-13)
+      elseif averaging == "peak" then
+        o.rate = 1
+        near(math.max(lb.survey.density(x:slice(1, 450), o).values[9],
+          lb.survey.density(x:slice(451, 1000), o).values[9]), s.values[9], 1e-14)
+      end
+    end
+  end)
+
   it("is refused when it is shorter than a segment", function()
     local s, message, code = lb.survey.density(values(10, 1), { rate = 1, segment = 11, step = 5 })
     assert.are.same({ "10 samples are less than a segment of 11", "infeasible" },

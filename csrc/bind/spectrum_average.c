@@ -137,9 +137,28 @@ static int feed(lua_State *L) {
 }
 
 /***
+ * Says that what is fed from now on does not follow what was fed before.
+ * No segment reaches across a break; samples after the last whole segment are
+ * left out.
+ * @return average: this one; or nil, message, code
+ * @usage
+ * local w = core.samples.from { 1, 1, 1, 1 }
+ * local a = core.spectrum.average(w, 4, 4, 1, "none", "mean", false, 1)
+ * a:feed(core.samples.new(6)):split():feed(core.samples.new(6))
+ * assert(a:segments() == 2)
+ */
+static int split(lua_State *L) {
+  holder *h = check_holder(L);
+  lbr_status status = lbr_average_break(h->average);
+  if (status != LBR_OK) return lbr_refuse(L, status, "average");
+  lua_settop(L, 1);
+  return 1;
+}
+
+/***
  * How many whole segments the stream has so far.
  * @return integer: segments
- * @return integer: samples fed, per channel
+ * @return integer: samples fed since the last split, per channel
  * @usage
  * local w = core.samples.from { 1, 1, 1, 1 }
  * local a = core.spectrum.average(w, 2, 4, 1, "none", "mean", false, 1)
@@ -224,7 +243,8 @@ static int cross(lua_State *L) {
 
 static const luaL_Reg methods[] = {
     {"close", holder_close}, {"cross", cross},       {"feed", feed},
-    {"power", power},        {"segments", segments}, {NULL, NULL}};
+    {"power", power},        {"segments", segments}, {"split", split},
+    {NULL, NULL}};
 
 static const luaL_Reg meta[] = {
     {"__gc", holder_close}, {"__close", holder_close}, {NULL, NULL}};

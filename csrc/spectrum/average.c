@@ -46,7 +46,8 @@ struct lbr_average {
   double *carry;   /* samples from the first group that is not done, span
                     * values a channel */
   size_t carried;  /* how many a channel */
-  int64_t seen;    /* samples fed */
+  int64_t seen;    /* samples fed since the last break */
+  size_t earlier;  /* segments before it */
   double *kept;    /* powers of all segments, for medians */
   size_t kept_most; /* segments that fit */
   seat *seats;
@@ -203,7 +204,8 @@ static void run_segments(lbr_average *a, const seat *s, size_t group,
     memset(slot + powers, 0, (a->sums - powers) * sizeof *slot);
   for (size_t i = 0; i < count; i++) {
     double *sums =
-        keeps ? a->kept + (group * a->group + i) * a->sums : slot;
+        keeps ? a->kept + (a->earlier + group * a->group + i) * a->sums
+              : slot;
     add_segment(a, s, i * a->set.step, keeps || i == 0, sums);
   }
 }
@@ -358,7 +360,7 @@ lbr_status lbr_average_feed(lbr_average *a, const lbr_feed *feed,
   int64_t reached;
   if (__builtin_add_overflow(a->seen, count, &reached)) return LBR_OVERFLOW;
   job j = {a, feed, channel, first, a->done};
-  lbr_status status = keep_room(a, segments_in(a, reached));
+  lbr_status status = keep_room(a, a->earlier + segments_in(a, reached));
   if (status == LBR_OK)
     status = lbr_workers_run(run_group, &j, groups_in(a, reached) - a->done,
                              a->set.workers);
@@ -371,26 +373,40 @@ lbr_status lbr_average_feed(lbr_average *a, const lbr_feed *feed,
 int64_t lbr_average_samples(const lbr_average *a) { return a->seen; }
 
 size_t lbr_average_segments(const lbr_average *a) {
-  return segments_in(a, a->seen);
+  return a->earlier + segments_in(a, a->seen);
 }
 
 size_t lbr_average_bins(const lbr_average *a) { return a->bins; }
 
 /* Adds the last, partial group; its samples are all carried. */
-static lbr_status settle(lbr_average *a) {
-  size_t segments = lbr_average_segments(a);
-  if (a->broken) return LBR_STOPPED;
-  if (segments == 0) return LBR_INFEASIBLE;
-  if (a->is_settled) return LBR_OK;
+static void settle_group(lbr_average *a, double *into) {
+  size_t rest = segments_in(a, a->seen) - a->done * a->group;
   seat *s = &a->seats[0];
+  if (rest == 0) return;
   for (size_t c = 0; c < a->set.channels; c++)
     s->from[c] = a->carry + c * a->span;
-  memcpy(a->settled, a->total, a->sums * sizeof(double));
-  size_t rest = segments - a->done * a->group;
   run_segments(a, s, a->done, rest, a->slots);
-  if (rest > 0 && a->set.kind != LBR_AVERAGE_MEDIAN)
-    merge(a, a->slots, a->settled);
+  if (a->set.kind != LBR_AVERAGE_MEDIAN) merge(a, a->slots, into);
+}
+
+static lbr_status settle(lbr_average *a) {
+  if (a->broken) return LBR_STOPPED;
+  if (lbr_average_segments(a) == 0) return LBR_INFEASIBLE;
+  if (a->is_settled) return LBR_OK;
+  memcpy(a->settled, a->total, a->sums * sizeof(double));
+  settle_group(a, a->settled);
   a->is_settled = true;
+  return LBR_OK;
+}
+
+lbr_status lbr_average_break(lbr_average *a) {
+  if (a->broken) return LBR_STOPPED;
+  settle_group(a, a->total);
+  a->earlier = lbr_average_segments(a);
+  a->seen = 0;
+  a->carried = 0;
+  a->done = 0;
+  a->is_settled = false;
   return LBR_OK;
 }
 

@@ -58,7 +58,11 @@ LBR_CHECKED lbr_status lbr_average_feed(lbr_average *average,
                                         const int *channel, int64_t first,
                                         int64_t count);
 
-/* Samples fed so far, and whole segments in them. */
+/* What is fed from now on does not follow what was fed before: no segment
+ * reaches across.  Samples after the last whole segment are left out. */
+LBR_CHECKED lbr_status lbr_average_break(lbr_average *average);
+
+/* Samples fed since the last break, and whole segments in all. */
 int64_t lbr_average_samples(const lbr_average *average);
 size_t lbr_average_segments(const lbr_average *average);
 size_t lbr_average_bins(const lbr_average *average);

@@ -29,7 +29,7 @@ local function bare_source(source, options, level)
   if options.rate == nil or not rate then
     fail(level + 1, "rate: %s", options.rate == nil and "samples need their rate, S/s" or reason)
   end
-  local out = { rate = rate, blocks = {}, factors = {}, units = {}, names = {} }
+  local out = { rate = rate, blocks = {}, units = {}, names = {}, samples = #list[1] }
   for k, block in ipairs(list) do
     if not core.samples.is(block) then
       fail(level + 1, "channel %d is %s, not samples", k, type(block))
@@ -39,18 +39,19 @@ local function bare_source(source, options, level)
     end
     local unit = options.unit
     if type(unit) == "table" then unit = unit[k] end
-    out.blocks[k], out.factors[k] = block, 1
+    out.blocks[k] = block
     out.units[k], out.names[k] = unit or "1", ("channel %d"):format(k)
   end
   return out
 end
 
--- The same of a record's channels; stored codes stay as they are.
+-- The same of a record's channels; its feed makes values of the stored codes.
 local function record_source(rec, options, level)
   if options.rate ~= nil or options.unit ~= nil then
     fail(level + 1, "%s is the record's own", options.rate ~= nil and "rate" or "unit")
   end
-  local out = { rate = rec.rate, blocks = {}, factors = {}, units = {}, names = {} }
+  local out = { rate = rec.rate, feed = rec:feed(), places = {}, segments = rec.segments,
+                units = {}, names = {}, samples = rec.samples }
   local wanted = options.channels
   if type(wanted) ~= "table" then wanted = wanted ~= nil and { wanted } or nil end
   for i = 1, wanted and #wanted or #rec.channels do
@@ -60,8 +61,7 @@ local function record_source(rec, options, level)
       fail(level + 1, "channel %s is not there; the record has 1 to %d", tostring(k),
         #rec.channels)
     end
-    out.blocks[i], out.factors[i] = channel.data, channel.factor
-    out.units[i], out.names[i] = channel.unit, channel.name
+    out.places[i], out.units[i], out.names[i] = channel.place, channel.unit, channel.name
   end
   return out
 end
@@ -81,7 +81,7 @@ local function make(source, options, level)
   local s = setting.read(options, level + 1)
   local out = { rate = source.rate, length = s.length, step = s.step, points = s.points,
                 overlap = s.overlap, window = s.window, detrend = s.detrend,
-                averaging = s.averaging, cross = s.cross, factors = source.factors,
+                averaging = s.averaging, cross = s.cross, stretches = {},
                 units = source.units, names = source.names, setting = s }
   local sum, power, rate = s.weights:sum(), s.weights:dot(s.weights), source.rate:number()
   out.scale = { line = 1 / sum ^ 2, density = 1 / (rate * power) }
@@ -101,7 +101,10 @@ end
 function Averages:refresh()
   self.segments = self.sums:segments()
   if self.segments > 0 then
-    self.averages, self.median_bias = setting.worth(self.setting, self.segments)
+    local last = self.segments
+    for _, segments in ipairs(self.stretches) do last = last - segments end
+    self.averages, self.median_bias = setting.worth(self.setting, self.segments, self.stretches,
+      last)
     self.dof = self.averages and 2 * self.averages
   end
   return self
@@ -122,15 +125,41 @@ function Averages:feed(blocks)
   return self
 end
 
+--- Says that what is fed from now on does not follow what was fed before.
+-- No segment reaches across; samples after the last whole segment are left out.
+-- @return averages: these
+-- @usage
+-- local a = lb.survey.accumulate { rate = 1000, segment = 32, overlap = 0 }
+-- a:feed(lb.samples.new(40)):split():feed(lb.samples.new(40))
+-- assert(a:density().segments == 2)
+function Averages:split()
+  assert(self.sums:split())
+  local rest = self.sums:segments()
+  for _, segments in ipairs(self.stretches) do rest = rest - segments end
+  self.stretches[#self.stretches + 1] = rest
+  return self
+end
+
+-- Feeds all of a source: blocks, or a record's stretches between its gaps.
+local function feed_all(averages, from)
+  if from.blocks then return averages:feed(from.blocks) end
+  for i, stretch in ipairs(from.segments) do
+    if i > 1 then averages:split() end
+    local done, message, code = averages.sums:feed(from.feed, from.places, stretch.first,
+      stretch.count)
+    if not done then return nil, message, code end
+  end
+  return averages
+end
+
 -- The averaged power of a channel as a spectrum.
 local function spectrum_of(averages, k, kind)
   k = k or 1
-  local factor = averages.factors[k]
-  if not factor then
+  if not averages.names[k] then
     fail(3, "channel %s is not there; there are 1 to %d", tostring(k), #averages.names)
   end
   averages:refresh()
-  local scale = averages.scale[kind] * factor ^ 2 / (averages.median_bias or 1)
+  local scale = averages.scale[kind] / (averages.median_bias or 1)
   local values, message, code = averages.sums:power(k, scale)
   if not values then return nil, message, code end
   return spectrum.new {
@@ -227,6 +256,7 @@ function Averages:__tostring()
 end
 
 --- Averages the spectra of a record's segments, for results of several kinds.
+-- A record is read in blocks where it lies in a file; no segment reaches across a gap of it.
 -- @param source record, samples or table: a record; or samples, or a list of blocks of samples of
 --   equal length, with rate and unit
 -- @param options table: segment (samples in one; needed), window (name, { name, parameter } or a
@@ -246,11 +276,11 @@ end
 function M.averages(source, options)
   local from = source_of(source, options, 2)
   local out = make(from, options, 2)
-  local done, message, code = out:feed(from.blocks)
+  local done, message, code = feed_all(out, from)
   if not done then return nil, message, code end
   if out:refresh().segments == 0 then
-    return nil, ("%d samples are less than a segment of %d"):format(#from.blocks[1], out.length),
-      "infeasible"
+    return nil, ("%d samples%s are less than a segment of %d"):format(from.samples,
+      from.segments and #from.segments > 1 and " with gaps" or "", out.length), "infeasible"
   end
   return out
 end
@@ -275,11 +305,11 @@ function M.accumulate(options)
   if not rate then
     fail(1, "rate: %s", options.rate == nil and "samples need their rate, S/s" or reason)
   end
-  local from = { rate = rate, factors = {}, units = {}, names = {} }
+  local from = { rate = rate, units = {}, names = {} }
   for k = 1, count do
     local unit = options.unit
     if type(unit) == "table" then unit = unit[k] end
-    from.factors[k], from.units[k], from.names[k] = 1, unit or "1", ("channel %d"):format(k)
+    from.units[k], from.names[k] = unit or "1", ("channel %d"):format(k)
   end
   return make(from, options, 2)
 end

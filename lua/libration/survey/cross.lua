@@ -177,8 +177,7 @@ end
 -- @return cross: re, im (samples), kind, unit, and what was averaged; or nil, message, code
 function M.cross(averages, from, to, kind)
   check_pair(averages, from, to)
-  local factor = averages.factors[from] * averages.factors[to]
-  local re, im, code = averages.sums:cross(from, to, factor * averages.scale[kind])
+  local re, im, code = averages.sums:cross(from, to, averages.scale[kind])
   if not re then return nil, im, code end
   local a, b = averages.units[from], averages.units[to]
   return facts_of(averages, from, to, Cross, { re = re, im = im, kind = kind, sides = 1,

@@ -126,19 +126,33 @@ function M.read(options, level)
   return out
 end
 
+-- Effective averages of stretches that do not overlap each other: the variance of their weighted
+-- mean, K^2 / sum of K_i^2 / n_i.
+local function effective(s, segments, stretches, last)
+  local function of(count) return core.effective_averages(s.weights, s.step, count) end
+  if #stretches == 0 then return of(segments) end
+  local sum = last > 0 and last ^ 2 / of(last) or 0
+  for _, count in ipairs(stretches) do
+    if count > 0 then sum = sum + count ^ 2 / of(count) end
+  end
+  return segments ^ 2 / sum
+end
+
 --- What a number of segments is worth.
 -- The median of noise scatters more than the mean: its averages are fewer by (ln 2)^2, the limit
 -- for many of them (variance of a sample median, 1 / (4 n f^2), f the density at the median). The
 -- bias of a median is taken for as many averages as the segments are worth; simulated noise agrees
 -- within 1 % for overlaps up to 75 %.
--- @param setting table: of read
+-- @param s table: of read
 -- @param segments integer: how many there are
+-- @param stretches table: how many of them lie before each break
+-- @param last integer: how many after the last one
 -- @return number: effective averages; nil for a peak hold, whose scatter is another
 -- @return number: what a median is divided by; nil for other averages
-function M.worth(setting, segments)
-  local count = core.effective_averages(setting.weights, setting.step, segments)
-  if setting.averaging == "peak" then return nil, nil end
-  if setting.averaging == "mean" then return count, nil end
+function M.worth(s, segments, stretches, last)
+  if s.averaging == "peak" then return nil, nil end
+  local count = effective(s, segments, stretches, last)
+  if s.averaging == "mean" then return count, nil end
   local ln2 = math.log(2)
   local odd = segments - 1 + segments % 2 -- an even number's median is biased as one less
   return count * (segments <= 2 and 1 or ln2 * ln2),
