@@ -197,8 +197,8 @@ describe("a record's survey", function()
   it("reads files in blocks, raw integers as well", function()
     local codes = lb.samples.make(20000, function(i) return (i * i * 7919) % 65535 - 32767 end)
     local rec = lb.record.new { rate = 48000, channels = {
-      { codes = codes, bits = 16, range = "10 V" }, { codes = codes * -1, bits = 16, range = "10 V" },
-    } }
+      { codes = codes, bits = 16, range = "10 V" },
+      { codes = codes * -1, bits = 16, range = "10 V" } } }
     local path = os.tmpname()
     assert(rec:write(path, { format = "wav" }))
     local open = assert(lb.record.open(path, { range = "10 V" }))
