@@ -138,6 +138,7 @@ describe("histograms", function()
   it("refuse edges that are none", function()
     local x = noise(5)
     assert(not pcall(x.histogram, x, 1, 1, 5) and not pcall(x.histogram, x, 0, math.huge, 5))
+    assert(not pcall(x.histogram, x, 0, 5e-324, 5)) -- bins per unit would be infinite
     assert(not pcall(x.histogram, x, -1.7e308, 1.7e308, 5) and not pcall(x.histogram, x, 0, 1, 0))
   end)
 end)

@@ -156,6 +156,8 @@ static int samples_histogram(lua_State *L) {
   luaL_argcheck(L, isfinite(high) && high > low && isfinite(high - low), 3,
                 "the upper edge must be finite and above the lower one");
   size_t bins = lbr_check_count(L, 4, 1, MOST_BINS);
+  luaL_argcheck(L, isfinite((double)bins / (high - low)), 3,
+                "the edges are too close to each other");
   double *count = lbr_push_samples(L, bins);
   lbr_histogram(x, n, low, high, count, bins, &tails);
   return push_tails(L, &tails);

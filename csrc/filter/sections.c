@@ -8,9 +8,10 @@
 #define CHUNK 256
 #define CLONES __attribute__((target_clones("avx512f", "avx2", "default")))
 
+/* What does not wait for y is added first. */
 static inline double advance(const lbr_section *s, double *hold, double x) {
   double y = s->b0 * x + hold[0];
-  hold[0] = (s->b1 * x - s->a1 * y) + hold[1];
+  hold[0] = (s->b1 * x + hold[1]) - s->a1 * y;
   hold[1] = s->b2 * x - s->a2 * y;
   return y;
 }
@@ -76,7 +77,7 @@ CLONES static void full_steps(bank *bank_, const double *x, double *y,
     ptrdiff_t at = (ptrdiff_t)i * step;
     k.in[0] = x[at];
     side v = k.b0 * k.in + k.p;
-    k.p = (k.b1 * k.in - k.a1 * v) + k.q;
+    k.p = (k.b1 * k.in + k.q) - k.a1 * v;
     k.q = k.b2 * k.in - k.a2 * v;
     k.in = __builtin_shufflevector(v, v, 0, 0, 1, 2);
     y[at] = v[LANES - 1];

@@ -37,7 +37,8 @@ typedef struct lbr_tails {
 } lbr_tails;
 
 /* Adds to count[0 .. bins - 1] how many samples lie in equal bins over low to
- * high (finite, low < high); a bin holds its lower edge, the last one both. */
+ * high (finite, low < high, bins / (high - low) finite); a bin holds its lower
+ * edge, the last one both.  Edges are where rounding puts them. */
 void lbr_histogram(const double *x, size_t n, double low, double high,
                    double *count, size_t bins, lbr_tails *tails);
 
