@@ -1,4 +1,8 @@
 /* Filling a long run of samples in pieces, on several threads.
+ *
+ * Tones and noise have the same bits on every processor.  Chirps (expm1l),
+ * powers of the speed (pow), decays (exp) and interpolation (cos) go through
+ * the C library, whose last bit may depend on its version and the processor.
  */
 #ifndef LBR_SYNTH_SPREAD_H
 #define LBR_SYNTH_SPREAD_H
