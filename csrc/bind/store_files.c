@@ -211,6 +211,9 @@ static int store_columns(lua_State *L) {
 
 static const luaL_Reg functions[] = {
     {"columns", store_columns},
-    {"head", store_head}, {"rows", store_rows}, {"packed", store_packed}, {NULL, NULL}};
+    {"head", store_head},
+    {"rows", store_rows},
+    {"packed", store_packed},
+    {NULL, NULL}};
 
 void lbr_add_files(lua_State *L) { luaL_setfuncs(L, functions, 0); }

@@ -404,7 +404,7 @@ end
 --- The moment of a sample, gaps included.
 -- @param i integer: sample number from 1, default 1
 -- @return integer: nanoseconds since 1970-01-01T00:00:00Z, rounded down; nil where the start is not
---   known
+--   known, or the moment is beyond 64 bits
 -- @usage
 -- local r = lb.record.new { rate = 1000, samples = { 1, 2, 3 }, start = "2026-03-01T12:00:00Z",
 --   gaps = { { after = 2, lost = 10 } } }
@@ -414,9 +414,7 @@ function Record:moment(i)
   if not self.start_ns then
     return nil
   end
-  local over, under = self.rate.numerator, self.rate.denominator
-  local seconds = n * under // over
-  return self.start_ns + seconds * 1000000000 + (n * under % over) * 1000000000 // over
+  return time.after(self.start_ns, n, self.rate)
 end
 
 --- The sample counter of a sample: how many the converter had taken before it, lost ones included.

@@ -29,7 +29,9 @@ end
 function M.open(path, coding, big, channels, at, samples)
   local size = coding.bits // 8
   local step = size * channels
-  if step > 65536 then
+  if at > 1 << 60 or samples and samples > 1 << 60 then
+    return nil, ("%s: is shorter than its description says"):format(path), "format"
+  elseif step > 65536 then
     return nil, ("%s: frames of %d bytes are more than can be read"):format(path, step), "domain"
   end
   if not samples then

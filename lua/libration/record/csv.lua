@@ -125,7 +125,11 @@ end
 local function unevenness(feed, rate, scale)
   local count, worst = feed:samples(), 0
   local ramp = samples.make(math.min(BLOCK, count), function(i) return i - 1 end)
-  local origin = feed:read(1, 1, { 1 })[1][1] * scale * rate
+  local start, reason, kind = feed:read(1, 1, { 1 })
+  if not start then
+    return nil, reason, kind
+  end
+  local origin = start[1][1] * scale * rate
   for first = 1, count, BLOCK do
     local n = math.min(BLOCK, count - first + 1)
     local block, message, code = feed:read(first, n, { 1 })
@@ -141,9 +145,13 @@ end
 -- Rates that the first interval and the whole span speak for, exact ones first.
 local function candidates(feed, scale)
   local count = feed:samples()
-  local first, second = feed:read(1, 2, { 1 }), feed:read(count, 1, { 1 })
-  if not first or not second then
-    return {}
+  local first, message, code = feed:read(1, 2, { 1 })
+  local second
+  if first then
+    second, message, code = feed:read(count, 1, { 1 })
+  end
+  if not second then
+    return nil, message, code
   end
   local span = (second[1][1] - first[1][1]) * scale
   local mean = (count - 1) / span
@@ -171,7 +179,14 @@ local function even_rate(path, feed, scale, given)
   if feed:samples() < 2 then
     return given, ("%s: one time does not say the rate; give rate"):format(path), "domain"
   end
-  for _, rate in ipairs(given and { given } or candidates(feed, scale)) do
+  local list, reason, kind = { given }, nil, nil
+  if not given then
+    list, reason, kind = candidates(feed, scale)
+  end
+  if not list then
+    return nil, reason, kind
+  end
+  for _, rate in ipairs(list) do
     local worst, message, code = unevenness(feed, rate:number(), scale)
     if not worst then
       return nil, message, code
@@ -213,7 +228,8 @@ end
 
 local function rate_in(text)
   local rate = text:match "(%d[%d/.]*) S/s"
-  return rate and fraction.try(rate) or nil
+  local exact = rate and fraction.try(rate)
+  return exact and exact > 0 and exact or nil
 end
 
 function M.open(path, options)

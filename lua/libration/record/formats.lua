@@ -16,6 +16,7 @@ local M = {
   require "libration.record.sigmf",
   require "libration.record.raw",
   require "libration.record.universal",
+  require "libration.record.hdf5",
   (require "libration.record.csv"),
 }
 

@@ -4,6 +4,7 @@ local core = require "libration.core"
 local formats = require "libration.record.formats"
 local given = require "libration.record.options"
 local making = require "libration.record.making"
+local time = require "libration.record.time"
 
 local M = {}
 
@@ -115,11 +116,7 @@ end
 local function move_start(record, first)
   local segments = given.cut_segments(record.segments, first, record.source:samples())
   local n = segments[1].counter - record.segments[1].counter
-  if record.start_ns then
-    local over, under = record.rate.numerator, record.rate.denominator
-    record.start_ns = record.start_ns + n * under // over * 1000000000
-      + (n * under % over) * 1000000000 // over
-  end
+  record.start_ns = record.start_ns and time.after(record.start_ns, n, record.rate)
   record.segments = segments
   return record
 end

@@ -2,6 +2,8 @@
 -- The calendar is Gregorian and every day has 86 400 s, as in POSIX: a leap
 -- second has no moment of its own and is refused. Integers reach from 1677 to 2262.
 
+local fraction = require "libration.fraction"
+
 local M = {}
 
 local SECOND = 1000000000
@@ -85,6 +87,29 @@ function M.read(text)
     return refuse(text, "nanoseconds in 64 bits reach from 1677-09-21 to 2262-04-11")
   end
   return seconds * SECOND + nanoseconds
+end
+
+--- The moment n samples after another one, rounded down to a nanosecond.
+-- @param ns integer: the other one
+-- @param n integer: samples
+-- @param rate fraction: S/s
+-- @return integer: nanoseconds since 1970-01-01T00:00:00Z; nil beyond 64 bits
+-- @usage
+-- local time = require "libration.record.time"
+-- assert(time.after(5, 1, lb.fraction.new(3)) == 333333338)
+function M.after(ns, n, rate)
+  local fine, seconds = pcall(function() return fraction.new(n) / rate end)
+  if not fine then
+    return nil
+  end
+  local whole, rest = seconds.numerator // seconds.denominator, seconds.numerator
+    % seconds.denominator
+  local part = rest < 9000000000 and rest * SECOND // seconds.denominator
+    or math.floor(rest / seconds.denominator * SECOND)
+  if math.abs(whole) > 9000000000 then
+    return nil
+  end
+  return ns + whole * SECOND + part
 end
 
 --- Writes a moment as ISO 8601 text in UTC, with no more decimals than needed.
