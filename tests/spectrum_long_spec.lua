@@ -109,6 +109,19 @@ describe("a single transform", function()
     end
   end)
 
+  -- Symptom: a crash when an object was freed. Cause: forgetting twice gave back what the
+  -- planner keeps although a plan that the first time had left alone was still in use.
+  it("outlives plans being forgotten, twice", function()
+    local x = noise(2048, 2)
+    local t = spectrum.single(2048)
+    local re = t:run(x)
+    spectrum.forget()
+    spectrum.forget()
+    assert.are.equal(re, (t:run(x)))
+    t:close()
+    assert.are.equal(re, (spectrum.single(2048):run(x)))
+  end)
+
   it("writes into blocks that are there, small ones too", function()
     local x, w = noise(64, 1), lb.window("hann"):samples(64)
     local re, im = lb.samples.new(33), lb.samples.new(33)

@@ -27,6 +27,7 @@ struct lbr_transform {
 /* The one piece of varying state of the core; newest plan first. */
 static pthread_mutex_t lock = PTHREAD_MUTEX_INITIALIZER;
 static lbr_transform *cache;
+static size_t forgotten; /* plans in use that are not in the cache */
 
 /* Large pages for large buffers: first writes cost a tenth.  Only a hint. */
 static void advise(void *data, size_t bytes) {
@@ -146,10 +147,12 @@ void lbr_transform_put(lbr_transform *t) {
   if (!t) return;
   pthread_mutex_lock(&lock);
   if (--t->users == 0) {
-    if (t->forgotten)
+    if (t->forgotten) {
       free_plan(t);
-    else
+      forgotten--;
+    } else {
       trim(IDLE_PLANS);
+    }
   }
   pthread_mutex_unlock(&lock);
 }
@@ -157,10 +160,10 @@ void lbr_transform_put(lbr_transform *t) {
 void lbr_transform_forget(void) {
   pthread_mutex_lock(&lock);
   trim(0);
-  bool in_use = cache != NULL;
-  for (lbr_transform *t = cache; t; t = t->next) t->forgotten = true;
+  for (lbr_transform *t = cache; t; t = t->next, forgotten++)
+    t->forgotten = true;
   cache = NULL;
-  if (!in_use) fftw_cleanup();
+  if (forgotten == 0) fftw_cleanup();
   pthread_mutex_unlock(&lock);
 }
 

@@ -1,5 +1,5 @@
 -- What the failing-allocator sweep runs over averages, transforms and zooms.
-return "spectrum", function()
+local function work()
   local core, samples = require "libration.core", require "libration.samples"
   local survey, spectrum = require "libration.survey", require "libration.spectrum"
   local x = samples.make(700, function(i) return math.sin(i * i) end)
@@ -29,5 +29,11 @@ return "spectrum", function()
   assert(#spectrum.zoom(x, { rate = 1, first_hz = 0.1, step_hz = 1e-3, points = 20 }) == 20)
   assert(core.spectrum.zoom(5000, 0.1, 1e-6, 20, 1):decimation() > 1)
   assert(#spectrum.quadrature(x) == 700)
+end
+
+return "spectrum", function()
+  local core = require "libration.core"
+  local ok, message = pcall(work)
   core.spectrum.forget()
+  if not ok then error(message, 0) end
 end
