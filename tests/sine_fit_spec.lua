@@ -210,6 +210,24 @@ describe("fits beside scipy", function()
   end)
 end)
 
+describe("a deterministic signal with a second line", function()
+  -- 100 Hz and 250.3 Hz with noise of the MINSTD generator (S. K. Park, K. W. Miller 1988) at 1000
+  -- S/s; values: scipy 1.10.1, optimize.curve_fit of sine and offset, as tabled for this project.
+  it("has the frequency and amplitude that scipy finds, to 1e-9", function()
+    local seed = 1
+    local x = lb.samples.make(4096, function(i)
+      seed = 16807 * seed % 2147483647
+      local t = (i - 1) / 1000
+      return math.sin(2 * math.pi * 100 * t) + 0.5 * math.cos(2 * math.pi * 250.3 * t + 0.3)
+        + 0.1 * (seed / 2147483647 - 0.5)
+    end)
+    assert.near(2.75613951664944, x:sum(), 1e-11)
+    local fit = lb.lines.sine(x, { rate = 1000 })
+    assert.near(1, fit.hz / 99.9998340451686, 1e-9)
+    assert.near(1, fit.amplitude / 0.998902971225192, 1e-9)
+  end)
+end)
+
 describe("a result", function()
   local x = tones(300, { { hz = 0.11, amplitude = 1 } }, 0.1)
 

@@ -109,7 +109,9 @@ static int orders(lua_State *L) {
  * @return samples: standard deviation of the turns at each angle
  * @return integer: turns averaged
  * @usage
- * local x = lb.samples.make(400, function(i) return math.cos(math.pi * i / 25) end)
+ * local x = lb.samples.make(400, function(i)
+ *   return math.cos(math.pi * i / 25)
+ * end)
  * local pulses = core.samples.from { 0, 50, 100, 150, 200, 250, 300, 350 }
  * local mean, deviation, turns = core.lines.turn_average(x, pulses, 1, 8)
  * assert(turns == 6 and deviation:peak() < 1e-9)
