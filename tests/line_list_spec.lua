@@ -160,6 +160,23 @@ describe("a list of lines", function()
     end, "lines%[1%] from 2.0 to 1.0 Hz")
   end)
 
+  it("refuses samples that are not numbers, and silence", function()
+    local x = noise(1024, 1, 1, 1)
+    x[477] = 0 / 0
+    local tracked = { rate = 1, lines = { { from_hz = 0.1, to_hz = 0.11 } } }
+    assert.equal("domain", select(3, lb.lines.list(x, { rate = 1 })))
+    assert.equal("domain", select(3, lb.lines.track(x, tracked)))
+    assert.equal("domain", select(3, lb.lines.joint(x, { rate = 1, lines = { 0.1 } })))
+    assert.equal("domain", select(3, lb.lines.orders(x, { rate = 1, pulses = { 0, 500, 1000 },
+      orders = { 1 } })))
+    assert.equal("domain", select(3, lb.lines.synchronous(x, { rate = 1,
+      pulses = { 0, 300, 600, 900 } })))
+    assert.equal("domain", select(3, lb.lines.quality(x, { rate = 1 })))
+    local silence = lb.samples.new(1024)
+    assert.same({}, lb.lines.list(silence, { rate = 1 }).lines)
+    assert.matches("no noise to judge by", select(2, lb.lines.track(silence, tracked)))
+  end)
+
   it("refuses records too short for the floor and misspelt options", function()
     local _, message, code = lb.lines.list(noise(100, 1, 1, 1), { rate = 1 })
     assert.equal("domain", code)

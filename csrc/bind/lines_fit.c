@@ -293,7 +293,7 @@ static int joint(lua_State *L) {
  * @param count integer: lines of a record, 1 to 512
  * @param workers integer: threads; default one per core
  * @return samples: amplitude, phase, u_amplitude, u_phase of each line of each
- *   record; or nil, message, code
+ *   record (not numbers where its samples are not); or nil, message, code
  * @return samples: offset, u_offset, rms of each record
  * @usage
  * local x = lb.samples.make(128, function(i) return math.cos(i) end)

@@ -45,7 +45,8 @@ void lbr_joint_run(lbr_joint *joint, const double *x, lbr_joint_line *lines,
 
 /* records records of n samples, one after the other; f has count frequencies,
  * or records times count when each record has its own.  lines: records times
- * count; rests: records.  LBR_DOMAIN as lbr_joint_aim.  workers 0: one per
+ * count; rests: records.  LBR_DOMAIN as lbr_joint_aim.  Results of a
+ * record with samples that are not finite are not numbers.  workers 0: one per
  * core. */
 LBR_CHECKED lbr_status lbr_joint_batch(const double *x, size_t n,
                                        size_t records, const double *f,

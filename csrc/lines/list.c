@@ -214,6 +214,12 @@ static void collect(lbr_list *l) {
   }
 }
 
+static bool is_finite(const lbr_list *l) {
+  double sum = 0;
+  for (size_t k = 0; k < l->bins; k++) sum += l->power[k];
+  return isfinite(sum);
+}
+
 static lbr_status search(lbr_list *l, const lbr_list_setup *s) {
   double tests = (double)(l->facts.last - l->facts.first + 1);
   double median = lbr_chi_square_level(l->facts.freedom, 0.5);
@@ -255,6 +261,7 @@ lbr_status lbr_list_new(const double *x, size_t n, const double *w, size_t m,
   sum_window(w, m, &l->facts);
   lbr_status status = take_memory(l, s->width);
   if (status == LBR_OK) status = average(l, x, w, s->step);
+  if (status == LBR_OK && !is_finite(l)) status = LBR_DOMAIN;
   if (status == LBR_OK) status = search(l, s);
   if (status == LBR_OK)
     *out = l;

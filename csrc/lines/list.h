@@ -37,7 +37,8 @@ typedef struct lbr_list lbr_list;
 
 /* The averaged power |sum w x exp|^2 of the segments of record x (n samples)
  * under window w (m samples), its floor, and its peaks.  LBR_DOMAIN: fewer
- * samples than a segment, or fewer bins to test than width. */
+ * samples than a segment, fewer bins to test than width, or samples that are
+ * not finite. */
 LBR_CHECKED lbr_status lbr_list_new(const double *x, size_t n, const double *w,
                                     size_t m, const lbr_list_setup *setup,
                                     lbr_list **out);

@@ -63,6 +63,7 @@ local function track(from, w, m, step, searches)
 end
 
 local function line_of(row, k, floor, facts, rate)
+  if not (floor > 0) then return nil end
   local averages = facts.freedom / 2
   -- The floor is the variance of one transform value: sum w^2 times that of a sample.
   local variance = floor / facts.square
@@ -77,6 +78,12 @@ local function line_of(row, k, floor, facts, rate)
     chance = math.min(1, (facts.last - facts.first + 1)
       * core.chance(facts.freedom, power / floor)),
   }
+end
+
+-- Without any noise there is no measure of what stands above it.
+local function no_noise(row, rate)
+  return nil, ("lines: the floor at %.6g Hz is 0: there is no noise to judge by"):format(
+    row.frequency * rate), "domain"
 end
 
 -- Sets apart what stronger lines leave in their skirts, and what stands so close
@@ -142,6 +149,7 @@ function M.list(what, given)
   end
   for i, row in ipairs(track(from, w, s.m, s.step, searches)) do
     lines[i] = line_of(row, peaks[i], floor[peaks[i] + 1], peaks, rate)
+    if not lines[i] then return no_noise(row, rate) end
   end
   local kept, hidden = set_apart(lines, s.shape, s.m, rate)
   return result.new("lines", result.facts(from, {
@@ -212,6 +220,7 @@ function M.track(what, given)
   for i, row in ipairs(track(from, w, s.m, s.step, searches)) do
     local k = bin_of(row.frequency, s.m, peaks)
     local line = line_of(row, k, floor[k + 1], peaks, rate)
+    if not line then return no_noise(row, rate) end
     line.name = read.lines[i].name or tostring(i)
     line.at_edge = row.frequency <= searches[2 * i - 1] or row.frequency >= searches[2 * i]
     line.found = line.over_floor_db > 10 * math.log(peaks.factor, 10) and not line.at_edge

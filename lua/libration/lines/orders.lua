@@ -121,6 +121,7 @@ local function at_pulses(from, read)
   local flat, rest, code = core.lines.orders(from.x:slice(first, first + count - 1), angle,
     read.orders)
   if not flat then return nil, rest, code end
+  if rest.rms ~= rest.rms then return source.not_finite "orders" end
   local lines = {}
   for i, order in ipairs(read.orders) do
     lines[i] = { order = order, hz = order * shaft.speed_hz, amplitude = flat[4 * i - 3],
@@ -203,6 +204,7 @@ function M.synchronous(what, given)
   local mean, deviation, turns = core.lines.turn_average(from.x, read.pulses * from.rate:number(),
     read.per_turn, read.points)
   if not mean then return nil, deviation, turns end
+  if mean:sum() ~= mean:sum() then return source.not_finite "synchronous" end
   local shaft = shaft_of(read)
   local points = {}
   for p = 1, read.points do

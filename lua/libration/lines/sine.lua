@@ -95,6 +95,7 @@ function M.fit_lines(from, lines)
   local fit <close>, message, code = core.joint(#from.x, f)
   if not fit then return nil, message, code end
   local flat, rest = fit:run(from.x)
+  if rest.rms ~= rest.rms then return source.not_finite "joint fit" end
   for i, line in ipairs(lines) do
     out[i] = { name = line.name, hz = line.hz, amplitude = flat[4 * i - 3],
                phase = flat[4 * i - 2], u_amplitude = flat[4 * i - 1], u_phase = flat[4 * i] }

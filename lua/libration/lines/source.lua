@@ -68,4 +68,9 @@ function M.take(source, read, what)
   return { x = source, rate = fraction.new(read.rate), unit = read.unit or "1" }
 end
 
+--- nil, message, code where a fit of samples that are not finite is none.
+function M.not_finite(what)
+  return nil, what .. ": some samples are not finite numbers", "domain"
+end
+
 return M
