@@ -1,0 +1,12 @@
+-- More of tests/record_calls_spec.lua.
+local calls = require "tests.support.record_calls"
+
+describe("functions on records", function()
+  for seed = 1, 10 do
+    it("survive any arguments #slow " .. seed, function()
+      local done, raised, odd = calls.try(10000, seed)
+      assert(done > 10000 and raised > 10000)
+      assert.equal(0, #odd, odd[1])
+    end)
+  end
+end)
