@@ -151,6 +151,20 @@ describe("SigMF metadata", function()
     assert.equal("domain", select(3, open('"core:datatype": "ri8"', "", "abcd")))
   end)
 
+  it("that we write holds against the schema", function()
+    local stem = os.tmpname()
+    for _, make in ipairs { with_gaps, floats } do
+      assert(make():write(stem .. ".sigmf-meta"))
+      local pipe = assert(io.popen("env -u LD_PRELOAD /usr/bin/python3 -c 'import json, jsonschema,"
+        .. " sys; jsonschema.validate(json.load(open(sys.argv[1])), json.load(open(sys.argv[2])));"
+        .. ' print("valid")\' ' .. stem .. ".sigmf-meta tests/data/sigmf_schema.json 2>&1"))
+      local text = pipe:read "a"
+      pipe:close()
+      assert.is_truthy(text:find "valid%s*$", text)
+    end
+    drop(stem, stem .. ".sigmf-meta", stem .. ".sigmf-data")
+  end)
+
   it("that is deep or hostile is refused", function()
     local path = sounds.temporary ".sigmf-meta"
     sounds.write_bytes(path, '{"global": ' .. ("["):rep(100000))

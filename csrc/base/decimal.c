@@ -87,12 +87,14 @@ static const char *split(const char *p, const char *end, parts *n) {
   return p;
 }
 
+/* Exact doubles all. */
+static const double ten[] = {1e0,  1e1,  1e2,  1e3,  1e4,  1e5,  1e6,  1e7,
+                             1e8,  1e9,  1e10, 1e11, 1e12, 1e13, 1e14, 1e15,
+                             1e16, 1e17, 1e18, 1e19, 1e20, 1e21, 1e22};
+
 /* Digits below 2^53 and powers to 10^22 are exact doubles, so that one
  * operation rounds once. */
 static bool by_double(const parts *n, double *out) {
-  static const double ten[] = {1e0,  1e1,  1e2,  1e3,  1e4,  1e5,  1e6,  1e7,
-                               1e8,  1e9,  1e10, 1e11, 1e12, 1e13, 1e14, 1e15,
-                               1e16, 1e17, 1e18, 1e19, 1e20, 1e21, 1e22};
   if (n->digits > (uint64_t)1 << 53 || n->power < -22 || n->power > 22)
     return false;
   double x = (double)n->digits;
@@ -171,7 +173,33 @@ static bool by_long_double(const parts *n, double *out) {
 }
 #endif
 
+/* Numbers of at most 15 digits without an exponent, which are most; NULL for
+ * all others.  Both operands are exact, so that the quotient is right. */
+static const char *take_short(const char *p, const char *end, double *out) {
+  bool negative = p < end && *p == '-';
+  uint64_t value = 0;
+  const char *from = p += negative, *point = NULL;
+  for (; p < end; p++) {
+    unsigned d = digit(p);
+    if (d < 10)
+      value = value * 10 + d;
+    else if (*p == '.' && !point)
+      point = p;
+    else
+      break;
+    if (p - from > 15) return NULL;
+  }
+  size_t digits = (size_t)(p - from) - (point != NULL);
+  if (digits == 0 || digits > 15 || (p < end && (*p == 'e' || *p == 'E')))
+    return NULL;
+  double x = (double)value / (point ? ten[p - point - 1] : 1.0);
+  *out = negative ? -x : x;
+  return p;
+}
+
 const char *lbr_decimal(const char *p, const char *end, double *out) {
+  const char *next = take_short(p, end, out);
+  if (next) return next;
   parts n;
   double value;
   const char *behind = split(p, end, &n);
