@@ -3,6 +3,7 @@
 #include <stdlib.h>
 #include <string.h>
 
+#define MOST_NODES ((size_t)1 << 24) /* half a gigabyte: give up first */
 #define ROUNDING_BITS 12 /* durations closer than this count as equal */
 
 /* Durations as whole numbers, so that n / rate made in two ways compares
@@ -24,6 +25,7 @@ static bool before(const lbr_node *a, const lbr_node *b) {
 
 lbr_status lbr_heap_push(lbr_heap *h, lbr_node node) {
   if (h->count == h->room) {
+    if (h->room >= MOST_NODES) return LBR_STOPPED;
     size_t room = h->room ? 2 * h->room : 1024;
     lbr_node *grown = realloc(h->node, room * sizeof *grown);
     if (!grown) return LBR_NO_MEMORY;

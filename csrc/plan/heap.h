@@ -19,6 +19,7 @@ typedef struct lbr_heap {
   size_t count, room;
 } lbr_heap;
 
+/* LBR_STOPPED: it would take more memory than a search is worth. */
 LBR_CHECKED lbr_status lbr_heap_push(lbr_heap *heap, lbr_node node);
 bool lbr_heap_pop(lbr_heap *heap, lbr_node *out); /* false: empty */
 void lbr_heap_free(lbr_heap *heap);

@@ -111,6 +111,8 @@ static double reach(mode_limits *m, lbr_kernel *kernel, double db) {
 typedef struct line_view {
   size_t i;
   double allowed_db; /* what may leak in, dB re the demand's unit */
+  double own_db;     /* by how much its own image must be kept down where its
+                        amplitude is least, dB */
   bool tracked;
 } line_view;
 
@@ -133,7 +135,8 @@ static void look(const lbr_limits *l, outlook *o, const line_view *v,
                  size_t j, double rate) {
   const lbr_scene *s = l->problem->scene;
   const lbr_source *a = &s->sources[v->i], *b = &s->sources[j];
-  double db = l->source_db[j] - v->allowed_db, far = 0, distance = INFINITY;
+  double db = v->i == j ? v->own_db : l->source_db[j] - v->allowed_db;
+  double far = 0, distance = INFINITY;
   if (b->wander > 0 || db <= 0) return;
   for (double sign = v->i == j ? -1 : 1; sign >= -1; sign -= 2) {
     double hz = b->hz - sign * a->hz;
@@ -168,7 +171,8 @@ static void fill(lbr_limits *l, outlook *o, size_t rate, bool tracked) {
     o->hopeless = o->hopeless || !(allowed > fixed * a);
     if (o->hopeless) return;
     allowed -= fixed * a;
-    line_view v = {i, to_db(allowed * path->nominal[i]), tracked};
+    line_view v = {i, to_db(allowed * path->nominal[i]), to_db(a / allowed),
+                   tracked};
     o->noise = fmax(o->noise, noise_least(p, path, i, allowed));
     for (size_t j = 0; j < p->scene->n_sources; j++)
       look(l, o, &v, j, path->rate);

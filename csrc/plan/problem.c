@@ -6,8 +6,3 @@ size_t lbr_mode_least_samples(const lbr_mode *mode) {
   size_t lobe = 4 * (mode->window.shape->terms + 1);
   return lobe > FEWEST ? lobe : FEWEST;
 }
-
-double lbr_problem_top(const lbr_problem *p, size_t i) {
-  double half = lbr_half_width(p->scene, i);
-  return (p->scene->sources[i].hz + half) * (1 + p->front->timebase);
-}

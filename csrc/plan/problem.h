@@ -26,7 +26,6 @@ typedef struct lbr_problem {
   unsigned averages;
   double coverage;             /* k of the random terms */
   double share;                /* errors may take this share of tolerances */
-  bool undersample;            /* lines may stand above half the rate */
   double least_duration;       /* shorter records are not looked at, s */
   double most_work;            /* units of work (about a microsecond each)
                                   after which the search gives up */
@@ -36,8 +35,5 @@ typedef struct lbr_problem {
 
 /* The shortest record a window may be used with: its kernel must fit. */
 size_t lbr_mode_least_samples(const lbr_mode *mode);
-
-/* The highest frequency (time base in) that source `i` may have, Hz. */
-double lbr_problem_top(const lbr_problem *problem, size_t i);
 
 #endif

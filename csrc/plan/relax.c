@@ -16,14 +16,16 @@
 #define MARGIN 1e-8    /* and enclosures looser by this */
 #define STEADY 0.9999  /* noise bandwidths differ less with the length */
 
-/* Least gain any rate of the band gives a source over its interval: low-pass
- * filters whose corner follows the rate are lowest at the lowest. */
+/* Least gain any rate of the band gives a source over its interval.  A corner
+ * that follows the rate moves by less than the band's factor of two, which is
+ * as if the source did. */
 static double least_gain(const lbr_problem *p, double rate, size_t j) {
   double low, high, half = lbr_half_width(p->scene, j);
-  double hz = p->scene->sources[j].hz;
-  lbr_filter_range(&p->front->filter, fmax(hz - half, 0), hz + half,
+  double from = fmax(p->scene->sources[j].hz - half, 0);
+  if (p->front->filter.corner_of_rate) from /= 2;
+  lbr_filter_range(&p->front->filter, from, p->scene->sources[j].hz + half,
                    rate, &low, &high);
-  return low * pow(10, -p->front->filter.ripple_db / 20);
+  return low;
 }
 
 static double most_gain(const lbr_problem *p) {
@@ -159,6 +161,13 @@ void lbr_relax_thin(const lbr_relax *r, lbr_kernel *kernel, double least,
   }
 }
 
+/* Least distance from where a bin reading would be without the bins' grid: at
+ * the line's nominal place, however it moves. */
+static double bin_near(const lbr_relax *r, const lbr_pair *p) {
+  double hz = r->problem->scene->sources[p->line].hz;
+  return fmax(fabs(p->hz - p->sign * hz) - p->half, 0);
+}
+
 double lbr_relax_least(const lbr_relax *r, lbr_reading reading,
                        lbr_kernel *kernel, const double *kept) {
   double least = 0, enbw = lbr_kernel_noise_bandwidth(kernel);
@@ -172,7 +181,8 @@ double lbr_relax_least(const lbr_relax *r, lbr_reading reading,
     if (level >= 1 || p->swing > 0) continue;
     double reach = fmax(lbr_kernel_reach(kernel, level) - off, 0);
     if (reach <= 0) continue;
-    least = fmax(least, p->low > 0 ? TRUST_SHORT * reach / p->low : INFINITY);
+    double near = reading == LBR_READING_BIN ? bin_near(r, p) : p->low;
+    least = fmax(least, near > 0 ? TRUST_SHORT * reach / near : INFINITY);
   }
   return least;
 }
@@ -218,13 +228,14 @@ static double least_most(lbr_kernel *kernel, span certain, span possible) {
 
 /* Lower bound of the kernel's mean over the distance's interval: sources that
  * move together are worst together at least as much as on average.  A whole
- * bin of |sin| has the mean 2 / pi. */
+ * bin of |sin| under a falling envelope has at least 2 / pi of the envelope
+ * half way, which the outer half of the farthest bin does not exceed. */
 static double least_mean(lbr_kernel *kernel, span certain, span possible) {
   double least, most, width = certain.to - certain.from;
   if (width < 1) return least_anywhere(kernel, possible);
   bool beyond = fabs(certain.to) > fabs(certain.from);
   double far = beyond ? certain.to : certain.from;
-  double near = beyond ? far - 1 : far + 1;
+  double near = beyond ? far - 0.5 : far + 0.5;
   lbr_kernel_range(kernel, fmin(far, near), fmax(far, near), &least, &most);
   return fmax(0.6 * floor(width) / (possible.to - possible.from) * most -
                   MARGIN, 0);

@@ -9,6 +9,7 @@
 #include "plan/descent.h"
 
 #define EDGE 1e-12 /* relative: durations closer than this are the same */
+#define PARTS 2    /* threads that search side by side */
 
 /* A share of the modes, searched by one thread. */
 typedef struct part {
@@ -36,9 +37,10 @@ static lbr_status search_part(void *context, size_t task, unsigned worker) {
   return LBR_OK;
 }
 
-/* Every n-th mode goes to one part. */
+/* Every n-th mode goes to one part; how many parts there are must not depend
+ * on the machine, as each has its share of the work that may be done. */
 static lbr_status open_parts(split *all, const lbr_problem *p) {
-  size_t n = lbr_cores();
+  size_t n = PARTS;
   if (n > p->n_modes) n = p->n_modes;
   all->parts = lbr_alloc(n, sizeof *all->parts);
   if (!all->parts) return LBR_NO_MEMORY;

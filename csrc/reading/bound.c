@@ -23,14 +23,12 @@ static double bin_hz(const lbr_case *c, size_t line) {
 
 void lbr_bound_search(const lbr_case *c, size_t line, double *low,
                       double *high) {
-  const lbr_source *s = own(c, line);
-  double half = lbr_half_width(c->scene, line), timebase = c->front->timebase;
   if (c->reading == LBR_READING_BIN) {
     *low = *high = bin_hz(c, line);
     return;
   }
-  *low = (s->hz - half) * (1 - timebase);
-  *high = (s->hz + half) * (1 + timebase);
+  *low = lbr_seen_low(c->scene, c->front, line);
+  *high = lbr_seen_high(c->scene, c->front, line);
 }
 
 /* Variances of one record's amplitude by cause, unit squared. */
@@ -55,16 +53,21 @@ static double sigma(const lbr_case *c, size_t line) {
   return sqrt(v.noise + v.quantisation + v.jitter);
 }
 
-/* The distance beyond which the kernel stays below `level`, bins. */
-static double last_above(lbr_kernel *kernel, double level) {
+/* The distance beyond which the kernel stays below `level` as far as
+ * `widest`, bins; INFINITY where that is further than any main lobe. */
+static double last_above(lbr_kernel *kernel, double level, double widest) {
   double low, high;
   int bin = LOBE_END;
+  if (widest > LOBE_END) {
+    lbr_kernel_range(kernel, LOBE_END, widest, &low, &high);
+    if (high >= level) return INFINITY;
+  }
   while (bin > 0) {
     lbr_kernel_range(kernel, bin - 1, bin, &low, &high);
     if (high >= level) break;
     bin--;
   }
-  if (bin == LOBE_END || bin == 0) return bin;
+  if (bin == 0) return bin;
   double from = bin - 1, to = bin; /* gain below level on [to, bin] */
   while (to - from > 1e-3) {
     double middle = (from + to) / 2;
@@ -77,26 +80,29 @@ static double last_above(lbr_kernel *kernel, double level) {
   return to;
 }
 
-/* Own wander: relative loss, excess, and what its sidebands may add in
- * quadrature or at the flanks. */
+/* Own wander, `reach` bins off the line at most: an odd sideband pair is in
+ * quadrature with the carrier at the line itself, an even one is not. */
 static lbr_smear smear_of(const lbr_case *c, size_t line, double reach) {
   size_t asked = 0;
+  double weight[LBR_SIDEBANDS] = {1}, low, absolute, even = 0;
   lbr_leak l = lbr_leak_of_case(c, line, 0, &asked);
-  double amplitude[LBR_SIDEBANDS], low, high, total = 0;
-  size_t count = lbr_leak_sidebands(&l, line, amplitude);
-  lbr_smear smear = {0, 0, 0};
-  if (count == 1) return smear;
-  for (size_t k = 1; k < count; k++) {
-    double order = (double)k;
-    lbr_kernel_range(c->kernel, order - reach, order + reach, &low, &high);
-    total += 2 * amplitude[k] * high;
-    if (k % 2 == 0) smear.loss += 2 * amplitude[k] * high;
+  lbr_wander w;
+  lbr_leak_wander(&l, line, &w);
+  if (w.count == 1) return (lbr_smear){0, 0, 0, 0};
+  absolute = lbr_kernel_absolute(c->kernel);
+  if (!w.whole) return (lbr_smear){1, 1, absolute - 1, absolute};
+  lbr_smear smear = {.carrier = 1 - w.carrier};
+  for (size_t k = 1; k < w.count; k++) {
+    double order = (double)k, shown;
+    lbr_kernel_range(c->kernel, order - reach, order + reach, &low,
+                     &weight[k]);
+    weight[k] *= 2;
+    shown = lbr_wander_order(&w, k) * weight[k];
+    smear.flanks += shown;
+    if (k % 2 == 0) even += shown;
   }
-  smear.loss += 1 - amplitude[0];
-  smear.flanks = total;
-  smear.excess = fmin(lbr_kernel_absolute(c->kernel) - 1,
-                      amplitude[0] + total - 1);
-  smear.excess = fmax(smear.excess, 0);
+  smear.loss = smear.carrier + even;
+  smear.excess = fmax(fmin(absolute, lbr_wander_sum(&w, weight)) - 1, 0);
   return smear;
 }
 
@@ -112,48 +118,69 @@ static double image_gain(const lbr_case *c, size_t line) {
   size_t asked = 0;
   double t = lbr_duration(c), read = bin_hz(c, line);
   lbr_leak l = lbr_leak_of_case(c, line, 0, &asked);
-  const lbr_source *s = own(c, line);
-  double half = lbr_half_width(c->scene, line), timebase = c->front->timebase;
-  double from = (s->hz - half) * (1 - timebase);
-  double to = (s->hz + half) * (1 + timebase);
+  double from = lbr_seen_low(c->scene, c->front, line);
+  double to = lbr_seen_high(c->scene, c->front, line);
   bool bin = c->reading == LBR_READING_BIN;
   from += bin ? read : from;
   to += bin ? read : to;
   return lbr_leak_spread(&l, line, from * t, to * t);
 }
 
+/* How far a line may be off its bin, bins. */
+static void bin_offsets(const lbr_case *c, size_t line, double *from,
+                        double *to) {
+  double t = lbr_duration(c), read = bin_hz(c, line);
+  *from = (lbr_seen_low(c->scene, c->front, line) - read) * t;
+  *to = (lbr_seen_high(c->scene, c->front, line) - read) * t;
+}
+
 /* Own lobe: how far |H| leaves 1 where the line may stand. */
 static double lobe_gain(const lbr_case *c, size_t line, double steer) {
-  double low, high, from, to, t = lbr_duration(c);
+  double low, high, from, to;
   if (c->reading == LBR_READING_TRACKED) {
     lbr_kernel_range(c->kernel, -steer, steer, &low, &high);
     return fmax(high - 1, 0);
   }
-  const lbr_source *s = own(c, line);
-  double half = lbr_half_width(c->scene, line), timebase = c->front->timebase;
-  from = (s->hz - half) * (1 - timebase) - bin_hz(c, line);
-  to = (s->hz + half) * (1 + timebase) - bin_hz(c, line);
-  lbr_kernel_range(c->kernel, from * t, to * t, &low, &high);
+  bin_offsets(c, line, &from, &to);
+  lbr_kernel_range(c->kernel, from, to, &low, &high);
   return fmax(high - 1, 1 - low);
+}
+
+static double off_line(const lbr_case *c, size_t line, double steer) {
+  double from, to;
+  if (c->reading == LBR_READING_TRACKED) return steer;
+  bin_offsets(c, line, &from, &to);
+  return fmax(fabs(from), fabs(to));
+}
+
+/* The highest frequency a line may truly have, Hz. */
+static double top_hz(const lbr_case *c, size_t line) {
+  return own(c, line)->hz + lbr_half_width(c->scene, line);
+}
+
+/* What the record shows of an offset: some filters lift 0 Hz. */
+static double offset_shown(const lbr_case *c) {
+  double gain = lbr_filter_gain(&c->front->filter, 0, c->path->rate);
+  return c->scene->offset * fmax(gain, 1) * lbr_parts_scale(c);
 }
 
 /* The terms of one line for a given steering radius, joint sum apart. */
 lbr_parts lbr_bound_parts(const lbr_case *c, size_t line, double steer) {
   double low, high;
-  double jitter = 2 * PI * own(c, line)->hz * c->front->jitter_s;
-  double far = c->reading == LBR_READING_BIN ? 0.5 : steer;
-  lbr_smear smear = smear_of(c, line, far);
+  double jitter = 2 * PI * top_hz(c, line) * c->front->jitter_s;
+  lbr_smear smear = smear_of(c, line, off_line(c, line, steer));
   lbr_bound_search(c, line, &low, &high);
   lbr_parts p = {.steer = steer};
   p.lobe = lobe_gain(c, line, steer);
   p.image = image_gain(c, line);
-  p.smear = c->reading == LBR_READING_BIN ? smear.loss + smear.flanks
+  p.smear = c->reading == LBR_READING_BIN ? smear.carrier + smear.flanks
                                           : fmax(smear.loss, smear.excess);
   p.flanks = smear.flanks;
+  p.carrier = smear.carrier;
   p.droop = c->path->droop[line];
   p.accuracy = c->front->accuracy;
   p.jitter_loss = -expm1(-jitter * jitter / 2);
-  p.offset = 2 * c->scene->offset / c->path->nominal[line] *
+  p.offset = 2 * offset_shown(c) / c->path->nominal[line] *
              offset_gain(c, low, high);
   return p;
 }
@@ -181,6 +208,7 @@ static void judge(const lbr_case *c, size_t line, lbr_bound *b) {
     double error = b->own * ends[k] + b->others + random * b->sigma;
     double tolerance = tolerance_at(&c->scene->lines[line], ends[k]);
     double ratio = isinf(tolerance) ? 0 : error / tolerance;
+    if (isnan(ratio)) ratio = INFINITY; /* nothing comes through the filter */
     if (ratio <= b->ratio) continue;
     b->ratio = ratio;
     b->amplitude = ends[k];
@@ -190,34 +218,64 @@ static void judge(const lbr_case *c, size_t line, lbr_bound *b) {
   double hz = b->hz + random * b->sigma_hz;
   double allowed = c->scene->lines[line].tolerance_hz;
   b->ratio_hz = isinf(allowed) ? 0 : hz / allowed;
+  if (isnan(b->ratio_hz)) b->ratio_hz = INFINITY;
   b->ratio = fmax(b->ratio, b->ratio_hz);
 }
 
-/* Frequency of a tracked line, from the stationarity of |X|^2:
- * |R'| <= |L'| / A (A R + |L|) / (A R - |L|). */
+/* What leaks (unit) and an offset (unit, its gains in) are beside the line
+ * where it comes out weakest and they strongest; accuracy is common to all. */
+static double beside(const lbr_case *c, size_t line, const lbr_parts *p,
+                     double leak, double offset) {
+  double left = fmax(1 - p->droop, 0) * (1 - p->jitter_loss);
+  double weakest = own(c, line)->least * left;
+  double others = leak * (1 + c->front->flatness) +
+                  offset / (1 + c->front->accuracy);
+  return others > 0 ? others / weakest : 0;
+}
+
+/* Upper bound of the slope of everything but the line's own carrier, per bin,
+ * relative to the line. */
+static double disturbing_slope(const lbr_case *c, const lbr_leak *l,
+                               const lbr_parts *p) {
+  double t = l->duration, far = p->steer, low, high, offset, slope;
+  lbr_wander w;
+  lbr_leak_wander(l, l->line, &w);
+  if (!w.whole) return INFINITY;
+  lbr_bound_search(c, l->line, &low, &high);
+  offset = 2 * offset_shown(c) / c->path->nominal[l->line] *
+           lbr_kernel_slope(c->kernel, low * t - far, high * t + far);
+  slope = beside(c, l->line, p, lbr_leak_slope(l), offset);
+  for (size_t k = 1; k < w.count; k++)
+    slope += 2 * lbr_wander_order(&w, k) *
+             lbr_kernel_slope(c->kernel, (double)k - far, (double)k + far);
+  return slope + lbr_leak_spread_slope(l, l->line, 2 * low * t - far,
+                                       2 * high * t + far);
+}
+
+/* How far the highest point is from the line, bins: by the stationarity of
+ * |X|^2,  |R'| <= |L'| (R + |L|) / (R - |L|),  all relative to the line. */
+static double track_bins(const lbr_case *c, const lbr_leak *l,
+                         const lbr_parts *p, double leak) {
+  double carrier = 1 - p->carrier, least, high;
+  double curvature = carrier * lbr_kernel_curvature(c->kernel, p->steer);
+  double others = beside(c, l->line, p, leak, p->offset) + p->flanks +
+                  p->image;
+  lbr_kernel_range(c->kernel, -p->steer, p->steer, &least, &high);
+  double kept = carrier * least;
+  if (!(curvature > 0 && others < kept)) return p->steer;
+  double bins = disturbing_slope(c, l, p) / curvature * (kept + others) /
+                (kept - others);
+  return fmin(bins, p->steer);
+}
+
 static void track_frequency(const lbr_case *c, const lbr_leak *l,
                             const lbr_parts *p, double leak, lbr_bound *b) {
-  const lbr_source *s = own(c, l->line);
-  double t = l->duration, x[LBR_SIDEBANDS];
-  double e = leak + p->offset + (p->flanks + p->image) * s->least;
-  double curvature = lbr_kernel_curvature(c->kernel, p->steer);
-  double slope = lbr_leak_slope(l), far = p->steer, low, high;
-  size_t count = lbr_leak_sidebands(l, l->line, x);
-  for (size_t k = 1; k < count; k++)
-    slope += 2 * s->least * x[k] *
-             lbr_kernel_slope(c->kernel, (double)k - far, (double)k + far);
-  lbr_bound_search(c, l->line, &low, &high);
-  slope += s->least * lbr_leak_spread_slope(l, l->line, 2 * low * t - far,
-                                            2 * high * t + far);
-  slope += 2 * c->scene->offset / c->path->nominal[l->line] *
-           lbr_kernel_slope(c->kernel, low * t - far, high * t + far);
-  double kept = s->least * x[0];
-  double grow = e < kept ? (kept + e) / (kept - e) : INFINITY;
-  double bins = curvature > 0 ? slope / (kept * curvature) * grow : INFINITY;
+  double t = l->duration, low, high;
   double peak = lbr_kernel_curvature(c->kernel, 0);
-  b->hz = fmin(bins, p->steer) / t + high * c->front->timebase;
+  lbr_bound_search(c, l->line, &low, &high);
+  b->hz = track_bins(c, l, p, leak) / t + high * c->front->timebase;
   b->sigma_hz = peak > 0 ? b->sigma * 2 * PI * sqrt(c->second_moment) /
-                               (s->least * peak * t)
+                               (own(c, l->line)->least * peak * t)
                          : (high - low);
 }
 
@@ -245,11 +303,11 @@ static void settle(const lbr_case *c, const lbr_leak *l, const lbr_parts *p,
  * contributions stay below `leak` (unit) wherever the search may look. */
 static double steer_radius(const lbr_case *c, size_t line, double leak_anywhere,
                            double leak_here, const lbr_parts *p) {
-  double a = own(c, line)->least;
-  double level = 1 - p->smear - p->flanks - 2 * p->image -
-                 (leak_anywhere + leak_here + 2 * p->offset) / a;
-  if (level <= 0) return INFINITY;
-  return last_above(c->kernel, level);
+  double others =
+      beside(c, line, p, leak_anywhere + leak_here, 2 * p->offset);
+  double level = 1 - p->smear - p->flanks - 2 * p->image - others;
+  if (!(level > 0)) return INFINITY;
+  return last_above(c->kernel, level, p->steer);
 }
 
 /* The sum of leaks that the amplitude bound could at most afford. */

@@ -1,4 +1,3 @@
-#define _XOPEN_SOURCE 700 /* jn */
 #include "reading/leak.h"
 
 #include <math.h>
@@ -8,7 +7,6 @@
 #define PROBES 7           /* deviations tried for a sum that is reached */
 #define WIDE 64.0          /* enclosures wider than this cost no more, bins */
 #define PER_ASKED 4.0      /* bins that cost as much as a narrow enclosure */
-#define SIDEBAND_END 1e-12 /* sidebands below this are left to the sum */
 
 typedef struct span {
   double low, high;
@@ -25,7 +23,10 @@ static span place(const lbr_leak *l, size_t j, double d1, double d2) {
                 s->hz + s->lock_hz * d2 + s->free_hz};
 }
 
-static span widen(span s, double relative) {
+/* As a record sees it whose time base is off by up to `timebase`: frequencies
+ * over 1 + t, |t| <= timebase, of which 1 / (1 - timebase) is the farthest. */
+static span widen(span s, double timebase) {
+  double relative = timebase / (1 - timebase);
   return (span){s.low - fabs(s.low) * relative,
                 s.high + fabs(s.high) * relative};
 }
@@ -75,18 +76,9 @@ static span distance(const lbr_leak *l, size_t j, double e1, double e2,
   return steered(l, widen(to, timebase), other, sign);
 }
 
-size_t lbr_leak_sidebands(const lbr_leak *l, size_t j,
-                          double amplitude[LBR_SIDEBANDS]) {
-  double beta = source(l, j)->wander * source(l, j)->hz * l->duration / 2;
-  amplitude[0] = 1;
-  if (beta <= 0) return 1;
-  size_t count = 0;
-  while (count < LBR_SIDEBANDS) {
-    amplitude[count] = fabs(jn((int)count, beta));
-    if (count > beta && amplitude[count] < SIDEBAND_END) break;
-    count++;
-  }
-  return count;
+void lbr_leak_wander(const lbr_leak *l, size_t j, lbr_wander *out) {
+  double top = lbr_seen_high(l->c->scene, l->c->front, j);
+  lbr_wander_of_index(source(l, j)->wander * top * l->duration / 2, out);
 }
 
 static double most(const lbr_leak *l, span x) {
@@ -99,17 +91,17 @@ static double most(const lbr_leak *l, span x) {
 /* Sum over the sidebands; a wander too wide for the list counts whole. */
 static double spread_most(const lbr_leak *l, size_t j, span x) {
   if (source(l, j)->wander <= 0) return most(l, x);
-  double amplitude[LBR_SIDEBANDS], sum, power;
-  size_t count = lbr_leak_sidebands(l, j, amplitude);
-  sum = amplitude[0] * most(l, x);
-  power = amplitude[0] * amplitude[0];
-  for (size_t k = 1; k < count; k++) {
+  lbr_wander wander;
+  double weight[LBR_SIDEBANDS];
+  lbr_leak_wander(l, j, &wander);
+  if (!wander.whole) return lbr_kernel_absolute(l->c->kernel);
+  weight[0] = most(l, x);
+  for (size_t k = 1; k < wander.count; k++) {
     double shift = (double)k;
-    sum += amplitude[k] * (most(l, (span){x.low - shift, x.high - shift}) +
-                           most(l, (span){x.low + shift, x.high + shift}));
-    power += 2 * amplitude[k] * amplitude[k];
+    weight[k] = most(l, (span){x.low - shift, x.high - shift}) +
+                most(l, (span){x.low + shift, x.high + shift});
   }
-  return power > 1 - 1e-9 ? sum : lbr_kernel_absolute(l->c->kernel);
+  return lbr_wander_sum(&wander, weight);
 }
 
 double lbr_leak_spread(const lbr_leak *l, size_t j, double from, double to) {
@@ -297,17 +289,18 @@ double lbr_leak_reached(const lbr_leak *l, double high) {
 }
 
 static double slope_most(const lbr_leak *l, size_t j, span x) {
-  double amplitude[LBR_SIDEBANDS], sum = 0;
-  size_t count = lbr_leak_sidebands(l, j, amplitude);
-  for (size_t k = 0; k < count; k++) {
+  lbr_wander wander;
+  double weight[LBR_SIDEBANDS];
+  lbr_leak_wander(l, j, &wander);
+  if (!wander.whole) return INFINITY;
+  weight[0] = lbr_kernel_slope(l->c->kernel, x.low, x.high);
+  for (size_t k = 1; k < wander.count; k++) {
     double shift = (double)k;
-    sum += amplitude[k] *
-           lbr_kernel_slope(l->c->kernel, x.low - shift, x.high - shift);
-    if (k > 0)
-      sum += amplitude[k] *
-             lbr_kernel_slope(l->c->kernel, x.low + shift, x.high + shift);
+    weight[k] =
+        lbr_kernel_slope(l->c->kernel, x.low - shift, x.high - shift) +
+        lbr_kernel_slope(l->c->kernel, x.low + shift, x.high + shift);
   }
-  return sum;
+  return lbr_wander_sum(&wander, weight);
 }
 
 double lbr_leak_spread_slope(const lbr_leak *l, size_t j, double from,

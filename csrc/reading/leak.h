@@ -8,8 +8,7 @@
 #include <stdbool.h>
 
 #include "reading/bound.h"
-
-#define LBR_SIDEBANDS 24 /* most sideband pairs a wandering source spreads to */
+#include "reading/wander.h"
 
 typedef struct lbr_leak {
   const lbr_case *c;
@@ -27,10 +26,8 @@ typedef struct lbr_leak {
 lbr_leak lbr_leak_of_case(const lbr_case *c, size_t line, double steer,
                           size_t *asked);
 
-/* Sideband amplitudes |J_k(beta)|, k = 0 .. count - 1, of a source that
- * wanders; count is 1 for a steady one. */
-size_t lbr_leak_sidebands(const lbr_leak *leak, size_t source,
-                          double amplitude[LBR_SIDEBANDS]);
+/* The wander of a source at the highest frequency the record may see it. */
+void lbr_leak_wander(const lbr_leak *leak, size_t source, lbr_wander *out);
 
 /* Upper bounds of the kernel and of its slope (per bin) over distances
  * [from, to], bins, with the source's wander spread over its sidebands. */

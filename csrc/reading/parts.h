@@ -8,15 +8,17 @@
 
 /* What a line's own wander does, relative to its amplitude. */
 typedef struct lbr_smear {
-  double loss;   /* most the highest point can lose */
-  double excess; /* most it can gain */
-  double flanks; /* sum of the sidebands as they show at the line */
+  double carrier; /* most the carrier loses */
+  double loss;    /* most the highest point can lose */
+  double excess;  /* most it can gain */
+  double flanks;  /* sum of the sidebands as they show at the line */
 } lbr_smear;
 
 /* Systematic terms; relative to the amplitude unless said. */
 typedef struct lbr_parts {
   double steer;       /* the steering radius they hold for, bins */
   double lobe, image, smear, flanks, droop, accuracy, jitter_loss;
+  double carrier;     /* most that own wander takes from the carrier */
   double offset;      /* unit */
 } lbr_parts;
 

@@ -47,9 +47,8 @@ void lbr_path_fill(lbr_path *path, const lbr_scene *scene,
   path->droop = path->nominal + scene->n_lines;
   path->density = path->droop + scene->n_lines;
   for (size_t j = 0; j < scene->n_sources; j++) {
-    double half = lbr_half_width(scene, j), low, high;
-    double from = (scene->sources[j].hz - half) * (1 - front->timebase);
-    double to = (scene->sources[j].hz + half) * (1 + front->timebase);
+    double from = lbr_seen_low(scene, front, j), low, high;
+    double to = lbr_seen_high(scene, front, j);
     lbr_filter_range(&front->filter, fmax(from, 0), to, rate, &low, &high);
     path->high[j] = high;
     if (j < scene->n_lines) fill_line(path, scene, front, j, low, high);

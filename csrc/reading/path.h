@@ -19,6 +19,20 @@ static inline double lbr_half_width(const lbr_scene *s, size_t source) {
   return p->lock_hz * s->spread[p->driver] + p->free_hz;
 }
 
+/* Lowest and highest frequency at which a record may show a source, Hz: the
+ * sample rate is off by up to `timebase`, so that f shows at f / (1 + t). */
+static inline double lbr_seen_low(const lbr_scene *s, const lbr_front_end *f,
+                                  size_t source) {
+  double low = s->sources[source].hz - lbr_half_width(s, source);
+  return low / (low < 0 ? 1 - f->timebase : 1 + f->timebase);
+}
+
+static inline double lbr_seen_high(const lbr_scene *s, const lbr_front_end *f,
+                                   size_t source) {
+  double high = s->sources[source].hz + lbr_half_width(s, source);
+  return high / (1 - f->timebase);
+}
+
 /* How many doubles lbr_path_fill stores. */
 size_t lbr_path_doubles(const lbr_scene *scene);
 

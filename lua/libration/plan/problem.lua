@@ -74,7 +74,7 @@ local function top_hz(demand, timebase)
   local top = 0
   for _, line in ipairs(demand.lines) do
     local half = line.lock_hz * demand.drivers[line.driver].spread + line.free_hz
-    top = math.max(top, (line.hz:number() + half) * (1 + timebase))
+    top = math.max(top, (line.hz:number() + half) / (1 - timebase))
   end
   return top
 end
