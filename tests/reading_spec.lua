@@ -138,7 +138,8 @@ describe("a bound", function()
     end)
   end)
 
-  -- Each change makes the world worse; no bound may fall.
+  -- Each change makes the world worse; no bound may fall, but for the 2e-3 of the
+  -- tolerance to which joint suprema are made tight.
   local worse = {
     ["the drift of a driver"] = function(t, x) t.spread[1] = t.spread[1] * x end,
     ["the drift of an interferer"] = function(t, x) t.spread[2] = t.spread[2] * x end,
@@ -163,7 +164,7 @@ describe("a bound", function()
       for _, times in ipairs { 0.3, 1, 1.7, 6 } do
         local after = judged(scene(function(t) change(t, times) end))
         each(before, after, function(a, b)
-          assert.is_true(b.ratio >= a.ratio * (1 - 1e-9), ("%.12g after %.12g"):format(b.ratio,
+          assert.is_true(b.ratio >= a.ratio - 2e-3, ("%.12g after %.12g"):format(b.ratio,
             a.ratio))
           grew = grew or b.ratio > a.ratio * (1 + 1e-9)
         end)
