@@ -182,6 +182,21 @@ static int fast_length(lua_State *L) {
   return 1;
 }
 
+/*** Tries out plans for transforms of a length and keeps the fastest.
+ * For long jobs: 0.3 s for 8192 points, 1 s for 65536, minutes beyond 2^22;
+ * averages gain 10 to 20 %.  Holds until forget; results may change in their
+ * last bits.
+ * @param points integer: length after zero padding, 1 to 2^27
+ * @usage
+ * core.spectrum.tune(64)
+ */
+static int tune(lua_State *L) {
+  size_t points = lbr_check_count(L, 1, 1, LBR_TRANSFORM_MOST);
+  lbr_status status = lbr_transform_tune(points);
+  if (status != LBR_OK) return lbr_raise(L, status, "tuning");
+  return 0;
+}
+
 /*** Forgets all transform plans that are kept for reuse.
  * For leak checks; the next transform of each length plans again.
  * @usage
@@ -195,7 +210,8 @@ static int forget(lua_State *L) {
 
 static const luaL_Reg functions[] = {
     {"back", back},         {"fast_length", fast_length}, {"forget", forget},
-    {"forward", forward},   {"windowed", windowed},       {NULL, NULL}};
+    {"forward", forward},   {"tune", tune},
+    {"windowed", windowed}, {NULL, NULL}};
 
 int lbr_open_spectrum(lua_State *L) {
   luaL_newlib(L, functions);

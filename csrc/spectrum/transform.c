@@ -157,13 +157,58 @@ void lbr_transform_put(lbr_transform *t) {
   pthread_mutex_unlock(&lock);
 }
 
+/* Takes the plans of n points from the cache; the lock is held. */
+static void drop_plans(size_t n) {
+  for (lbr_transform **at = &cache; *at;) {
+    lbr_transform *t = *at;
+    if (t->points != n || t->is_complex) {
+      at = &t->next;
+      continue;
+    }
+    *at = t->next;
+    if (t->users == 0) {
+      free_plan(t);
+    } else {
+      t->forgotten = true;
+      forgotten++;
+    }
+  }
+}
+
+lbr_status lbr_transform_tune(size_t n) {
+  if (n < 1 || n > LBR_TRANSFORM_MOST) return LBR_DOMAIN;
+  double *x = lbr_transform_buffer(n);
+  double *bins = lbr_transform_buffer(2 * (n / 2 + 1));
+  void *headroom = malloc(HEADROOM);
+  free(headroom);
+  lbr_status status = LBR_NO_MEMORY;
+  if (x && bins && headroom) {
+    pthread_mutex_lock(&lock);
+    /* What is learnt here is used by plans that are only estimated, too. */
+    fftw_plan plan = fftw_plan_dft_r2c_1d((int)n, x, (fftw_complex *)bins,
+                                          FFTW_MEASURE | FFTW_PRESERVE_INPUT);
+    if (plan) {
+      fftw_destroy_plan(plan);
+      drop_plans(n);
+      status = LBR_OK;
+    }
+    pthread_mutex_unlock(&lock);
+  }
+  lbr_transform_drop(x);
+  lbr_transform_drop(bins);
+  return status;
+}
+
 void lbr_transform_forget(void) {
   pthread_mutex_lock(&lock);
   trim(0);
   for (lbr_transform *t = cache; t; t = t->next, forgotten++)
     t->forgotten = true;
   cache = NULL;
-  if (forgotten == 0) fftw_cleanup();
+  if (forgotten == 0)
+    fftw_cleanup();
+  else
+    fftw_forget_wisdom(); /* what was tuned; plans in use live on */
   pthread_mutex_unlock(&lock);
 }
 

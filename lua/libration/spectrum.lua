@@ -128,6 +128,17 @@ function M.plan(points, workers)
   return core.single(points, workers)
 end
 
+--- Tries out plans for transforms of a length and keeps the fastest, for long jobs.
+-- Takes 0.3 s for 8192 points, 1 s for 65536, minutes beyond 2^22, and makes averages of such
+-- segments 10 to 20 % faster for as long as the process lives. Results may change in their last
+-- bits.
+-- @param points integer: length after zero padding, 1 to 2^27
+-- @usage
+-- lb.spectrum.tune(64)
+function M.tune(points)
+  core.tune(points)
+end
+
 --- The smallest length that transforms fast: no prime factors but 2, 3 and 5.
 -- @param n integer: the least length, 1 to 2^27
 -- @return integer: the smallest fast length that is not less
