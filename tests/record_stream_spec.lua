@@ -113,3 +113,55 @@ describe("a file larger than its share of memory", function()
     assert.is_truthy(message:find(path, 1, true))
   end)
 end)
+
+describe("FLAC", function()
+  local function noise(n, bits)
+    local state, list = 77, {}
+    for i = 1, n do
+      state = state * 6364136223846793005 + 1442695040888963407
+      list[i] = (state >> (64 - bits)) - (1 << (bits - 1))
+    end
+    return list
+  end
+
+  it("holds the codes without loss, read in any blocks, in any order", function()
+    for _, bits in ipairs { 16, 24 } do
+      local a, b = noise(20011, bits), noise(20011, bits - 3)
+      local r = lb.record.new { rate = 51200, channels = {
+        { codes = a, bits = bits, full_scale = 1 }, { codes = b, bits = bits, full_scale = 1 } } }
+      local path = sounds.temporary ".flac"
+      assert(r:write(path))
+      local back = assert(lb.record.open(path))
+      assert.equal("flac", back.container)
+      for _, first in ipairs { 1, 15000, 7, 20011 } do
+        local n = math.min(5000, 20011 - first + 1)
+        local got = back:feed():codes(first, n)
+        assert.equal(r.channels[1].data:slice(first, first + n - 1), got[1])
+        assert.equal(r.channels[2].data:slice(first, first + n - 1), got[2])
+      end
+    end
+  end)
+
+  -- sox is the independent reader
+  it("is read by others", function()
+    local r = lb.record.new { rate = 51200, codes = noise(9001, 16), bits = 16, full_scale = 1 }
+    local path, wave = sounds.temporary ".flac", sounds.temporary ".wav"
+    assert(r:write(path))
+    assert(os.execute(("env -u LD_PRELOAD sox -D -t flac %s -t wav %s"):format(path, wave)))
+    assert.equal(r.channels[1].data, assert(lb.record.read(wave)).channels[1].data)
+  end)
+
+  it("refuses what it cannot hold", function()
+    local path = sounds.temporary ".flac"
+    local list = {}
+    for k = 1, 9 do list[k] = { codes = { 1 }, bits = 16, full_scale = 1 } end
+    for _, r in ipairs { lb.record.new { rate = 8000, samples = { 0.5 } },
+      lb.record.new { rate = 8000, channels = list },
+      lb.record.new { rate = 1000000, codes = { 1 }, bits = 16, full_scale = 1 },
+      lb.record.new { rate = 8000, codes = { 1 }, bits = 32, full_scale = 1 } } do
+      local done, message, code = r:write(path, { format = "flac" })
+      assert.is_nil(done)
+      assert.equal("domain", code, message)
+    end
+  end)
+end)

@@ -37,7 +37,9 @@ static void check_spec(lua_State *L, int arg, lbr_write_spec *spec) {
   spec->scale = number_field(L, arg, "scale", -HUGE_VAL, HUGE_VAL);
   lua_getfield(L, arg, "integer");
   spec->is_integer = lua_toboolean(L, -1);
-  lua_pop(L, 1);
+  lua_getfield(L, arg, "flac");
+  spec->is_flac = lua_toboolean(L, -1);
+  lua_pop(L, 2);
 }
 
 /* The list of blocks at `arg`; they stay reachable through it. */
@@ -60,13 +62,14 @@ static size_t check_blocks(lua_State *L, int arg, const double **channel,
 }
 
 /***
- * Writes a WAV file (RF64 beyond 4 GiB), whole or not at all.
+ * Writes a WAV file (RF64 beyond 4 GiB) or FLAC, whole or not at all.
  * The file appears under its name only when it is complete and on the disk.
  * Nothing is clipped: a sample beyond full scale is a refusal.
  * @param path string: the file; an existing file is replaced
  * @param spec table: rate (whole samples per second), bits (8, 16, 24, 32;
  *   floats 32, 64), integer (true: integer codes), scale (what is stored is
- *   sample * scale, integers rounded to the nearest)
+ *   sample * scale, integers rounded to the nearest), flac (true: FLAC,
+ *   integers of 8, 16, 24 bits)
  * @param channels table: one block of samples per channel, of equal length
  * @return boolean: true; or nil, message, code ("io", "domain")
  * @usage

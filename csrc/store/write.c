@@ -20,11 +20,12 @@ typedef struct draft {
 } draft;
 
 static int coding(const lbr_write_spec *spec) {
+  if (spec->is_flac && (!spec->is_integer || spec->bits == 32)) return 0;
   if (!spec->is_integer)
     return spec->bits == 32 ? SF_FORMAT_FLOAT
                             : spec->bits == 64 ? SF_FORMAT_DOUBLE : 0;
   switch (spec->bits) {
-    case 8: return SF_FORMAT_PCM_U8;
+    case 8: return spec->is_flac ? SF_FORMAT_PCM_S8 : SF_FORMAT_PCM_U8;
     case 16: return SF_FORMAT_PCM_16;
     case 24: return SF_FORMAT_PCM_24;
     case 32: return SF_FORMAT_PCM_32;
@@ -38,6 +39,9 @@ static lbr_status check_spec(const lbr_write_spec *spec, lbr_why *why) {
                        spec->is_integer ? "integers" : "floats", spec->bits);
   if (spec->rate < 1)
     return lbr_because(why, LBR_DOMAIN, "cannot have a rate of %d", spec->rate);
+  if (spec->is_flac && (spec->channels > 8 || spec->rate > 655350))
+    return lbr_because(why, LBR_DOMAIN, "is FLAC, which holds 8 channels of "
+                       "655350 S/s, not %zu of %d", spec->channels, spec->rate);
   if (spec->channels < 1 || spec->channels > LBR_SOUND_MOST_CHANNELS)
     return lbr_because(why, LBR_DOMAIN, "cannot have %zu channels",
                        spec->channels);
@@ -76,7 +80,8 @@ static lbr_status open_sound(draft *d, const lbr_write_spec *spec,
   double bytes = (double)frames * (double)spec->channels * spec->bits / 8.0;
   SF_INFO info = {.samplerate = spec->rate, .channels = (int)spec->channels};
   int plain = spec->is_integer ? SF_FORMAT_WAV : SF_FORMAT_WAVEX;
-  info.format = (bytes > WAV_BYTES ? SF_FORMAT_RF64 : plain) | coding(spec);
+  int container = bytes > WAV_BYTES ? SF_FORMAT_RF64 : plain;
+  info.format = (spec->is_flac ? SF_FORMAT_FLAC : container) | coding(spec);
   d->block = lbr_alloc(BLOCK_SAMPLES, sizeof(double));
   if (!d->block) return lbr_because(why, LBR_NO_MEMORY, "does not fit memory");
   d->file = sf_open_fd(lbr_draft_fd(d->draft), SFM_WRITE, &info, SF_FALSE);

@@ -1,5 +1,5 @@
-/* Writing a WAV file whole or not at all: a temporary file beside it, filled,
- * flushed to the disk, and renamed over the name.
+/* Writing a WAV or FLAC file whole or not at all: a temporary file beside it,
+ * filled, flushed to the disk, and renamed over the name.
  */
 #ifndef LBR_STORE_WRITE_H
 #define LBR_STORE_WRITE_H
@@ -16,6 +16,8 @@ typedef struct lbr_write_spec {
   int bits;        /* integers: 8, 16, 24, 32; floats: 32, 64 */
   bool is_integer; /* store integer codes */
   double scale;    /* code (or float) stored = sample * scale, rounded */
+  bool is_flac;    /* FLAC: integers of 8, 16, 24 bits, at most 8 channels and
+                      655350 samples per second (RFC 9639) */
 } lbr_write_spec;
 
 /* Writes `frames` samples of each channel.  LBR_DOMAIN, and no file, when a

@@ -286,8 +286,8 @@ end
 -- @param path string: the file; an existing one is replaced
 -- @param options table: format (a name; nil: by the ending of the path, else WAV), and for WAV bits
 --   (8, 16, 24, 32; floats 32, 64) and float (true: floats), default: what the record holds, else
---   64-bit floats; for CSV separator; for universal files binary (default true; as text, numbers
---   are rounded to 13 digits)
+--   64-bit floats; for FLAC bits (8, 16, 24); for CSV separator; for universal files binary
+--   (default true; as text, numbers are rounded to 13 digits)
 -- @return boolean: true; or nil, message, code ("domain": a sample beyond full scale, or a rate
 --   that the format cannot hold; "io")
 -- @usage

@@ -12,7 +12,8 @@
 local store = require("libration.core").store
 
 local M = {
-  require "libration.record.sound",
+  require("libration.record.sound"),
+  require("libration.record.sound").flac,
   require "libration.record.sigmf",
   require "libration.record.raw",
   require "libration.record.universal",

@@ -60,10 +60,10 @@ local function spec_of(record, options)
   return { rate = record.rate.numerator, bits = bits, integer = not float, scale = 1 }
 end
 
-function M.write(record, path, options)
+local function write(record, path, options, flac)
   local spec, misuse = spec_of(record, options)
   if not spec then
-    error(misuse, 3)
+    error(misuse, 4)
   elseif record.rate.denominator ~= 1 then
     return nil, ("%s: the rate, %s S/s, is not whole, and WAV holds no other"):format(path,
       fraction.text(record.rate)), "domain"
@@ -75,11 +75,29 @@ function M.write(record, path, options)
   for k, channel in ipairs(record.channels) do
     local factor, problem = stored_factor(channel, spec, path)
     if not factor then
-      error("record: " .. problem, 3)
+      error("record: " .. problem, 4)
     end
     blocks[k] = factor == 1 and channel.data or channel.data * factor
   end
+  spec.flac = flac
   return store.write(path, spec, blocks)
+end
+
+function M.write(record, path, options)
+  return write(record, path, options, false)
+end
+
+--- The same as FLAC, which holds integers of 8, 16 and 24 bits without loss.
+M.flac = {
+  name = "flac", title = "FLAC", suffixes = { ".flac" }, fields = { bits = true },
+  matches = function(head) return head:sub(1, 4) == "fLaC" end, open = M.open,
+}
+
+function M.flac.write(record, path, options)
+  if not record.channels[1].integer and options.bits == nil then
+    return nil, path .. ": FLAC holds integers; give bits, 16 or 24", "domain"
+  end
+  return write(record, path, { bits = options.bits, float = false }, true)
 end
 
 return M
