@@ -73,8 +73,9 @@ describe("writing", function()
       assert.is_truthy(text:find("^nil io "), text)
       assert.is_truthy(text:find(folder, 1, true), text)
       assert.same(before, contents())
-      assert.equal(small():identity(), assert(lb.record.read(path, (format == "wav" or format == "flac")
-        and { full_scale = 1, unit = "1" } or nil)):identity())
+      local sound = format == "wav" or format == "flac"
+      local back = assert(lb.record.read(path, sound and { full_scale = 1, unit = "1" } or nil))
+      assert.equal(small():identity(), back:identity())
     end)
 
     it("is whole or not there: " .. format, function()
