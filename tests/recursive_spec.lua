@@ -126,6 +126,18 @@ describe("recursive filters", function()
     end
   end)
 
+  it("write where they are told, in place, too", function()
+    local x, f = noise(500), lb.filter.digital(any_filter())
+    local y, room, stream = f:run(x), lb.samples.new(500), f:stream()
+    assert(f:run(x, nil, room) == y and room == y)
+    local copy, part = x:copy(), lb.samples.new(250)
+    assert(f:run(copy, "rest", copy) == y and copy == y)
+    assert(stream:run(x:slice(1, 250), part) == y:slice(1, 250))
+    assert(stream:run(x:slice(251), part) == y:slice(251) and part == y:slice(251))
+    assert(not pcall(f.run, f, x, "rest", part))
+    assert(not pcall(f.run, f, x:slice(1, 499), "rest", x:slice(2, 500)))
+  end)
+
   it("are linear, and start settled where that is asked for", function()
     local x, y = noise(300), noise(300)
     local f = lb.filter.digital { shape = "elliptic", order = 5, edge = 100, rate = 1000,

@@ -111,11 +111,26 @@ static const digital *check_digital(lua_State *L) {
   return luaL_checkudata(L, 1, CLASS);
 }
 
+/* Samples that take the result of n samples x: the argument, or new ones; they
+ * are pushed. */
+static double *room_for(lua_State *L, int arg, const double *x, size_t n) {
+  size_t given;
+  if (lua_isnoneornil(L, arg)) return lbr_push_unset_samples(L, n);
+  double *y = lbr_check_writable_samples(L, arg, &given);
+  luaL_argcheck(L, given == n, arg, "not as many samples");
+  luaL_argcheck(L, y == x || y + n <= x || x + n <= y, arg,
+                "they overlap the record, but are not the same");
+  lua_pushvalue(L, arg);
+  return y;
+}
+
 /***
  * Filters a record from left to right, starting at rest.
  * @param x samples: the record
  * @param start string: "rest" (default: zeros before the record) or
  *   "settled" (its first sample before it, for ever)
+ * @param into samples: as many, which are overwritten and returned, x itself
+ *   allowed; default new ones
  * @return samples: as many
  * @usage
  * local spec = { shape = "bessel", order = 4, corner = 1 }
@@ -133,7 +148,8 @@ static int sections_run(lua_State *L) {
   if (!settled && strcmp(start, "rest") != 0)
     return luaL_argerror(L, 3, lua_pushfstring(
         L, "\"%s\" is no start; choose rest or settled", start));
-  double *y = lbr_push_unset_samples(L, n);
+  lua_settop(L, 4);
+  double *y = room_for(L, 4, x, n);
   if (settled && n > 0) lbr_sections_settled(&f->sections, x[0], &state);
   lbr_sections_run(&f->sections, &state, x, y, n, 1);
   return 1;
@@ -269,6 +285,8 @@ static int sections_coefficients(lua_State *L) {
 /***
  * Filters the next block of a record.
  * @param x samples: the block
+ * @param into samples: as many, which are overwritten and returned, x itself
+ *   allowed; default new ones
  * @return samples: as many; bit for bit what one block would give
  * @usage
  * local spec = { shape = "butterworth", order = 3, corner = 1 }
@@ -280,7 +298,8 @@ static int stream_run(lua_State *L) {
   size_t n;
   stream *s = luaL_checkudata(L, 1, STREAM_CLASS);
   const double *x = lbr_check_samples(L, 2, &n);
-  double *y = lbr_push_unset_samples(L, n);
+  lua_settop(L, 3);
+  double *y = room_for(L, 3, x, n);
   lbr_sections_run(&s->sections, &s->state, x, y, n, 1);
   return 1;
 }

@@ -101,6 +101,9 @@ static int samples_values_at(lua_State *L) {
   lbr_set_class(L, KERNEL_CLASS, none, kernel_meta);
   lua_toclose(L, -1);
   lbr_status status = lbr_places_make(keep, ratio, db, kernel);
+  if (status == LBR_OVERFLOW)
+    return luaL_argerror(L, 4, "the kernel would be longer than 2^15 samples; "
+                               "raise the ratio or lower keep");
   if (status != LBR_OK) return lbr_raise(L, status, "values_at");
   lbr_places_take(kernel, x, n, at, y, count);
   lua_pushvalue(L, -2);

@@ -17,12 +17,14 @@ Recursive.__name = "libration.recursive"
 --- Filters a record from left to right.
 -- @param x samples: the record
 -- @param start string: "rest" (default: zeros came before) or "settled" (the first sample did)
+-- @param into samples: as many, which are overwritten and returned, x itself allowed; default new
+--   ones
 -- @return samples: as many
 -- @usage
 -- local f = lb.filter.digital { shape = "bessel", order = 4, edge = "50 Hz", rate = "1 kS/s" }
 -- assert(math.abs(f:run(lb.samples.new(400):fill(2))[-1] - 2) < 1e-9)
-function Recursive:run(x, start)
-  return self.sections:run(x, start)
+function Recursive:run(x, start, into)
+  return self.sections:run(x, start, into)
 end
 
 --- Filters a record forward and backward: no phase, no delay, the gain squared.

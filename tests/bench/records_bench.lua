@@ -7,6 +7,7 @@ local x = lb.samples.make(n, function(i) return math.sin(0.1 * i) + (i * 7919 % 
 local sections = lb.filter.digital { shape = "elliptic", order = 8, edge = 100, rate = 1000,
   ripple = 0.1, stop = 60 }
 local decimator = lb.filter.decimator { factor = 64 }
+local room = lb.samples.new(n)
 local resampler = lb.filter.resampler { up = 147, down = 160 }
 
 local function line(name, work, peer, ours)
@@ -14,8 +15,8 @@ local function line(name, work, peer, ours)
 end
 
 return {
-  line("record sections", "8 poles, causal", "records.py sections", function()
-    sections:run(x)
+  line("record sections", "8 poles, causal, into samples that are there", "records.py sections", function()
+    sections:run(x, "rest", room)
   end),
   line("record both ways", "8 poles, no phase", "records.py both", function()
     sections:both_ways(x)
