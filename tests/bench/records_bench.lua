@@ -15,7 +15,7 @@ local function line(name, work, peer, ours)
 end
 
 return {
-  line("record sections", "8 poles, causal, into samples that are there", "records.py sections", function()
+  line("record sections", "8 poles, causal, reused room", "records.py sections", function()
     sections:run(x, "rest", room)
   end),
   line("record both ways", "8 poles, no phase", "records.py both", function()
