@@ -13,7 +13,7 @@
 
 #define GROUP_SAMPLES 131072 /* in the segments of a group, about */
 #define GROUP_MOST 64        /* segments in a group at most */
-#define SLOTS_PER_WORKER 2
+#define SPARE_SLOTS 1 /* sums of groups that wait for an earlier one */
 #define MOST_WORKERS 64
 
 /* What belongs to one worker. */
@@ -120,7 +120,7 @@ static void plan_sizes(lbr_average *a) {
   a->sums = a->bins * (c + (a->set.cross ? c * (c - 1) : 0));
   if (a->set.workers == 0) a->set.workers = lbr_cores();
   if (a->set.workers > MOST_WORKERS) a->set.workers = MOST_WORKERS;
-  a->nslots = SLOTS_PER_WORKER * a->set.workers;
+  a->nslots = a->set.workers + (a->set.workers > 1 ? SPARE_SLOTS : 0);
 }
 
 static lbr_status allocate(lbr_average *a, const double *window) {
