@@ -97,4 +97,29 @@ describe("a search", function()
       assert.are.equal(shortest, plan.samples)
     end
   end)
+
+  -- Symptom: at a small effort a plan came back that was 7 % longer than the
+  -- shortest, and nothing said so.
+  -- Cause: a part of the search that gave up did not count where another found
+  -- something (plan/search.c).
+  -- Fix: how far the search came is kept, and the plan has a note.
+  it("says where a part of it gave up", function()
+    local demand = lb.demand { unit = "V", noise = "0.1 mV/rtHz",
+      lines = { { name = "shaft", hz = 24.6, drift = "0.1 %", amplitude = { 0.5, 2, "V" },
+        tolerance = "1 %" }, { name = "bar", hz = 137.7, amplitude = "1 V", tolerance = "1 %" } },
+      interferers = { { name = "mains", hz = 50, drift = "0.4 %", amplitude = "0.2 V",
+        orders = "1..8" } } }
+    local digitizer = lb.digitizer { clock = "1.024 MHz", divider = { 128, 4000 },
+      filter = { shape = "butterworth", order = 8, corner = "0.4 rate" } }
+    local shortest = assert(lb.plan(demand, digitizer)).duration_s
+    local longer = 0
+    for _, effort in ipairs { 0.04, 0.05, 0.06, 0.08, 0.1, 0.2 } do
+      local plan = lb.plan(demand, digitizer, { effort_s = effort })
+      if plan and plan.duration_s > shortest * (1 + 1e-9) then
+        longer = longer + 1
+        assert.matches("gave up", plan.notes[1])
+      end
+    end
+    assert.is_true(longer > 0, "no effort was too small")
+  end)
 end)

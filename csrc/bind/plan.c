@@ -241,11 +241,12 @@ static void set_count(lua_State *L, const char *name, size_t value) {
 }
 
 static void push_effort(lua_State *L, const lbr_search_count *count) {
-  lua_createtable(L, 0, 4);
+  lua_createtable(L, 0, 5);
   set_count(L, "ranges", count->ranges);
   set_count(L, "candidates", count->candidates);
   set_count(L, "bounds", count->bounds);
   set_number(L, "work", count->work);
+  set_number(L, "open_s", count->open);
 }
 
 static void push_setting(lua_State *L, const lbr_rate *rate) {
@@ -291,8 +292,9 @@ static int plan_rate_at(lua_State *L) {
  *   and care_work (about microseconds); absent: the problem's
  * @return table: rate, samples, mode (index), setting (three numbers); or nil,
  *   message, code ("infeasible": nothing fits, "stopped": gave up)
- * @return table: effort: ranges, candidates, bounds, work (after a refusal it
- *   is the fourth value)
+ * @return table: effort: ranges, candidates, bounds, work, open_s (records from
+ *   here on were not all looked at; math.huge: all were); after a refusal it is
+ *   the fourth value
  * @usage
  * assert(type(core.plan.search) == "function")
  */

@@ -35,6 +35,13 @@ static double at_least(lua_State *L, int arg, const char *name, double least,
   return value;
 }
 
+/* The same, and finite. */
+static double movement(lua_State *L, int arg, const char *name) {
+  double value = at_least(L, arg, name, 0, 0);
+  if (!isfinite(value)) luaL_error(L, "%s: a finite number is needed", name);
+  return value;
+}
+
 static size_t count_field(lua_State *L, int arg, const char *name,
                           double least, double fallback) {
   double value = at_least(L, arg, name, least, fallback);
@@ -61,9 +68,9 @@ static void *owned(lua_State *L, size_t count, size_t size) {
 static void read_source(lua_State *L, int arg, size_t drivers, lbr_source *s) {
   double driver = lbr_field_number(L, arg, "driver");
   s->hz = lbr_field_number(L, arg, "hz");
-  s->lock_hz = at_least(L, arg, "lock_hz", 0, 0);
-  s->free_hz = at_least(L, arg, "free_hz", 0, 0);
-  s->wander = at_least(L, arg, "wander", 0, 0);
+  s->lock_hz = movement(L, arg, "lock_hz");
+  s->free_hz = movement(L, arg, "free_hz");
+  s->wander = movement(L, arg, "wander");
   s->least = lbr_field_number(L, arg, "least");
   s->most = lbr_field_number(L, arg, "most");
   if (!(s->hz > 0)) luaL_error(L, "hz: must be positive");

@@ -81,7 +81,8 @@ static lbr_status repeat(const lbr_spans *one, double period, double from,
   lbr_spans all = {NULL, 0, 0};
   lbr_status status = LBR_OK;
   double last = ceil(to / period);
-  for (double m = fmax(floor(from / period) - 1, 0); m <= last; m++)
+  double first = fmax(floor(from / period) - 1, 0);
+  for (double m = first; m <= last && status == LBR_OK; m++)
     for (size_t k = 0; k < one->count && status == LBR_OK; k++) {
       lbr_span span = {fmax(one->item[k].from + (m - 1) * period, from),
                        fmin(one->item[k].to + (m - 1) * period, to)};

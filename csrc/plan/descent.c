@@ -362,6 +362,7 @@ static lbr_status run(search *s, lbr_choice *choice) {
   while (lbr_heap_pop(&s->heap, &node)) {
     lbr_status status;
     bool fits = false;
+    s->count->open = node.t1;
     if (bits_of(node.t1 * (1 - EDGE)) > atomic_load(s->best)) break;
     if (node.n == 0)
       status = visit(s, node);
@@ -384,6 +385,7 @@ lbr_status lbr_descent_run(const lbr_problem *p, lbr_care care,
   search s = {.p = p, .care = care, .count = count, .best = best};
   lbr_status status = open_search(&s);
   if (status == LBR_OK) status = run(&s, choice);
+  if (status != LBR_STOPPED) count->open = INFINITY;
   close_search(&s);
   return status;
 }

@@ -25,6 +25,8 @@ typedef struct lbr_search_count {
   size_t candidates; /* (rate, length, mode) brought onto the hardware */
   size_t bounds;     /* full bounds evaluated */
   double work;       /* about microseconds */
+  double open;       /* records from here on were not all looked at, s;
+                        INFINITY where the search came to its end */
 } lbr_search_count;
 
 /* The shortest record by bounds of this care.  *best holds the bits of the

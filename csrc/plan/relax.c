@@ -8,10 +8,13 @@
 #define TRUST 0.998    /* what long records keep beyond lbr_relax_kept */
 #define SHORT 2048     /* records shorter than this ... */
 #define TRUST_SHORT 0.95 /* ... keep less */
+#define TINY 64        /* and records shorter than this ... */
+#define DOUBT 2e-5     /* ... less by this of what leaks, far off the line */
 #define MODEL 4096     /* length at which finite kernels are looked at */
 #define THIN 1e-3      /* of what is allowed: pairs below do not matter */
 #define ENOUGH 1.25    /* bins of an interval's near end that hold its peak */
 #define LOBES 16       /* no main lobe reaches further, bins */
+#define FARTHEST 1e9   /* bins from which no window has anything left */
 #define FLANK 32.5     /* bins from which envelopes can be compared */
 #define MARGIN 1e-8    /* and enclosures looser by this */
 #define STEADY 0.9999  /* noise bandwidths differ less with the length */
@@ -254,9 +257,10 @@ static double least_scallop(const lbr_source *s, double spread, double low,
                             double high, lbr_kernel *kernel, double t1,
                             double t2) {
   double off = low > 0 ? low : high < 0 ? -high : 0, least, most;
-  double near = off + s->lock_hz * spread * t1;
+  double near = fmin(off + s->lock_hz * spread * t1, FARTHEST);
   double far = fmax(fabs(low), fabs(high)) + s->lock_hz * spread * t2;
-  lbr_kernel_range(kernel, near, fmax(near, far), &least, &most);
+  far = fmin(fmax(near, far), near + FARTHEST);
+  lbr_kernel_range(kernel, near, far, &least, &most);
   return fmax(TRUST_SHORT * (1 - most) - MARGIN, 0);
 }
 
@@ -296,6 +300,7 @@ static double line_least(const view *v, size_t i, double *work) {
   double enbw = lbr_kernel_noise_bandwidth(v->kernel), bin = 0;
   double sum = STEADY * sqrt(r->noise[i] * enbw / v->t2);
   double trust = v->t1 * r->rate < SHORT ? TRUST_SHORT : TRUST;
+  double doubt = v->t1 * r->rate < TINY ? DOUBT : 0;
   bool known = v->tracked || one_bin(s->hz, v->t1, v->t2, &bin);
   if (!v->tracked)
     sum += s->least *
@@ -310,8 +315,9 @@ static double line_least(const view *v, size_t i, double *work) {
     double index = r->pair[k].swing * v->t2;
     double carrier = fmax(1 - index * index / 4, 0);
     if (carrier > 0)
-      sum += r->pair[k].weight * v->kept[k] * trust * carrier *
-             pair_least(v, &r->pair[k], bin);
+      sum += r->pair[k].weight * carrier *
+             fmax(v->kept[k] * trust * pair_least(v, &r->pair[k], bin) - doubt,
+                  0);
     *work += 0.4;
   }
   return sum;

@@ -63,6 +63,7 @@ static void add_count(lbr_search_count *sum, const lbr_search_count *more) {
   sum->candidates += more->candidates;
   sum->bounds += more->bounds;
   sum->work += more->work;
+  sum->open = fmin(sum->open, more->open);
 }
 
 static double duration(const lbr_problem *p, const lbr_choice *choice) {
@@ -97,6 +98,8 @@ static lbr_status gather(const split *all, const lbr_problem *p,
     }
   }
   if (worst != LBR_INFEASIBLE && worst != LBR_STOPPED) return worst;
+  if (found && count->open * (1 + EDGE) >= duration(p, choice))
+    count->open = INFINITY;
   return found ? LBR_OK : worst;
 }
 
@@ -132,15 +135,16 @@ static lbr_problem beat(const lbr_problem *p, const lbr_choice *choice) {
 
 lbr_status lbr_search_run(const lbr_problem *p, lbr_choice *choice,
                           lbr_search_count *count) {
-  *count = (lbr_search_count){0, 0, 0, 0};
+  *count = (lbr_search_count){.open = INFINITY};
   if (p->rates->count == 0 || p->scene->n_lines == 0) return LBR_INFEASIBLE;
-  lbr_search_count more = {0, 0, 0, 0};
+  lbr_search_count more = {.open = INFINITY};
   lbr_choice shorter;
   lbr_status status = search_once(p, LBR_CARE_PLAIN, choice, count);
   if (status != LBR_OK && status != LBR_INFEASIBLE) return status;
   lbr_problem narrow = status == LBR_OK ? beat(p, choice) : *p;
   if (status == LBR_OK && p->care_work <= 0) return LBR_OK;
   lbr_status again = search_once(&narrow, LBR_CARE_JOINT, &shorter, &more);
+  if (status == LBR_OK) more.open = INFINITY; /* it may end where it likes */
   add_count(count, &more);
   if (again == LBR_OK) {
     *choice = shorter;

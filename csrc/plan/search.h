@@ -15,9 +15,10 @@
 #include "base/status.h"
 #include "plan/descent.h"
 
-/* LBR_OK: *choice is the shortest; among equal durations the one of fewest
- * samples.  LBR_INFEASIBLE: nothing fits.  LBR_STOPPED: gave up at
- * problem->most_work. */
+/* LBR_OK: *choice is the shortest by plain bounds, or shorter still by joint
+ * ones; among equal durations the one of fewest samples.  Where count->open is
+ * finite a part of the search gave up, and it may not be the shortest.
+ * LBR_INFEASIBLE: nothing fits.  LBR_STOPPED: gave up at problem->most_work. */
 LBR_CHECKED lbr_status lbr_search_run(const lbr_problem *problem,
                                       lbr_choice *choice,
                                       lbr_search_count *count);

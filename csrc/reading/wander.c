@@ -3,6 +3,7 @@
 
 #include <math.h>
 
+#define DEEPEST 1e3 /* far more than the sidebands that are followed hold */
 #define NEGLIGIBLE 1e-12 /* sidebands from here on are left out */
 #define FIRST_ZERO 2.404825557695773 /* of J_0: DLMF 10.21, table */
 #define FIRST_DIP 0.4027593958 /* |J_0| at its first minimum, 3.8317..., above
@@ -36,6 +37,12 @@ void lbr_wander_of_index(double index, lbr_wander *w) {
   w->carrier = 1;
   for (int part = 0; part < LBR_DEPTHS; part++) w->most[part][0] = 1;
   if (!(index > 0)) return;
+  w->whole = index < DEEPEST;
+  if (!w->whole) {
+    w->count = 2; /* not a steady one */
+    w->carrier = 0;
+    return;
+  }
   w->carrier = index < FIRST_ZERO ? j0(index) : 0;
   fill_order(w, 0, index);
   for (; w->count < LBR_SIDEBANDS; w->count++) {

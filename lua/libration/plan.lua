@@ -130,6 +130,11 @@ local function check_arguments(demand, digitizer)
   end
 end
 
+local function note_effort(plan, read)
+  table.insert(plan.notes, 1, ("The search for the shortest plan gave up after about %g s of "
+    .. "work (effort_s); this one holds, a shorter one may exist."):format(read.effort_s))
+end
+
 --- Plans a measurement: the shortest that holds every tolerance.
 -- @param demand table: from lb.demand
 -- @param digitizer table: from lb.digitizer
@@ -138,7 +143,7 @@ end
 -- eleven), undersample (lines may stand above half the rate; default false),
 -- share (of each tolerance that the error may take, default "100 %"),
 -- least_rate, most_rate, effort_s (seconds of search after which it gives up,
--- default 10)
+-- default 10; a plan found so far is returned with a note that says so)
 -- @return plan: with rate, samples, window, reading, lines, identity; or nil,
 -- refusal, "infeasible". Misuse raises an error that lists every mistake
 -- @usage
@@ -156,14 +161,17 @@ function M.plan(demand, digitizer, options)
   end
   local choice, message, code = search(posed, per_record(demand, read), read.share, read.effort_s)
   if choice then
-    return build(demand, digitizer, posed, choice)
+    local plan, effort = build(demand, digitizer, posed, choice), message
+    if effort.open_s < plan.duration_s then
+      note_effort(plan, read)
+    end
+    return plan
   end
   if code == "stopped" then
     local some = coarse.find(demand, digitizer, posed, read)
     local plan = some and build(demand, digitizer, posed, some)
     if plan then
-      table.insert(plan.notes, 1, ("The search for the shortest plan gave up after about %g s of "
-        .. "work (effort_s); this one holds, a shorter one may exist."):format(read.effort_s))
+      note_effort(plan, read)
       return plan
     end
   elseif code ~= "infeasible" then
