@@ -185,7 +185,7 @@ static int draft_frames(lua_State *L) {
  * Flushes the draft to the disk and gives it its name.
  * @return boolean: true; or nil, message, code
  * @usage
- * local draft = core.store.draft(os.tmpname())
+ * local draft = core.store.draft "never.csv"
  * draft:close()
  * assert(not pcall(draft.finish, draft))
  */
