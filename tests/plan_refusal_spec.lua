@@ -153,6 +153,32 @@ describe("a refusal", function()
     end
   end)
 
+  -- Was: trials of hopeless changes used up the allowance, and nothing was offered
+  -- though the same demand plans in 1.2 s without a limit of time.
+  it("offers more time for a machine of many lines, too", function()
+    local skid = lb.demand { unit = "m/s^2", sensitivity = "100 mV/(m/s^2)",
+      noise = "60 um/s^2/rtHz", lines = {
+        { name = "shaft", hz = 24.6, drift = "0.1 %", amplitude = { 0.05, 2, "m/s^2" },
+          tolerance = "1 %" },
+        { name = "vane pass", of = "shaft", times = 7, amplitude = { 0.05, 2, "m/s^2" },
+          tolerance = "1 %" },
+        { name = "rotor bar", hz = 1377.6, drift = "0.05 %", amplitude = { 0.01, 0.3, "m/s^2" },
+          tolerance = "2 %" } },
+      interferers = { { name = "mains", hz = 50, drift = "0.4 %", orders = "1..20",
+        amplitude = "20 mm/s^2" } } }
+    local digitizer = lb.digitizer { clock = "12.288 MHz", divider = { 128, 4096 }, bits = 24,
+      range = "5 V", memory = "4 Mi", timebase = "25 ppm", jitter = "2 ns",
+      filter = { shape = "butterworth", order = 8, corner = "0.4 rate" } }
+    local none, refusal = lb.plan(skid, digitizer, { within = "1 s" })
+    assert.is_nil(none)
+    local offered = {}
+    for _, relaxation in ipairs(refusal.relaxations) do
+      offered[next(relaxation.change)] = relaxation.plan.duration_s
+    end
+    assert.is_true(offered.within > 1 and offered.within < 2)
+    assert.is_true(offered.tolerances <= 1)
+  end)
+
   it("prints whole, with a row for every relaxation", function()
     local _, refusal = plan_of(case { noise = "10 mV/rtHz", digitizer = { rates = { "1 kHz" },
       memory = 4000 } })

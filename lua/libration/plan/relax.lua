@@ -8,7 +8,7 @@ local M = {}
 
 -- Microseconds of work per second of effort the engineer allows: of one trial,
 -- and of all trials of a refusal together.
-local ONE_TRIAL, ALL_TRIALS = 2e4, 8e4
+local ONE_TRIAL, ALL_TRIALS = 5e4, 1.5e5
 
 --- A search within what is left of a refusal's allowance.
 -- @param posed table: from libration.plan.problem
@@ -84,8 +84,10 @@ end
 local function longer(list, demand, digitizer, read)
   local free = with(read, {})
   free.within = nil
+  -- The plain plan: worth an ordinary search, which the allowance is not.
+  local ample = with(free, { left = { work = math.huge }, effort_s = read.effort_s * 10 })
   if read.within and add(list, { within = "free" }, "more time than within allows",
-    attempt(demand, digitizer, free)) then
+    attempt(demand, digitizer, ample)) then
     return
   end
   for _, times in ipairs(TIME_STEPS) do
@@ -106,7 +108,8 @@ local function looser(list, demand, digitizer, read, share)
     return
   end
   local times = math.ceil(share / read.share * 100) / 100
-  local plan = attempt(demand, digitizer, with(read, { share = read.share * times }))
+  local plan = attempt(demand, digitizer, with(read, { share = read.share * times,
+    left = { work = math.huge } }))
   add(list, { tolerances = times }, ("all tolerances times %.2f"):format(times), plan)
 end
 
