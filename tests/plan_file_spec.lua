@@ -92,7 +92,7 @@ describe("a changed file", function()
   it("is no plan when a field is missing, wrong or unknown", function()
     for _, case in ipairs { { "samples = %d+,?", "" }, { "samples = %d+", "samples = -4" },
         { 'reading = "%a+"', 'reading = "fit"' }, { 'window = "[%w_]+"', 'window = "barn"' },
-        { "bounds_version = 1", "bounds_version = 1, more = 2" },
+        { "bounds_version = 2", "bounds_version = 2, more = 2" },
         { 'range = "2 V"', 'range = "2 m"' }, { "plan = {", "plann = {" } } do
       assert.are.equal("format", changed(case[1], case[2]), case[1])
     end

@@ -79,6 +79,28 @@ describe("a bound", function()
   end)
 end)
 
+describe("a range", function()
+  -- Symptom: plans whose records clip where the gain is at its limit, or where a
+  -- filter lifts a source.
+  -- Cause: the sum of the peaks at the input was held against the range.
+  -- Fix: it is the sum with gain errors and lift (plan/problem.lua).
+  it("is not passed by gain errors or filters that lift", function()
+    local demand = lb.demand { unit = "V", lines = { LINE } }
+    local function plan(changes)
+      local digitizer = copy({ rates = { "1 kHz" }, range = "1.04 V", bits = 16 }, changes)
+      return lb.plan(demand, lb.digitizer(digitizer))
+    end
+    assert.is_truthy(plan {})
+    for _, changes in ipairs { { accuracy = "5 %" }, { filter = { shape = "points",
+      points = { { "10 Hz", "6 dB" }, { "90 Hz", "0 dB" } } } } } do
+      local none, refusal = plan(changes)
+      assert.is_nil(none)
+      assert.are.equal("clipping", refusal.binding.term)
+      assert.is_truthy(refusal.relaxations[1])
+    end
+  end)
+end)
+
 describe("a search", function()
   -- Symptom: for a line of {1 mV, 1 V} the plan was 27 % longer than for 1 V,
   -- although its own image weighs the same at any amplitude.

@@ -12,7 +12,7 @@ local units = require "libration.units"
 
 local M = {}
 
-local BOUNDS_VERSION = 1 -- raised whenever a bound may come out differently
+local BOUNDS_VERSION = 2 -- raised whenever a bound may come out differently
 
 local function decided(plan)
   return { rate = fraction.text(plan.rate), samples = plan.samples, setting = plan.setting,

@@ -53,20 +53,32 @@ function M.front(demand, digitizer)
   }
 end
 
---- The largest value all sources and the offset can add up to.
+-- The most a filter lifts anything by: shapes by design do not, tables may.
+local function lift(filter)
+  local most = 1
+  for _, point in ipairs(filter.points or {}) do
+    most = math.max(most, 10 ^ (point.db / 20))
+  end
+  return most
+end
+
+--- The largest value all sources and the offset can add up to in the record.
+-- Gain errors are in; what a filter takes away is not, noise is not.
 -- @param demand table: from lb.demand
+-- @param front table: from front above
 -- @return number: demand's unit
 -- @usage
 -- local problem = require "libration.plan.problem"
--- assert(problem.peak { offset = 1, lines = { { most = 2 } }, interferers = {} } == 3)
-function M.peak(demand)
+-- local front = { filter = { shape = "none" }, flatness = 0, accuracy = 0.5 }
+-- assert(problem.peak({ offset = 1, lines = { { most = 2 } }, interferers = {} }, front) == 4.5)
+function M.peak(demand, front)
   local sum = demand.offset or 0
   for _, list in ipairs { demand.lines, demand.interferers } do
     for _, source in ipairs(list) do
       sum = sum + source.most
     end
   end
-  return sum
+  return sum * lift(front.filter) * (1 + front.flatness) * (1 + front.accuracy)
 end
 
 -- The highest frequency a line may have, as the record sees it.

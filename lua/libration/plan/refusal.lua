@@ -34,7 +34,7 @@ end
 -- assert(type(require("libration.plan.refusal").blocked) == "function")
 function M.blocked(demand, digitizer, posed, read)
   local front = problem.front(demand, digitizer)
-  local peak = problem.peak(demand)
+  local peak = problem.peak(demand, front)
   if front.range and peak > front.range then
     return new { demand = demand, digitizer = digitizer,
       binding = { term = "clipping", limit = "range", ratio = peak / front.range },

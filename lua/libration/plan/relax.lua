@@ -54,7 +54,7 @@ local function attempt(demand, digitizer, read)
     return nil
   end
   local front = problem.front(demand, digitizer)
-  if front.range and problem.peak(demand) > front.range then
+  if front.range and problem.peak(demand, front) > front.range then
     return nil
   end
   local choice = M.search(posed, demand, read, read.share)
