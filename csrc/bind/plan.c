@@ -389,6 +389,8 @@ static void push_bound(lua_State *L, const lbr_case *c, size_t line,
  * @param rate number: S/s
  * @param mode integer: index into the problem's modes
  * @param samples integer: record length
+ * @param care string: "joint" (default; sources of one driver worst together) or
+ *   "plain" (every source at its own worst place: looser, far quicker)
  * @return table: one row a line: own, others, sigma, hz_bound, sigma_hz,
  *   amplitude, error, tolerance, ratio, ratio_hz, search_low_hz,
  *   search_high_hz, gain
@@ -396,12 +398,16 @@ static void push_bound(lua_State *L, const lbr_case *c, size_t line,
  * assert(type(core.plan.judge) == "function")
  */
 static int plan_judge(lua_State *L) {
+  static const char *const cares[] = {"plain", "joint", NULL};
+  lbr_care care = luaL_checkoption(L, 5, "joint", cares) == 0
+                      ? LBR_CARE_PLAIN
+                      : LBR_CARE_JOINT;
   const bench *b = push_bench(L);
   size_t lines = b->c.scene->n_lines;
   lua_createtable(L, (int)lines, 0);
   for (size_t i = 0; i < lines; i++) {
     lbr_bound bound;
-    lbr_bound_line(&b->c, i, LBR_CARE_JOINT, 0, &bound);
+    lbr_bound_line(&b->c, i, care, 0, &bound);
     push_bound(L, &b->c, i, &bound);
     lua_rawseti(L, -2, (lua_Integer)i + 1);
   }

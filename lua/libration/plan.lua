@@ -45,13 +45,15 @@ end
 local function line_of(plan, i, judged, posed, choice)
   local line = plan.demand.lines[i]
   local hz = line.hz:number()
+  local random = plan.coverage / math.sqrt(plan.averages)
   return setmetatable({
     name = line.name, hz = line.hz, bin = math.floor(hz * plan.duration_s + 0.5),
     least = line.least, most = line.most,
     amplitude = judged.amplitude, tolerance = judged.tolerance, error = judged.error,
     ratio = judged.ratio, own = judged.own, others = judged.others,
     systematic = judged.own * judged.amplitude + judged.others, random = judged.sigma,
-    hz_error = judged.hz_bound, hz_random = judged.sigma_hz,
+    hz_error = judged.hz_bound + random * judged.sigma_hz,
+    hz_systematic = judged.hz_bound, hz_random = judged.sigma_hz,
     tolerance_hz = line.tolerance_hz, hz_ratio = judged.ratio_hz,
     search_low_hz = judged.search_low_hz, search_high_hz = judged.search_high_hz,
     gain = judged.gain,

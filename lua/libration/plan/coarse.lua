@@ -6,7 +6,7 @@ local problem = require "libration.plan.problem"
 
 local M = {}
 
-local RATES, DURATIONS, WINDOWS = 6, 20, 4
+local RATES, HALVINGS = 3, 12
 local SHORTEST, LONGEST = 64, 2 ^ 20 -- samples
 
 -- Up to `count` whole numbers from 1 to `most`, evenly spread, both ends in.
@@ -18,55 +18,68 @@ local function spread(most, count)
   return list
 end
 
-local function holds(posed, choice, share)
-  for _, row in ipairs(core.plan.judge(posed.handle, choice.rate, choice.mode, choice.samples)) do
-    if row.ratio > share then
-      return false
-    end
+-- The worst share of a tolerance, by plain bounds.
+local function worst(posed, choice)
+  local ratio = 0
+  for _, row in ipairs(core.plan.judge(posed.handle, choice.rate, choice.mode, choice.samples,
+    "plain")) do
+    ratio = math.max(ratio, row.ratio)
   end
-  return true
+  return ratio
 end
 
--- The shortest of the durations that holds, at one rate, in one mode.
-local function shortest(posed, read, choice, limits)
-  for k = 0, DURATIONS - 1 do
-    local n = limits.least * (limits.most / limits.least) ^ (k / (DURATIONS - 1))
-    choice.samples = math.tointeger(math.floor(n / limits.block) * limits.block)
-    if choice.samples / choice.rate >= limits.beaten then
-      return false
-    elseif choice.samples >= limits.least and holds(posed, choice, read.share) then
-      return true
+-- Shortens a choice that holds by bisection; it holds afterwards, too.
+local function shorten(posed, read, choice, least, block)
+  local low, high = least / block, choice.samples / block
+  for _ = 1, HALVINGS do
+    local middle = math.tointeger(math.floor(math.sqrt(low * high)))
+    if middle * block < least or middle >= high then
+      break
+    end
+    local shorter = { rate = choice.rate, setting = choice.setting, mode = choice.mode,
+      samples = middle * block }
+    if worst(posed, shorter) <= read.share then
+      choice, high = shorter, middle
+    else
+      low = middle
     end
   end
-  return false
+  return choice
 end
 
---- Looks for any plan that holds.
+--- Looks for any plan that holds, in long records of a few rates.
 -- @param demand table: from lb.demand
 -- @param digitizer table: from lb.digitizer
 -- @param posed table: from libration.plan.problem
 -- @param read table: read options
--- @return table: a choice (rate, setting, mode, samples), the shortest of those
--- looked at; nil when none holds
+-- @return table: a choice (rate, setting, mode, samples), the shortest that was
+-- come by; nil when none holds
+-- @return table: the choice that comes nearest to holding (nil when no record is
+-- long enough)
 -- @usage
 -- assert(type(require("libration.plan.coarse").find) == "function")
 function M.find(demand, digitizer, posed, read)
-  local block, best = digitizer.block or 1, nil
+  local block, best, nearest, ratio = digitizer.block or 1, nil, nil, math.huge
   local least = math.max(SHORTEST, digitizer.samples and digitizer.samples.least or 0)
-  local beaten = math.huge
   for _, index in ipairs(spread(core.plan.rates(posed.handle), RATES)) do
     local rate, setting = core.plan.rate_at(posed.handle, index)
     local within = (read.within or math.huge) / (demand.averages or 1) * rate
-    local most = math.min(problem.most_samples(digitizer), within, LONGEST)
-    for _, mode in ipairs(most >= least and spread(#posed.modes, WINDOWS * 2) or {}) do
-      local choice = { rate = rate, setting = setting, mode = mode }
-      local limits = { least = least, most = most, block = block, beaten = beaten }
-      if shortest(posed, read, choice, limits) then
-        best, beaten = choice, choice.samples / rate
+    local most = math.floor(math.min(problem.most_samples(digitizer), within, LONGEST) / block)
+    for mode = 1, most * block >= least and #posed.modes or 0 do
+      local choice = { rate = rate, setting = setting, mode = mode,
+        samples = math.tointeger(most * block) }
+      local now = worst(posed, choice)
+      if now < ratio then
+        nearest, ratio = choice, now
+      end
+      if now <= read.share then
+        choice = shorten(posed, read, choice, least, block)
+        local shorter = not best or choice.samples / rate < best.samples / best.rate
+        best = shorter and choice or best
       end
     end
   end
-  return best
+  return best, nearest
 end
 
 return M

@@ -9,10 +9,10 @@ local M = {}
 
 local function scale(demand, digitizer)
   local unit = digitizer.range_unit
-  if not unit or unit == demand.unit then
+  if demand.sensitivity then
+    return 1 / demand.sensitivity -- also volts per volt: probes and amplifiers
+  elseif not unit or unit == demand.unit then
     return 1
-  elseif demand.sensitivity then
-    return 1 / demand.sensitivity
   end
   error(("sensitivity: the demand is in %s and the digitizer's range in %s; give the demand a "
     .. 'sensitivity such as "100 mV/(%s)"'):format(demand.unit, unit, demand.unit), 0)

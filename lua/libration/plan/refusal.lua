@@ -1,6 +1,7 @@
 --- Refusals: why no plan holds a demand, and the smallest changes that would help.
 
 local core = require "libration.core"
+local coarse = require "libration.plan.coarse"
 local problem = require "libration.plan.problem"
 local relax = require "libration.plan.relax"
 local text = require "libration.report.text"
@@ -17,7 +18,6 @@ function Refusal:__tostring()
 end
 
 local MOST_SHARE = 40 -- errors beyond this many tolerances are not pursued
-local LONGEST = 2 ^ 20 -- samples of the records looked at to say what binds
 local STEPS = 5         -- bisections of the smallest share
 
 local function new(fields)
@@ -95,26 +95,6 @@ local function worst_line(posed, choice)
     from = terms[1].source and posed.source[terms[1].source].name }
 end
 
--- The longest record each window and reading could have at the lowest and the
--- highest rate: the least bad of them, where no share of the tolerances helped.
-local function least_bad(demand, digitizer, posed, read)
-  local _, low, high = core.plan.rates(posed.handle)
-  local block, best, least = digitizer.block or 1, nil, math.huge
-  local most = math.min(problem.most_samples(digitizer), LONGEST)
-  for _, rate in ipairs { low, high } do
-    local within = (read.within or math.huge) / (demand.averages or 1) * rate
-    local samples = math.floor(math.min(most, within) / block) * block
-    for mode = 1, samples >= 64 and #posed.modes or 0 do
-      local choice = { rate = rate, mode = mode, samples = math.tointeger(samples) }
-      local _, ratio = worst_line(posed, choice)
-      if ratio < least then
-        best, least = choice, ratio
-      end
-    end
-  end
-  return best
-end
-
 -- Limits that no longer record and no other rate can move.
 local fixed_limits = {
   ["sensor and range"] = "the accuracy of sensor and range",
@@ -155,14 +135,15 @@ end
 -- @usage
 -- assert(type(require("libration.plan.refusal").explain) == "function")
 function M.explain(demand, digitizer, posed, read, code)
-  local refusal = new { demand = demand, digitizer = digitizer, notes = {} }
+  local refusal = new { demand = demand, digitizer = digitizer, notes = {},
+    gave_up = code == "stopped" }
   if code == "stopped" then
     refusal.notes[1] = ("The search gave up after about %g s of work; a plan may exist. Fewer "
       .. "windows, a narrower range of rates, or a larger effort_s would settle it.")
       :format(read.effort_s)
   end
   local share, choice = smallest_share(posed, read, demand)
-  local shown = choice or least_bad(demand, digitizer, posed, read)
+  local shown = choice or select(2, coarse.find(demand, digitizer, posed, read))
   if shown then
     local line, ratio, term = worst_line(posed, shown)
     refusal.binding = { line = demand.lines[line].name, term = term.term, from = term.from,

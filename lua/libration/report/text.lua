@@ -320,7 +320,8 @@ function M.refusal(refusal)
   local lines = {}
   local title = refusal.title or refusal.demand and refusal.demand.title
   lines[1] = title and layout.safe(title) or "Refused"
-  lines[2] = "cannot be measured as demanded: no plan holds every tolerance"
+  lines[2] = refusal.gave_up and "no plan was found within the effort allowed; there may be one"
+    or "cannot be measured as demanded: no plan holds every tolerance"
   lines[3] = ""
   if refusal.message then
     paragraph(lines, "Why: " .. refusal.message, 2)
