@@ -4,6 +4,7 @@
 #include <stdatomic.h>
 #include <stdlib.h>
 #include <string.h>
+#include <time.h>
 
 #include "base/checked.h"
 #include "plan/heap.h"
@@ -58,7 +59,27 @@ typedef struct search {
   field *fields;       /* n_modes * n_bands */
   lbr_search_count *count;
   _Atomic uint64_t *best; /* shortest duration anybody found, as bits */
+  double started;         /* processor time of this thread, s */
+  size_t steps;           /* of the loop, to look at the clock now and then */
 } search;
+
+#define LOOK_EVERY 64 /* steps between looks at the clock */
+#define PATIENCE 2.0  /* processor time allowed over the estimated work */
+
+static double processor_time(void) {
+  struct timespec t;
+  if (clock_gettime(CLOCK_THREAD_CPUTIME_ID, &t) != 0) return 0;
+  return (double)t.tv_sec + 1e-9 * (double)t.tv_nsec;
+}
+
+/* Work is counted, so that results do not depend on the machine; the clock
+ * only guards against work that was counted far too low. */
+static bool too_long(search *s) {
+  if (s->count->work > s->p->most_work) return true;
+  if (++s->steps % LOOK_EVERY != 0) return false;
+  double spent = processor_time() - s->started;
+  return spent > PATIENCE * 1e-6 * s->p->most_work + 0.05;
+}
 
 static lbr_status open_mode(const search *s, size_t m) {
   mode_state *state = &s->mode[m];
@@ -374,7 +395,7 @@ static lbr_status run(search *s, lbr_choice *choice) {
       tell_best(s, node.t1);
       return LBR_OK;
     }
-    if (s->count->work > s->p->most_work) return LBR_STOPPED;
+    if (too_long(s)) return LBR_STOPPED;
   }
   return LBR_INFEASIBLE;
 }
@@ -382,7 +403,8 @@ static lbr_status run(search *s, lbr_choice *choice) {
 lbr_status lbr_descent_run(const lbr_problem *p, lbr_care care,
                            _Atomic uint64_t *best, lbr_choice *choice,
                            lbr_search_count *count) {
-  search s = {.p = p, .care = care, .count = count, .best = best};
+  search s = {.p = p, .care = care, .count = count, .best = best,
+              .started = processor_time()};
   lbr_status status = open_search(&s);
   if (status == LBR_OK) status = run(&s, choice);
   if (status != LBR_STOPPED) count->open = INFINITY;

@@ -91,7 +91,7 @@ function M.read(given, all)
     least_rate = { options.quantity(rate, { above = 0, unit = "S/s" }) },
     most_rate = { options.quantity(rate, { above = 0, unit = "S/s" }) },
     effort_s = { options.quantity(units.seconds, { above = 0, most = 3600, unit = "s" }),
-      default = 10 },
+      default = 3 },
   }, given, "plan options")
 end
 

@@ -8,7 +8,7 @@ local M = {}
 
 -- Microseconds of work per second of effort the engineer allows: of one trial,
 -- and of all trials of a refusal together.
-local ONE_TRIAL, ALL_TRIALS = 5e4, 1.5e5
+local ONE_TRIAL, ALL_TRIALS = 1e5, 5e5
 
 --- A search within what is left of a refusal's allowance.
 -- @param posed table: from libration.plan.problem
@@ -85,7 +85,7 @@ local function longer(list, demand, digitizer, read)
   local free = with(read, {})
   free.within = nil
   -- The plain plan: worth an ordinary search, which the allowance is not.
-  local ample = with(free, { left = { work = math.huge }, effort_s = read.effort_s * 10 })
+  local ample = with(free, { left = { work = math.huge }, effort_s = read.effort_s * 5 })
   if read.within and add(list, { within = "free" }, "more time than within allows",
     attempt(demand, digitizer, ample)) then
     return
