@@ -27,6 +27,12 @@ lbr_problem_handle *lbr_push_problem(lua_State *L, int arg);
 /* Argument `arg` as a problem; raises otherwise. */
 lbr_problem_handle *lbr_check_problem(lua_State *L, int arg);
 
+/* Argument `arg` as a positive finite number; raises otherwise. */
+double lbr_check_positive(lua_State *L, int arg);
+
+/* Adds folding and coherence to the table at the top of the stack. */
+void lbr_add_folds(lua_State *L);
+
 /* Fields of the table at `arg`; the first raises when the field is missing
  * or not a finite number. */
 double lbr_field_number(lua_State *L, int arg, const char *name);

@@ -6,7 +6,7 @@ local problem = require "libration.plan.problem"
 
 local M = {}
 
-local RATES, HALVINGS = 3, 12
+local RATES, MODES, HALVINGS = 2, 10, 10
 local SHORTEST, LONGEST = 64, 2 ^ 20 -- samples
 
 -- Up to `count` whole numbers from 1 to `most`, evenly spread, both ends in.
@@ -38,7 +38,7 @@ local function shorten(posed, read, choice, least, block)
     end
     local shorter = { rate = choice.rate, setting = choice.setting, mode = choice.mode,
       samples = middle * block }
-    if worst(posed, shorter) <= read.share then
+    if core.plan.holds(posed.handle, choice.rate, choice.mode, shorter.samples, read.share) then
       choice, high = shorter, middle
     else
       low = middle
@@ -65,7 +65,7 @@ function M.find(demand, digitizer, posed, read)
     local rate, setting = core.plan.rate_at(posed.handle, index)
     local within = (read.within or math.huge) / (demand.averages or 1) * rate
     local most = math.floor(math.min(problem.most_samples(digitizer), within, LONGEST) / block)
-    for mode = 1, most * block >= least and #posed.modes or 0 do
+    for _, mode in ipairs(most * block >= least and spread(#posed.modes, MODES) or {}) do
       local choice = { rate = rate, setting = setting, mode = mode,
         samples = math.tointeger(most * block) }
       local now = worst(posed, choice)
