@@ -146,7 +146,73 @@ describe("a record that breaks its plan", function()
 
   it("does not stop misuse from raising", function()
     assert.has_error(function() make():measure(plan(), { chanel = 1 }) end,
-      "measure: unknown option chanel; valid is channel")
+      "measure: unknown option chanel; valid are channel, first")
+    for _, bad in ipairs { 0, 1.5, "x" } do
+      assert.has_error(function() make():measure(plan(), { first = bad }) end,
+        "measure: first is " .. tostring(bad) .. "; it is a sample number, 1 or more")
+    end
+  end)
+end)
+
+describe("a longer record", function()
+  -- Silence, then the lines, then a sample at the rails.
+  local function long()
+    local x, lines = {}, samples(N)
+    for i = 1, 300 do x[i] = 0 end
+    for i = 1, N do x[300 + i] = lines[i] end
+    x[N + 301] = 10
+    return make { samples = core.samples.from(x) }
+  end
+
+  it("is read from the sample asked for, and says which were read", function()
+    local m, alone = assert(long():measure(plan(), { first = 301 })), make():measure(plan())
+    assert.are.equal(alone.lines[1].amplitude, m.lines[1].amplitude)
+    assert.are.equal(alone.lines[1].hz, m.lines[1].hz)
+    assert.are.same({ 301, N + 300, N + 301 }, { m.first, m.last, m.recorded })
+    assert.matches("Read: samples 301..1300 of 1301\n", tostring(m))
+    assert.matches("Read: samples 1..1000 of 1301\n", tostring(long():measure(plan())))
+  end)
+
+  it("is refused where too few samples follow, or those that follow are clipped", function()
+    local none, message, code = long():measure(plan(), { first = 303 })
+    assert.are.equal("too_short", code)
+    assert.is_nil(none)
+    assert.matches("has 1301 samples, 999 of them from number 303 on, the plan needs 1000", message)
+    none, message, code = long():measure(plan(), { first = 302 })
+    assert.are.equal("clipped", code)
+    assert.is_nil(none)
+    assert.matches("the first is number 1301", message)
+    assert.are.equal("too_short", select(3, long():measure(plan(), { first = 5000 })))
+  end)
+end)
+
+describe("a record without its line", function()
+  local function demanded()
+    local out = plan()
+    out.lines[1].least, out.lines[1].most = 1, 3
+    return out
+  end
+
+  it("is marked: outside the demand, and at the edge of the interval searched", function()
+    local silence = samples(N) * 0
+    local m = assert(make({ samples = silence }):measure(demanded()))
+    assert.is_true(m.lines[1].outside and m.lines[1].at_edge)
+    assert.is_false(m.holds)
+    assert.matches("shaft[^\n]*%(edge%)  %(%*%)", tostring(m))
+    assert.matches("there may be no line", tostring(m))
+    -- The skirt of a line beyond the interval rises towards its end.
+    local beside = plan()
+    beside.claims[1].f_lo, beside.claims[1].f_hi = 47, 50.2
+    m = assert(make():measure(beside))
+    assert.is_true(m.lines[1].at_edge)
+    assert.are.equal(50.2, m.lines[1].hz)
+  end)
+
+  it("is not what a record with its line is", function()
+    local m = assert(make():measure(demanded()))
+    assert.is_true(m.holds)
+    assert.is_false(m.lines[1].outside or m.lines[1].at_edge or m.lines[2].at_edge)
+    assert.is_nil(tostring(m):find("edge", 1, true))
   end)
 end)
 

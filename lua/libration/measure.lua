@@ -34,7 +34,7 @@ local function check_channel(rec, k)
 end
 
 -- Rails from the record's own full scale, else from the digitizer's range.
-local function check_values(rec, plan, k, values)
+local function check_values(rec, plan, k, values, first)
   local rails = rec:rails(k)
   local range = plan.front.range or math.huge
   if not rails then
@@ -45,7 +45,7 @@ local function check_values(rec, plan, k, values)
     return refuse("not_finite", "%d samples are not finite numbers", rails.bad)
   elseif rails.low + rails.high > 0 then
     return refuse("clipped", "%d samples stand at the rails, the first is number %d",
-      rails.low + rails.high, rails.first)
+      rails.low + rails.high, rails.first + first - 1)
   end
   return true
 end
@@ -54,30 +54,34 @@ end
 -- @param rec record: what was measured
 -- @param plan plan: what was planned
 -- @param k integer: channel; needed when the record has several
+-- @param first integer: number of the first sample that is read, default 1
 -- @return integer: the channel to be read; or nil, message, code: "which_channel",
 --   "wrong_channel", "wrong_rate", "too_short", "wrong_unit", "not_finite" or "clipped"
--- @return samples: its values in the demand's unit
+-- @return samples: the values that the plan reads, in the demand's unit; only they are looked at
 -- @usage
 -- local demand = lb.demand { unit = "V", lines = {
 --   { name = "tone", hz = 100, amplitude = "1 V", tolerance = "1 %" } } }
 -- local plan = lb.plan(demand, lb.digitizer { rates = { "1 kHz" } })
 -- local record = plan:replay { trial = 1 }
 -- assert(require("libration.measure").check(record, plan) == 1)
-function M.check(rec, plan, k)
+function M.check(rec, plan, k, first)
   local channel, message, code = check_channel(rec, k)
   if not channel then return nil, message, code end
+  first = first or 1
   local needed, unit = plan.samples * plan.averages, rec.channels[channel].unit
   if rec.rate ~= plan.rate then
     return refuse("wrong_rate", "it was sampled at %s S/s, the plan says %s S/s",
       tostring(rec.rate), tostring(plan.rate))
-  elseif rec.samples < needed then
-    return refuse("too_short", "it has %d samples, the plan needs %d", rec.samples, needed)
+  elseif rec.samples - (first - 1) < needed then
+    return refuse("too_short", "it has %d samples%s, the plan needs %d", rec.samples,
+      first > 1 and (", %d of them from number %d on"):format(math.max(rec.samples - first + 1, 0),
+        first) or "", needed)
   elseif unit ~= plan.demand.unit then
     return refuse("wrong_unit", "its unit is %s, the demand's is %s", unit, plan.demand.unit)
   end
-  local values = rec:values(channel)
-  local fine
-  fine, message, code = check_values(rec, plan, channel, values)
+  local stretch = rec:part { first = first, count = needed }
+  local values, fine = stretch:values(channel), nil
+  fine, message, code = check_values(stretch, plan, channel, values, first)
   if not fine then return nil, message, code end
   return channel, values
 end
@@ -92,6 +96,15 @@ local function make_tracker(plan, rate)
   return core.lines.tracker(w, searches)
 end
 
+-- Whether a search stopped at an end of its interval: what it found may be the
+-- skirt of something else, or nothing at all.
+local EDGE = 1e-9 -- of the interval's width
+
+local function stopped_at_end(claim, hz)
+  local near = EDGE * (claim.f_hi - claim.f_lo)
+  return near > 0 and (hz <= claim.f_lo + near or hz >= claim.f_hi - near)
+end
+
 -- Amplitudes and frequencies averaged over the plan's consecutive records;
 -- phases are those of the first.
 local function read_all(plan, values, rate)
@@ -103,6 +116,7 @@ local function read_all(plan, values, rate)
       local line = out[i] or { amplitude = 0, frequency = 0, phase = flat[3 * i] }
       line.amplitude = line.amplitude + flat[3 * i - 2] / plan.averages
       line.frequency = line.frequency + flat[3 * i - 1] / plan.averages
+      line.at_edge = line.at_edge or stopped_at_end(plan.claims[i], flat[3 * i - 1] * rate)
       out[i] = line
     end
   end
@@ -128,26 +142,46 @@ local function measured_line(plan, i, reading, rate)
   local outside = line.least and (amplitude + bound < line.least or amplitude - bound > line.most)
   return {
     name = line.name, amplitude = amplitude, phase = reading.phase, outside = outside or false,
-    hz = reading.frequency * rate, tracked = tracked, nominal_hz = line.hz,
+    at_edge = reading.at_edge or false, hz = reading.frequency * rate, tracked = tracked,
+    nominal_hz = line.hz,
     bound = bound, systematic = own + others, random = sigma,
     standard = standard, expanded = EXPANDED * standard,
     hz_bound = tracked and claim.hz and claim.hz + k * sigma_hz or nil,
   }
 end
 
+-- The number of the first sample; raises for what is no option.
+local function check_options(options, level)
+  for key in pairs(options) do
+    if key ~= "channel" and key ~= "first" then
+      error(("measure: unknown option %s; valid are channel, first"):format(tostring(key)), level)
+    end
+  end
+  local first = options.first == nil and 1 or math.tointeger(options.first)
+  if not first or first < 1 then
+    error(("measure: first is %s; it is a sample number, 1 or more")
+      :format(tostring(options.first)), level)
+  end
+  return first
+end
+
 --- Measures every line of a record by a plan's own reading.
--- The record must be the planned one (see check); longer records are read from their first
--- sample on. With averages, consecutive records are read and amplitudes and frequencies averaged.
+-- The record must be the planned one (see check); of a longer one the planned number of samples
+-- is read, from sample number first on, and the rest is not looked at. With averages, consecutive
+-- records are read and amplitudes and frequencies averaged.
 -- @param rec record: what was recorded
 -- @param plan plan: the plan it was recorded by
--- @param options table: channel (integer; needed when the record has several)
+-- @param options table: channel (integer; needed when the record has several), first (number of
+--   the first sample read, default 1)
 -- @return table: the measurement: unit, rate, samples, averages, identity (of the plan), coverage
---   (k of the bounds), and lines[i]: name, amplitude (peak), bound (worst error, random part with
---   k), systematic, random (standard deviation), standard and expanded (k = 2) uncertainty, hz
---   (where the line was read) with hz_bound (tracked lines), phase (rad, of the cosine at the
---   centre of the first record, as the digitizer shows it), tracked, outside (boolean: the
---   amplitude is not one the demand allows for, and the bounds do not hold); print shows a table;
---   or nil, message, code when the record breaks its plan
+--   (k of the bounds), first and last (samples read), recorded (samples that the record has),
+--   holds (no line is outside), and lines[i]: name, amplitude (peak), bound (worst error, random
+--   part with k), systematic, random (standard deviation), standard and expanded (k = 2)
+--   uncertainty, hz (where the line was read) with hz_bound (tracked lines), phase (rad, of the
+--   cosine at the centre of the first record, as the digitizer shows it), tracked, outside
+--   (boolean: the amplitude is not one the demand allows for, and the bounds do not hold), at_edge
+--   (boolean: a search stopped at an end of its interval, so there may be no line); print shows a
+--   table; or nil, message, code when the record breaks its plan
 -- @usage
 -- local demand = lb.demand { unit = "V", lines = {
 --   { name = "tone", hz = 100, amplitude = "1 V", tolerance = "1 %" } } }
@@ -156,26 +190,25 @@ end
 -- local m = assert(record:measure(plan))
 -- assert(m.lines[1].name == "tone" and m.lines[1].bound < 0.01)
 function M.measure(rec, plan, options)
-  for key in pairs(options or {}) do
-    if key ~= "channel" then
-      error(("measure: unknown option %s; valid is channel"):format(tostring(key)), 2)
-    end
-  end
-  local channel, values, code = M.check(rec, plan, options and options.channel)
+  local first = check_options(options or {}, 3)
+  local channel, values, code = M.check(rec, plan, options and options.channel, first)
   if not channel then return nil, values, code end
   local rate = plan.rate:number()
   local out = { unit = plan.demand.unit, rate = plan.rate, samples = plan.samples,
                 averages = plan.averages, identity = plan.identity, channel = channel,
-                coverage = plan.demand.coverage, lines = {} }
+                coverage = plan.demand.coverage, first = first, last = first + #values - 1,
+                recorded = rec.samples, holds = true, lines = {} }
   for i, reading in ipairs(read_all(plan, values, rate)) do
     out.lines[i] = measured_line(plan, i, reading, rate)
+    out.holds = out.holds and not out.lines[i].outside
   end
   return setmetatable(out, Measurement)
 end
 
 --- Measures this record: `record:measure(plan)`; see libration.measure.
 -- @param plan plan: the plan it was recorded by
--- @param options table: channel (integer; needed when the record has several)
+-- @param options table: channel (integer; needed when the record has several), first (number of
+--   the first sample read, default 1)
 -- @return table: the measurement; or nil, message, code when the record breaks its plan
 -- @usage
 -- local demand = lb.demand { unit = "V", lines = {
@@ -219,18 +252,23 @@ function M.text(m)
     ("Measured by plan %s: %s S/s, %d samples, %d average%s, unit %s"):format(
       tostring(m.identity or "without identity"):sub(1, 12), tostring(m.rate), m.samples,
       m.averages, m.averages == 1 and "" or "s", m.unit),
+    ("Read: samples %d..%d of %d"):format(m.first, m.last, m.recorded),
     ("  %-20s %12s %11s %11s %11s  %s"):format("line", "amplitude", "worst +-", "u (k=1)",
       "U (k=2)", "frequency, Hz"),
   }
-  local outside = false
+  local at_edge = false
   for _, l in ipairs(m.lines) do
-    outside = outside or l.outside
+    at_edge = at_edge or l.at_edge
     rows[#rows + 1] = ("  %-20s %12s %11.2g %11.2g %11.2g  %s"):format(l.name,
       to_digits(l.amplitude, l.expanded), l.bound, l.standard, l.expanded,
-      hz_text(l) .. (l.outside and "  (*)" or ""))
+      hz_text(l) .. (l.at_edge and "  (edge)" or "") .. (l.outside and "  (*)" or ""))
   end
-  if outside then
+  if not m.holds then
     rows[#rows + 1] = "(*) outside the amplitudes that were demanded: the bounds do not hold there"
+  end
+  if at_edge then
+    rows[#rows + 1] = "(edge) nothing higher within the interval searched than at its very end:"
+      .. " there may be no line"
   end
   rows[#rows + 1] = ("worst: systematic bound and %g standard deviations; u: JCGM 100 style")
     :format(m.coverage)
