@@ -116,6 +116,9 @@ describe("wrong use", function()
       { { "prove", path, "--seed", "-1" }, "not a whole number" },
       { { "measure", path }, "1 operands" }, { { "windows", "x" }, "1 operands" },
       { { "help", "plna" }, "valid:" },
+      { { "plan", path, "--json", "--csv" }, "--json and --csv exclude each other" },
+      { { "plan", path, "--effort", "1 kg" }, "--effort" },
+      { { "measure", path, "x.wav", "--first", "0" }, "--first: 0 is not a whole number" },
     }
     for _, case in ipairs(cases) do
       local code, _, err = run(table.unpack(case[1]))
@@ -159,6 +162,32 @@ describe("the world refusing", function()
       assert.equal(3, code, table.concat(line, " ") .. ": " .. err)
       assert.truthy(err:find("^libration: ") and not err:find("traceback", 1, true))
     end
+  end)
+
+  it("ends with 3 for a script that is not there", function()
+    local code, _, err = run(folder .. "/missing.lua")
+    assert.equal(3, code)
+    assert.truthy(err:find("missing.lua: no such script", 1, true), err)
+  end)
+
+  it("is one JSON document with --json, as wrong use is", function()
+    local path = write("good.demand", good)
+    for _, case in ipairs {
+      { 3, "world", { "plan", "/no/such/file\xff", "--json" } },
+      { 3, "world", { "plan", path, "--json", "--save", "/no/such/folder/plan" } },
+      { 2, "misuse", { "plan", path, "--within", "soon", "--json" } },
+      { 2, "misuse", { "plan", path, "--json", "--budget", "bass" } },
+      { 2, "misuse", { "prove", "--json" } },
+      { 3, "world", { "measure", "--json", "/no/such/plan", "x.wav" } },
+    } do
+      local code, said, err = run(table.unpack(case[3]))
+      local label = table.concat(case[3], " ") .. ": " .. said .. err
+      assert.equal(case[1], code, label)
+      local facts = cjson.decode(said)
+      assert.equal(case[2], facts.code, label)
+      assert.truthy(err:find("libration: ", 1, true) and #facts.error > 5, label)
+    end
+    assert.equal("", (select(2, run("plan", "--", "--json"))))
   end)
 
   it("shows when standard output is full", function()
@@ -222,6 +251,90 @@ describe("plan, prove, measure", function()
     assert.truthy(out:find("samples", 1, true))
     code = run("measure", folder .. "/tone.plan", write("no.wav", "no sound"))
     assert.equal(2, code)
+  end)
+
+  it("measure exits 1 where a line is outside its demand, and reads from --first", function()
+    local path, lb = folder .. "/tracked.plan", require "libration"
+    assert.equal(0, (run("plan", write("good.demand", good), "--save", path, "--readings",
+      "tracked")))
+    local plan = assert(lb.load_plan(path))
+    local x, tone = {}, assert(plan:replay { seed = 3, trial = 0 }):values()
+    for i = 1, 50 + plan.samples do x[i] = i <= plan.samples and 0 or 0.5 end
+    for i = 1, plan.samples do x[#x + 1] = tone[i] end
+    local record = lb.record.new { rate = "8 kS/s", unit = "V", samples = x }
+    assert(record:write(folder .. "/late.csv"))
+    local code, out, err = run("measure", path, folder .. "/late.csv")
+    assert.equal(1, code)
+    assert.truthy(err:find("bounds do not hold: tone\n", 1, true), err)
+    assert.truthy(out:find("(edge)  (*)", 1, true), out)
+    assert.truthy(out:find("Read: samples 1.." .. plan.samples .. " of " .. #x, 1, true), out)
+    code, out = run("measure", path, folder .. "/late.csv", "--json")
+    assert.same({ 1, false }, { code, cjson.decode(out).holds })
+    local first = tostring(plan.samples + 51)
+    code, out, err = run("measure", path, folder .. "/late.csv", "--first", first, "--json")
+    assert.same({ 0, "" }, { code, err })
+    local want = record:measure(plan, { first = plan.samples + 51 })
+    assert.same({ true, plan.samples + 51 }, { want.holds, cjson.decode(out).first })
+    assert.equal(want.lines[1].amplitude, cjson.decode(out).lines[1].amplitude)
+  end)
+
+  it("measure gives a full scale only to what holds shares of one", function()
+    local path, lb = folder .. "/tone.plan", require "libration"
+    assert.equal(0, (run("plan", write("good.demand", good), "--save", path)))
+    local record = assert(lb.load_plan(path)):replay { seed = 3, trial = 0 }
+    local seen = {}
+    for i, ending in ipairs { "wav", "flac", "csv", "sigmf-meta", "h5" } do
+      local name = folder .. "/same." .. ending
+      assert(record:write(name, ending == "flac" and { bits = 24 } or nil))
+      local code, out, err = run("measure", path, name, "--json")
+      assert.same({ 0, "" }, { code, err }, ending .. out)
+      seen[i] = cjson.decode(out).lines[1].amplitude
+      assert.near(seen[1], seen[i], 1e-4, ending)
+    end
+    local code, _, err = run("measure", path, folder .. "/same.csv", "--full-scale", "1 V")
+    assert.equal(2, code)
+    assert.truthy(err:find("takes no full_scale", 1, true), err)
+    code, _, err = run("measure", path, folder .. "/same.wav", "--first", "2", "--json")
+    assert.same({ 1, "" }, { code, err })
+  end)
+
+  it("a refused measurement says its code", function()
+    local path, lb = folder .. "/tone.plan", require "libration"
+    assert.equal(0, (run("plan", write("good.demand", good), "--save", path)))
+    local slow = lb.record.new { rate = "4 kS/s", unit = "V", samples = { 0.5, -0.5, 0.25 } }
+    assert(slow:write(folder .. "/slow.wav"))
+    local code, out = run("measure", path, folder .. "/slow.wav", "--full-scale", "1 V", "--json")
+    assert.same({ 1, "wrong_rate" }, { code, cjson.decode(out).code })
+  end)
+
+  it("a plan never replaces a file it is made of", function()
+    local path = write("keep.demand", good)
+    os.execute(("ln -sf keep.demand %s/alias"):format(folder))
+    for _, name in ipairs { "keep.demand", "alias", "../" .. folder:match "[^/]*$" .. "/alias" } do
+      local code, _, err = run("plan", path, "--save", folder .. "/" .. name)
+      assert.equal(2, code, err)
+      assert.truthy(err:find(name .. " would overwrite " .. path, 1, true), err)
+    end
+    assert.equal(good, read(path))
+    assert.equal(0, (run("plan", path, "--save", folder .. "/keep.plan")))
+  end)
+
+  it("a saved plan given to plan points to prove and measure", function()
+    local path = folder .. "/given.plan"
+    assert.equal(0, (run("plan", write("good.demand", good), "--save", path)))
+    local code, _, err = run("plan", path)
+    assert.equal(2, code)
+    assert.truthy(err:find("libration prove " .. path, 1, true), err)
+    assert.truthy(err:find("libration measure " .. path, 1, true), err)
+  end)
+
+  it("a search that gave up points to --effort", function()
+    local hard = good:gsub("2 %%", "0.1 %%")
+      :gsub('"8 kS/s"', '"8 kS/s", "16 kS/s", "32 kS/s", "64 kS/s"')
+    local code, out, err = run("plan", write("hard.demand", hard), "--effort", "1 us")
+    assert.is_true(code == 0 or code == 1, err)
+    assert.truthy(out:find("effort_s", 1, true), out)
+    assert.truthy(err:find("--effort TIME", 1, true), err)
   end)
 
   it("windows are listed for people and machines", function()

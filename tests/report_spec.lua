@@ -179,6 +179,11 @@ describe("JSON", function()
     assert.is_true(back.holds)
     assert.equal(3, #back.lines[1].budget)
   end)
+
+  it("holds what is false, and leaves out what is no fact", function()
+    local back = facts.of { holds = false, lines = { { outside = false, draw = print } } }
+    assert.same({ holds = false, lines = { { outside = false } } }, back)
+  end)
 end)
 
 describe("CSV", function()

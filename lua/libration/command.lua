@@ -53,6 +53,7 @@ local plan_options = {
   readings = { value = "LIST", text = "readings to choose from: tracked, bin, or both by comma" },
   windows = { value = "LIST", text = "windows to choose from, by comma, or all" },
   share = { value = "SHARE", text = "share of each tolerance that errors may take: \"80 %\"" },
+  effort = { value = "TIME", text = "search at most about this long (10 s); notes say effort_s" },
   undersample = { text = "lines may stand above half the rate" },
 }
 
@@ -77,6 +78,10 @@ local function read_plan_options(found)
   if found.within then
     checked("within", found.within, units.seconds)
     options.within = found.within
+  end
+  if found.effort then
+    checked("effort", found.effort, units.seconds)
+    options.effort_s = found.effort
   end
   if found.share then
     checked("share", found.share, units.relative)
@@ -135,7 +140,26 @@ local function draw(plan, folder)
   end
 end
 
-local function show_plan(plan, overview, found)
+-- A search that gave up says so in a note, which names the option of scripts.
+local function hint_effort(answer)
+  for _, note in ipairs(answer.notes or {}) do
+    if tostring(note):find("effort_s", 1, true) then
+      io.stderr:write("libration: --effort TIME lets the search take longer (the effort_s of "
+        .. "the note), such as --effort \"60 s\"\n")
+      return
+    end
+  end
+end
+
+local function budget_text(plan, which)
+  local fine, text = pcall(report.text.budget, plan, tonumber(which) or which)
+  if not fine then
+    stop("--budget: " .. tostring(text):gsub("^.-%.lua:%d+: ", ""):gsub("^line: ", ""))
+  end
+  return text
+end
+
+local function show_plan(plan, overview, found, budget)
   if found.json then
     out_json(plan)
   elseif found.csv then
@@ -143,12 +167,28 @@ local function show_plan(plan, overview, found)
   else
     out((overview and overview .. "\n" or "") .. tostring(plan))
   end
-  if found.budget then
-    local fine, text = pcall(report.text.budget, plan, tonumber(found.budget) or found.budget)
-    if not fine then
-      stop((tostring(text):gsub("^.-%.lua:%d+: ", "--budget: ")))
-    elseif not found.json then
-      out("\n" .. text)
+  if budget and not found.json then
+    out("\n" .. budget)
+  end
+  hint_effort(plan)
+end
+
+local function show_refusal(refusal, found)
+  if found.json then
+    out_json(refusal)
+  else
+    out(tostring(refusal))
+  end
+  hint_effort(refusal)
+  return FAILS
+end
+
+-- A saved plan never replaces the data it was made of.
+local function check_save(path, operands)
+  for _, operand in ipairs(operands) do
+    if inputs.same_file(path, operand) then
+      stop(("--save %s would overwrite %s, the data file that is planned; give another name")
+        :format(path, operand))
     end
   end
 end
@@ -169,24 +209,26 @@ for name, option in pairs(plan_options) do
   commands.plan.options[name] = option
 end
 
+-- Everything that may go wrong comes before the first word of the answer.
 local function run_plan(found, operands)
+  if found.json and found.csv then
+    stop("--json and --csv exclude each other; give one")
+  elseif found.save then
+    check_save(found.save, operands)
+  end
   local data = need(inputs.data(operands))
   local plan, refusal, overview = plan_all(data, read_plan_options(found))
   if not plan then
-    if found.json then
-      out_json(refusal)
-    else
-      out(tostring(refusal))
-    end
-    return FAILS
+    return show_refusal(refusal, found)
   end
-  show_plan(plan, overview, found)
+  local budget = found.budget and budget_text(plan, found.budget)
   if found.save then
     need(plan:save(found.save))
   end
   if found.plots then
     draw(plan, found.plots)
   end
+  show_plan(plan, overview, found, budget)
   return HOLDS
 end
 
@@ -221,12 +263,7 @@ local function run_prove(found, operands)
   local workers = whole(found, "workers", 1, 256)
   local plan, refusal = planned(found, operands)
   if not plan then
-    if found.json then
-      out_json(refusal)
-    else
-      out(tostring(refusal))
-    end
-    return FAILS
+    return show_refusal(refusal, found)
   end
   local proof = prover.prove(plan, { trials = trials, seed = seed, workers = workers })
   if found.json then
@@ -243,13 +280,26 @@ commands.measure = {
   options = {
     json = { text = "the measurement as one JSON document" },
     channel = { value = "N", text = "channel of the file, from 1; needed when it has several" },
+    first = { value = "N", text = "number of the first sample that is read, from 1 (1)" },
     ["full-scale"] = { value = "QUANTITY", text = "largest value the file can hold: \"5 V\"" },
   },
   least = 2, most = 2,
 }
 
+-- The lines whose bounds do not hold, on standard error.
+local function warn_outside(result)
+  local names = {}
+  for _, line in ipairs(result.lines) do
+    names[#names + 1] = line.outside and line.name or nil
+  end
+  io.stderr:write(("libration: outside the amplitudes that were demanded, so that the bounds do "
+    .. "not hold: %s\n"):format(table.concat(names, ", ")))
+  return FAILS
+end
+
 local function run_measure(found, operands)
   local channel = whole(found, "channel", 1, 10000)
+  local first = whole(found, "first", 1, math.maxinteger)
   local plan = need(inputs.plan(operands[1]))
   local scale = found["full-scale"]
   if scale then
@@ -259,10 +309,10 @@ local function run_measure(found, operands)
   end
   local record = need(inputs.record(operands[2], plan, { channel = channel,
     full_scale = scale }))
-  local result, message = measure.measure(record, plan)
+  local result, message, code = measure.measure(record, plan, { first = first })
   if not result then
     if found.json then
-      out_json { kind = "refused", holds = false, message = message }
+      out_json { kind = "refused", holds = false, message = message, code = code }
     else
       out(message)
     end
@@ -275,7 +325,7 @@ local function run_measure(found, operands)
   else
     out(tostring(result))
   end
-  return HOLDS
+  return result.holds and HOLDS or warn_outside(result)
 end
 
 commands.windows = { options = { json = { text = "as one JSON document" } }, least = 0, most = 0 }
@@ -338,11 +388,12 @@ commands.windows.run = run_windows
 commands.help.run = run_help
 commands.prompt.run = run_prompt
 
-local function wants_help(line)
+-- Whether an option stands among the words, before any --.
+local function says(line, option, short)
   for _, word in ipairs(line) do
     if word == "--" then
       return false
-    elseif word == "--help" or word == "-h" then
+    elseif word == option or word == short then
       return true
     end
   end
@@ -358,7 +409,7 @@ local function dispatch(line, version)
     return name and run_help({}, {}) or stop("say what to do\n" .. help.general)
   end
   local command, rest = command_of(name), table.move(line, 2, #line, 1, {})
-  if wants_help(rest) then
+  if says(rest, "--help", "-h") then
     return run_help({}, { name })
   end
   local found, operands = words.read(rest, command.options)
@@ -383,6 +434,19 @@ local function explain(problem)
     .. tostring(problem), 2), code = 70 }
 end
 
+local kinds = { [MISUSE] = "misuse", [WORLD] = "world", [70] = "internal", [130] = "stopped" }
+
+-- What went wrong, for a machine; the code is the exit code's name. Of text that is
+-- not UTF-8 (a file's name, say) all bytes beyond ASCII become question marks.
+local function error_json(problem)
+  local message = problem.message
+  if not utf8.len(message) then
+    message = message:gsub("[\128-\255]", "?")
+  end
+  io.stdout:write(json.encode { error = message, code = kinds[problem.code] },
+    "\n")
+end
+
 --- Runs a command line.
 -- @param line table: the words after the command's own name
 -- @param version string: of the library
@@ -396,6 +460,9 @@ function M.run(line, version)
     return result
   end
   io.stderr:write("libration: ", result.message, "\n")
+  if says(line, "--json") then
+    error_json(result)
+  end
   return result.code
 end
 

@@ -80,7 +80,8 @@ function M.check(rec, plan, k, first)
     return refuse("wrong_unit", "its unit is %s, the demand's is %s", unit, plan.demand.unit)
   end
   local stretch = rec:part { first = first, count = needed }
-  local values, fine = stretch:values(channel), nil
+  local values = stretch:values(channel)
+  local fine
   fine, message, code = check_values(stretch, plan, channel, values, first)
   if not fine then return nil, message, code end
   return channel, values

@@ -11,7 +11,7 @@ guaranteed to hold every tolerance, or what stands in the way.
   libration SCRIPT.lua [WORD...]   run a Lua script with the library at hand
   libration plan FILE...           plan what the data files demand
   libration prove FILE...|PLAN     simulate a plan and attack its error bounds
-  libration measure PLAN RECORD    measure a sound file by a saved plan
+  libration measure PLAN RECORD    measure a record by a saved plan
   libration windows                list the windows a plan may use
   libration prompt                 the prompt, also when input is no terminal
   libration help [COMMAND]         this text, or all about one command
@@ -28,10 +28,12 @@ A first plan: save these lines as pump.demand, then  libration plan pump.demand
   digitizer = { rates = { "6.4 kS/s", "12.8 kS/s" }, bits = 24, range = "5 V",
                 timebase = "25 ppm" }
 
-Exit codes: 0 it holds, 1 it does not (refused, or a bound was violated),
-2 wrong use or a mistake in a data file, 3 the world refused (a file, a disk).
-Results go to standard output; with --json exactly one JSON document, messages
-to standard error. Advisory only: a plan is a calculation, not a safety device.]]
+Exit codes: 0 it holds, 1 it does not (refused, a bound was violated, or a
+line measured is outside its demand), 2 wrong use or a mistake in a data file,
+3 the world refused (a file, a disk). Results go to standard output; with
+--json exactly one JSON document (with exit codes 2 and 3 "error" and "code"),
+messages to standard error. Advisory only: a plan is a calculation, not a
+safety device.]]
 
 local heads = {
   plan = { "plan FILE... [options]",
@@ -43,9 +45,11 @@ local heads = {
       .. "adversary look for the worst case, and counts violations of the promised bounds.\n"
       .. "Takes a saved plan, or data files that are planned first." },
   measure = { "measure PLAN RECORD [options]",
-    "Measures every line of a saved plan in a sound file (WAV, FLAC, Ogg) with its\n"
-      .. "uncertainty, or refuses the record and says why. Without --full-scale the file's full\n"
-      .. "scale is taken to be the range of the plan's digitizer." },
+    "Measures every line of a saved plan in a record (WAV, FLAC, Ogg, CSV and whatever else\n"
+      .. "lb.record.read reads) with its uncertainty, or refuses the record and says why. A sound\n"
+      .. "file holds shares of a full scale, which without --full-scale is taken to be the range\n"
+      .. "of the plan's digitizer. Exit code 1 when the record is refused, or when a line is\n"
+      .. "outside the amplitudes that were demanded." },
   windows = { "windows [options]", "Lists the windows with their figures of merit." },
   prompt = { "prompt", "Reads Lua, runs it, prints the results; lb is the library, help() helps.\n"
     .. "Ctrl-C stops what runs, Ctrl-D leaves." },

@@ -1,6 +1,8 @@
 --- What the command reads: data files, saved plans, sound files.
 -- Each function returns what it read, or nil, message, and the exit code.
 
+local lfs = require "lfs"
+
 local inert = require "libration.inert"
 local load = require "libration.load"
 local planner = require "libration.plan"
@@ -33,6 +35,18 @@ local function add(all, data, path)
   return true
 end
 
+-- As load.load, but a saved plan is told from a file with a mistake.
+local function read_data(path)
+  local data, message, code = inert.read_file(path)
+  if not data then
+    return nil, message, code
+  elseif data.plan ~= nil then
+    return nil, ("%s is a saved plan, there is nothing left to plan: libration prove %s, or "
+      .. "libration measure %s RECORD"):format(path, path, path), "format"
+  end
+  return load.interpret(data, path)
+end
+
 --- Reads data files that together hold one demand and its digitizers.
 -- @param paths table: list of paths
 -- @return table: demand, digitizers; or nil, message, exit code. The message lists
@@ -43,7 +57,7 @@ end
 function M.data(paths)
   local all, complaints, worst = { digitizers = {} }, {}, 0
   for _, path in ipairs(paths) do
-    local data, message, code = load.load(path)
+    local data, message, code = read_data(path)
     if data then
       data, message, code = add(all, data, path)
     else
@@ -86,22 +100,32 @@ function M.plan(path)
   return plan
 end
 
--- How much of the demand's unit the full scale of a file is.
-local function full_scale(plan, given)
-  if given then
-    return given
+--- Whether two names lead to one file, through links and any spelling of the path.
+-- @param one string: a path
+-- @param other string: a path
+-- @return boolean: false also where one of them leads to nothing
+-- @usage
+-- local same = require("libration.command.inputs").same_file
+-- assert(same("/", "/../") and not same("/", "/no/such/file"))
+function M.same_file(one, other)
+  local a, b = lfs.attributes(one), lfs.attributes(other)
+  return a ~= nil and b ~= nil and a.dev == b.dev and a.ino == b.ino
+end
+
+-- Whether a file holds shares of a full scale, or codes, rather than values.
+local function needs_scale(path, options)
+  local found, message, code = record.open(path, options)
+  if not found then
+    return nil, message, code
   end
-  local digitizer, what = plan.digitizer, plan.demand
-  if not digitizer.range then
-    return nil
-  elseif digitizer.range_unit == what.unit then
-    return digitizer.range
-  end
-  return what.sensitivity and digitizer.range / what.sensitivity
+  local needs = found.channels[1].unit == "FS"
+  found:close()
+  return needs
 end
 
 --- Reads the record that a plan is to be measured in.
--- @param path string: a sound file
+-- A full scale is given only to files that hold codes or shares of one.
+-- @param path string: a file of any format that lb.record.read reads
 -- @param plan plan: says unit, rate and, unless given, the full scale
 -- @param options table: channel (integer), full_scale (quantity), or empty
 -- @return record: or nil, message, exit code
@@ -110,13 +134,18 @@ end
 -- local plan = { demand = { unit = "V" }, digitizer = {}, rate = fraction(8000) }
 -- assert(select(3, inputs.record("/no/such/file.wav", plan, { full_scale = 1 })) == 3)
 function M.record(path, plan, options)
-  local scale = full_scale(plan, options.full_scale)
-  if not scale then
+  local exact = plan.rate.denominator ~= 1 and plan.rate or nil
+  local needs, message, code = needs_scale(path, { channel = options.channel, rate = exact })
+  if needs == nil then
+    return nil, message, M.exit_code(code)
+  end
+  local scale = options.full_scale or needs and plan.front.range or nil
+  if needs and not scale then
     return nil, "the plan's digitizer states no range in " .. plan.demand.unit
       .. ": say --full-scale, the largest value that the file can hold", M.MISUSE
   end
-  local exact = plan.rate.denominator ~= 1 and plan.rate or nil
-  local found, message, code = record.read(path, { channel = options.channel, rate = exact,
+  local found
+  found, message, code = record.read(path, { channel = options.channel, rate = exact,
     unit = plan.demand.unit, full_scale = scale })
   if not found then
     return nil, message, M.exit_code(code)

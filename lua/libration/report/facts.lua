@@ -20,9 +20,10 @@ local opaque = { ["function"] = true, thread = true, userdata = true }
 -- A copy without functions, methods and what names with "_" keep private.
 local function plain(value, depth)
   if base.is_fraction(value) or type(value) ~= "table" then
-    local kind = type(value)
-    local sayable = base.is_fraction(value) or not opaque[kind]
-    return sayable and value or nil
+    if not base.is_fraction(value) and opaque[type(value)] then
+      return nil
+    end
+    return value -- false as well
   end
   local copy, named = {}, false
   for key, item in next, value do
