@@ -8,6 +8,8 @@ local input = require "libration.bands.input"
 local mains = require "libration.bands.mains"
 local repeats = require "libration.bands.repeats"
 local options = require "libration.options"
+local result = require "libration.report.result"
+local shown = require "libration.bands.shown"
 local windows = require "libration.window"
 
 local M = {}
@@ -87,6 +89,8 @@ function Levels:__tostring()
     self.total_db)
   return table.concat(lines, "\n")
 end
+
+shown.levels(Levels)
 
 -- The bands asked for, or all that the lines resolve; nil and why.
 local function bands_of(read, resolution_hz, top_hz)
@@ -332,6 +336,16 @@ end
 -- assert(k.segments == 128 and math.abs(k.values[60]) < 5 * k.noise_sigma)
 function M.kurtosis(x, spec)
   return repeats.kurtosis(x, spec)
+end
+
+--- A result again from the text that its json() wrote.
+-- @param text string: JSON
+-- @return table: the result with its methods; or nil, message, code ("format")
+-- @usage
+-- local c = lb.bands.cepstrum(lb.samples.new { 1, 0, 0.5, 0 }, { rate = 8 })
+-- assert(lb.bands.from_json(c:json()).values == c.values)
+function M.from_json(text)
+  return result.read(text)
 end
 
 return M

@@ -7,6 +7,7 @@
 -- quadrature, clause 5.1; expanded with k = 2).
 
 local core = require "libration.core"
+local attach = require("libration.report.result").attach
 local record = require "libration.record"
 local window = require("libration.window").window
 
@@ -277,5 +278,49 @@ function M.text(m)
 end
 
 Measurement.__tostring = M.text
+
+local function shown_lists(m)
+  local l = { hz = {}, amplitude = {}, low = {}, high = {}, bound = {}, expanded = {}, names = {} }
+  for i, line in ipairs(m.lines) do
+    l.hz[i], l.amplitude[i], l.bound[i] = line.hz, line.amplitude, line.bound
+    l.low[i], l.high[i] = line.amplitude - line.bound, line.amplitude + line.bound
+    l.expanded[i] = line.expanded
+    l.names[i] = { name = line.name, hz = line.hz, y = line.amplitude,
+                   kind = line.outside and "interferer" or "line" }
+  end
+  return l
+end
+
+local function picture(m)
+  local l, x = shown_lists(m), { label = "frequency", unit = "Hz", spread = true }
+  return { title = "Measured lines",
+    below = ("by plan %s: %s S/s, %d samples, averages %d; names in orange: outside the demand")
+      :format(tostring(m.identity or "without identity"):sub(1, 12), tostring(m.rate), m.samples,
+        m.averages),
+    panels = {
+      { x = x, y = { label = "peak amplitude", unit = m.unit, log = true }, share = 2,
+        names = l.names, curves = { { kind = "points", x = l.hz, y = l.amplitude, low = l.low,
+          high = l.high, name = "amplitude, with the most it may be wrong by" } } },
+      { x = x, y = { label = "uncertainty", unit = m.unit, log = true }, curves = {
+        { kind = "points", role = "limit", x = l.hz, y = l.bound,
+          name = ("worst error, k = %g"):format(m.coverage) },
+        { kind = "points", role = "other", x = l.hz, y = l.expanded,
+          name = "expanded uncertainty, k = 2" } } } } }
+end
+
+local function cells(m)
+  local rows, head = {}, function(what) return ("%s (%s)"):format(what, m.unit) end
+  for i, l in ipairs(m.lines) do
+    rows[i] = { l.name, l.hz, l.hz_bound, l.amplitude, l.bound, l.systematic, l.random, l.standard,
+                l.expanded, l.phase, l.outside and "yes" or "no" }
+  end
+  return { "line", "frequency (Hz)", "worst error of it (Hz)", head "peak amplitude",
+    head "worst error", head "systematic", head "random, standard deviation",
+    head "standard uncertainty", head "expanded uncertainty, k = 2", "phase (rad)",
+    "outside the demand" }, rows
+end
+
+attach(Measurement, { picture = picture, table = cells,
+  integers = { "samples", "averages", "channel" } })
 
 return M

@@ -4,9 +4,10 @@ local csv = require "libration.report.csv"
 local facts = require "libration.report.facts"
 local json = require "libration.json"
 local plot = require "libration.report.plot"
+local result = require "libration.report.result"
 local text = require "libration.report.text"
 
-local M = { csv = csv, facts = facts, plot = plot, text = text }
+local M = { csv = csv, facts = facts, plot = plot, result = result, text = text }
 
 --- A plan, refusal, proof or measurement as one JSON document.
 -- @param value table: what lb.plan, plan:prove or record:measure returned

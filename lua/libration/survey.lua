@@ -7,6 +7,7 @@
 local core = require "libration.core"
 local cross = require "libration.survey.cross"
 local record = require "libration.record"
+local result = require "libration.report.result"
 local setting = require "libration.survey.setting"
 local spectrum = require "libration.survey.spectrum"
 local units = require "libration.units"
@@ -346,6 +347,16 @@ function M.lines(source, options)
   local averages, message, code = M.averages(source, options)
   if not averages then return nil, message, code end
   return averages:lines()
+end
+
+--- A result again from the text that its json() wrote.
+-- @param text string: JSON
+-- @return table: the result with its methods; or nil, message, code ("format")
+-- @usage
+-- local s = lb.survey.lines(lb.samples.make(64, math.sin), { rate = 8, segment = 32 })
+-- assert(lb.survey.from_json(s:json()).values[5] == s.values[5])
+function M.from_json(text)
+  return result.read(text)
 end
 
 return M

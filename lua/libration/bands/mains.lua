@@ -3,6 +3,7 @@
 local core = require("libration.core").bands
 local input = require "libration.bands.input"
 local options = require "libration.options"
+local shown = require "libration.bands.shown"
 
 local M = {}
 
@@ -26,6 +27,8 @@ function Groups:__tostring()
     100 * self.thd, 100 * self.thd_group, 100 * self.thd_subgroup)
   return table.concat(lines, "\n")
 end
+
+shown.groups(Groups)
 
 -- Samples of a window of whole cycles; nil and why.
 local function window_length(rate, read, cycles, n)

@@ -3,6 +3,7 @@
 local libration = require "libration.core"
 local input = require "libration.bands.input"
 local options = require "libration.options"
+local shown = require "libration.bands.shown"
 local windows = require "libration.window"
 
 local core, transform = libration.bands, libration.spectrum
@@ -70,6 +71,8 @@ function Kurtosis:__tostring()
       return ("  %14.6f %12.4f"):format((i - 1) * self.step_hz, self.values[i])
     end)
 end
+
+shown.repeats(Cepstrum, EnvelopeSpectrum, Kurtosis)
 
 local cepstrum_schema = input.schema {
   kind = { options.choice { "real", "power" }, default = "real" },

@@ -7,6 +7,7 @@ local fraction = require "libration.fraction"
 local json = require "libration.json"
 local layout = require("libration.report.table").layout
 local round = require("libration.report.numbers").round
+local shown = require "libration.lines.shown"
 
 local cjson = require "cjson"
 
@@ -86,8 +87,10 @@ function Result:__tostring()
 end
 
 local function revive(value)
-  if type(value) ~= "table" then
-    return value ~= cjson.null and value or nil
+  if value == cjson.null then
+    return nil
+  elseif type(value) ~= "table" then
+    return value
   elseif type(value.exact) == "string" and type(value.value) == "number" then
     return fraction.new(value.exact)
   end
@@ -121,5 +124,7 @@ function M.read(text)
   end
   return setmetatable(value, Result)
 end
+
+shown.results(Result)
 
 return M

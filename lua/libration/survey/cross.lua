@@ -5,6 +5,7 @@
 local core = require("libration.core").spectrum
 local samples = require("libration.core").samples
 local setting = require "libration.survey.setting"
+local shown = require "libration.survey.shown"
 
 local M = {}
 
@@ -157,6 +158,8 @@ function Response:__tostring()
       phase[k])
   end)
 end
+
+shown.cross(Cross, Coherence, Response)
 
 local function check_pair(averages, from, to)
   local count = #averages.names

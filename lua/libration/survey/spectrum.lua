@@ -7,6 +7,7 @@
 local core = require("libration.core").spectrum
 local new_samples = require("libration.core").samples.new
 local setting = require "libration.survey.setting"
+local shown = require "libration.survey.shown"
 
 local M = {}
 
@@ -254,5 +255,7 @@ function Spectrum:__tostring()
   end
   return table.concat(rows, "\n")
 end
+
+shown.spectrum(Spectrum)
 
 return M
