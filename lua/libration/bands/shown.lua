@@ -113,7 +113,8 @@ local function cepstrum_picture(r)
       curves = { { kind = "line", x = x, y = half, name = "cepstrum" } } } } }
 end
 
--- Twice the width of the band at most: an envelope does not change faster.
+-- To twice the width of the band: a squared envelope has nothing beyond once the width, the
+-- envelope itself little.
 local function envelope_picture(r)
   local most = math.min((#r.amplitude - 1) * r.step_hz,
     2 * math.max(r.to_hz - r.from_hz, 10 * r.step_hz))
@@ -121,7 +122,8 @@ local function envelope_picture(r)
       r.squared and "squared " or "", r.from_hz, r.to_hz),
     below = ("%s window, lines %.6g Hz apart, mean %s removed; shown to %.6g Hz"):format(
       r.window, r.step_hz, with_unit("%.6g", r.mean, r.unit), most),
-    panels = { { x = { label = "frequency", unit = "Hz", least = 0, most = most }, y = { label = "peak amplitude", unit = r.unit, least = 0 },
+    panels = { { x = { label = "frequency", unit = "Hz", least = 0, most = most },
+      y = { label = "peak amplitude", unit = r.unit, least = 0 },
       curves = { { kind = "line", x = places(#r.amplitude, r.step_hz), y = r.amplitude,
                    name = "amplitude of the lines" } } } } }
 end
