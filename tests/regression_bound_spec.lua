@@ -79,6 +79,31 @@ describe("a bound", function()
   end)
 end)
 
+describe("windows of a plan", function()
+  local demand = lb.demand { unit = "V", lines = { LINE } }
+  local digitizer = lb.digitizer { rates = { "1 kHz" } }
+
+  -- Symptom: windows = "all" was refused with "an argument is outside its domain".
+  -- Cause: one shape has no limit for long records, where the search begins.
+  -- Fix: "all" are those that plans can use; to name the other is misuse.
+  it("are all that can be used, when all are asked for", function()
+    assert.is_truthy(lb.plan(demand, digitizer, { windows = "all" }))
+    local ok, message = pcall(lb.plan, demand, digitizer, { windows = "dolph_chebyshev" })
+    assert.is_false(ok)
+    assert.matches("no limit for long records", message)
+  end)
+
+  -- Symptom: { "kaiser", "ten" } planned with the default parameter.
+  -- Cause: what is no number became none.
+  -- Fix: it is misuse.
+  it("have numbers for parameters", function()
+    local ok, message = pcall(lb.plan, demand, digitizer, { windows = { { "kaiser", "ten" } } })
+    assert.is_false(ok)
+    assert.matches("ten", message)
+    assert.is_truthy(lb.plan(demand, digitizer, { windows = { { "kaiser", 9 } } }))
+  end)
+end)
+
 describe("a range", function()
   -- Symptom: plans whose records clip where the gain is at its limit, or where a
   -- filter lifts a source.

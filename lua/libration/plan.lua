@@ -141,7 +141,7 @@ end
 -- @param demand table: from lb.demand
 -- @param digitizer table: from lb.digitizer
 -- @param options table: within (total time, "60 s"), readings ("tracked", "bin"
--- or a list; default both), windows (name, list, or "all"; default a choice of
+-- or a list; default both), windows (name, list, or "all" that plans can use; default
 -- eleven), undersample (lines may stand above half the rate; default false),
 -- share (of each tolerance that the error may take, default "100 %"),
 -- least_rate, most_rate, effort_s (seconds of search after which it gives up,

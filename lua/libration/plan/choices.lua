@@ -14,20 +14,26 @@ local USUAL = {
   "hft116d", "hft144d", "hft196d", "hft248d",
 }
 
+-- Windows the search cannot use: no limit for long records to start from.
+local LIMITLESS = { dolph_chebyshev = true }
+
 local function window_list(value, path, mistakes, known)
   local list = {}
   for i, entry in ipairs(value) do
     local place = options.join(path, i)
     local row = type(entry) == "table" and entry or { entry }
-    if known[row[1]] then
-      list[#list + 1] = { name = row[1], parameter = tonumber(row[2]) }
+    if row[2] ~= nil and type(row[2]) ~= "number" then
+      mistakes:add(place, options.show(row[2]) .. " is no parameter of a window; give a number")
+    elseif known[row[1]] then
+      list[#list + 1] = { name = row[1], parameter = row[2] }
     else
       local names = {}
       for name in pairs(known) do
         names[#names + 1] = name
       end
       table.sort(names)
-      mistakes:add(place, ("%s is no window; windows: %s"):format(options.show(row[1]),
+      mistakes:add(place, ("%s is no window%s; windows: %s"):format(options.show(row[1]),
+        LIMITLESS[row[1]] and " that plans can use (its shape has no limit for long records)" or "",
         table.concat(names, ", ")))
     end
   end
@@ -67,9 +73,12 @@ end
 -- local ok, message = pcall(choices.read, { witin = 3 }, { "hann" })
 -- assert(not ok and message:find "within")
 function M.read(given, all)
-  local known = {}
+  local known, usable = {}, {}
   for _, name in ipairs(all) do
-    known[name] = true
+    if not LIMITLESS[name] then
+      known[name] = true
+      usable[#usable + 1] = name
+    end
   end
   local usual = {}
   for _, name in ipairs(USUAL) do
@@ -85,7 +94,7 @@ function M.read(given, all)
   return options.take({
     within = { options.quantity(units.seconds, { above = 0, unit = "s" }) },
     readings = { readings_kind, default = { "tracked", "bin" } },
-    windows = { windows_kind(known, all), default = usual },
+    windows = { windows_kind(known, usable), default = usual },
     undersample = { options.boolean(), default = false },
     share = { share, default = 1 },
     least_rate = { options.quantity(rate, { above = 0, unit = "S/s" }) },
