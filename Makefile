@@ -145,6 +145,10 @@ install: all ## library, module and command under PREFIX (DESTDIR is honoured)
 	done
 	install -D -m 755 $(MODULE) $(INSTALL_LIB)/core.so
 	install -D -m 755 scripts/libration $(INSTALL_BIN)/libration
+	@case "$(PREFIX)" in /usr/local|/usr) ;; *) printf '%s\n' \
+	  'The command $(PREFIX)/bin/libration finds the library by itself; $(LUA) alone does not:' \
+	  '  export LUA_PATH="$(PREFIX)/share/lua/5.4/?.lua;$(PREFIX)/share/lua/5.4/?/init.lua;;"' \
+	  '  export LUA_CPATH="$(PREFIX)/lib/lua/5.4/?.so;;"' ;; esac
 
 uninstall: ## take away what install put there
 	rm -rf $(INSTALL_LUA)/libration $(INSTALL_LIB)

@@ -83,7 +83,7 @@ need(file.write(folder .. "/plan.json", need(lb.report.json(plan)) .. "\n"))
 need(file.write(folder .. "/lines.csv", lb.report.csv.plan(plan)))
 say(folder .. ": fold-map and spectrum (svg, png), pump-skid.wav, pump-skid.plan, plan.json, "
   .. "lines.csv, report.txt")
-say(("\nDone in %d s: %s"):format(os.time() - started,
+say(("\nThese %d steps took %d s: %s"):format(step, os.time() - started,
   proof.holds and "the plan holds." or "THE PLAN DOES NOT HOLD."))
 need(file.write(folder .. "/report.txt", table.concat(report, "\n") .. "\n"))
 os.exit(proof.holds and 0 or 1)

@@ -50,6 +50,8 @@ describe("the demo", function()
     assert.truthy(said:find("cannot be measured as demanded", 1, true))
     assert.truthy(said:find("holds every tolerance", 1, true))
     assert.truthy(said:find("the plan holds.", 1, true))
+    local _, steps = said:gsub("\n== Step %d+:", "")
+    assert.equal(steps, tonumber(said:match "\nThese (%d+) steps took %d+ s: "))
     for _, name in ipairs { "fold-map.svg", "fold-map.png", "spectrum.svg", "spectrum.png",
                             "pump-skid.wav", "pump-skid.plan", "plan.json", "lines.csv",
                             "report.txt" } do

@@ -7,13 +7,14 @@ local function run(command)
 end
 
 describe("installation #checks", function()
-  local root
+  local root, said
 
   setup(function()
     root = os.tmpname()
     os.remove(root)
     local ok, text = run("make -s install PREFIX=/opt/line DESTDIR=" .. root)
     assert(ok, text)
+    said = text
   end)
 
   teardown(function()
@@ -31,6 +32,18 @@ describe("installation #checks", function()
         assert(#lb.window("hann"):samples(8) == 8)']]):gsub("\n%s*", " "):format(
       prefix, prefix, prefix))
     assert(ok, text)
+  end)
+
+  it("says what plain Lua needs to find it, and that works", function()
+    local paths = said:gsub("/opt/line", root .. "/opt/line"):match "  (export LUA_PATH=.*\n)"
+    local ok, text = run("cd / && unset LUA_PATH_5_4 LUA_CPATH_5_4\n" .. paths
+      .. "lua5.4 -e 'print(#require(\"libration\").window(\"hann\"):samples(8))'")
+    assert(ok, text)
+    assert.are.equal("8\n", text)
+    ok, text = run("make -s install PREFIX=/usr/local DESTDIR=" .. root .. "/default")
+    assert(ok, text)
+    assert.are.equal("", text)
+    os.execute("rm -r " .. root .. "/default")
   end)
 
   it("holds every file of the library", function()

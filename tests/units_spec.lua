@@ -134,4 +134,16 @@ describe("quantities", function()
       assert.is_string(symbols.kind(unit.signature))
     end
   end)
+
+  it("are those that the README lists", function()
+    local file = assert(io.open("README.md"))
+    local list, ratios = file:read("a"):match "\nUnits: (.-), their products.-ratios are in (.-)%. An"
+    file:close()
+    local count = 0
+    for name in (list:gsub("%b()", "") .. ", " .. ratios:gsub(" or ", ", ")):gmatch "[^,%s]+" do
+      assert(units.parse("1 " .. name), name)
+      count = count + 1
+    end
+    assert.is_true(count > 15)
+  end)
 end)

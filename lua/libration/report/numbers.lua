@@ -150,15 +150,17 @@ end
 --- Small bar of a share.
 -- @param ratio number: 1 fills it
 -- @param width integer: columns, default 10
--- @return string: "####......"; "##########!" past the end; never empty unless 0
+-- @return string: "####......"; "##########!" past the end; a step begun is shown
+-- whole, but empty below half of the first one
 -- @usage
 -- assert(require("libration.report.numbers").bar(0.31) == "####......")
+-- assert(require("libration.report.numbers").bar(0.04) == "..........")
 function M.bar(ratio, width)
   width = width or 10
   if ratio ~= ratio or ratio > 1 then
     return ("#"):rep(width) .. "!"
   end
-  local full = math.ceil(ratio * width - 1e-9)
+  local full = ratio * width < 0.5 and 0 or math.ceil(ratio * width - 1e-9)
   return ("#"):rep(full) .. ("."):rep(width - full)
 end
 
