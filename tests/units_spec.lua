@@ -137,7 +137,8 @@ describe("quantities", function()
 
   it("are those that the README lists", function()
     local file = assert(io.open("README.md"))
-    local list, ratios = file:read("a"):match "\nUnits: (.-), their products.-ratios are in (.-)%. An"
+    local list, ratios = file:read("a"):match("\nUnits: (.-), their products"
+      .. ".-\nratios are in (.-)%. An")
     file:close()
     local count = 0
     for name in (list:gsub("%b()", "") .. ", " .. ratios:gsub(" or ", ", ")):gmatch "[^,%s]+" do

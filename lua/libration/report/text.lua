@@ -253,8 +253,8 @@ function M.plan(plan)
     lines[#lines + 1] = "Largest terms of the tightest line, "
       .. layout.safe(plan.lines[index].name)
     push(lines, budget_table(plan, plan.lines[index], 5, 2))
-    lines[#lines + 1] = "  systematic terms add, random ones (noise, quantisation, jitter noise) add"
-      .. " in squares"
+    lines[#lines + 1] = "  systematic terms add, random ones (noise, quantisation, jitter noise) "
+      .. "add in squares"
   end
   lines[#lines + 1] = ""
   notes(lines, plan.notes)
