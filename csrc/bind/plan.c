@@ -189,7 +189,7 @@ static void push_bound(lua_State *L, const lbr_case *c, size_t line,
  * @param rate number: S/s
  * @param mode integer: index into the problem's modes
  * @param samples integer: record length
- * @param care string: "joint" (default: one driver.s sources worst together) or
+ * @param care string: "joint" (default: sources of a driver worst at once) or
  *   "plain" (every source at its own worst place: looser, far quicker)
  * @return table: one row a line: own, others, sigma, hz_bound, sigma_hz,
  *   amplitude, error, tolerance, ratio, ratio_hz, search_low_hz,
