@@ -42,7 +42,8 @@ static int plan_fold(lua_State *L) {
  * assert(least == 43.2e6 and most == 44e6)
  */
 static int plan_fold_band(lua_State *L) {
-  double low = lbr_check_positive(L, 1), high = lbr_check_positive(L, 2), least, most;
+  double low = lbr_check_positive(L, 1), high = lbr_check_positive(L, 2);
+  double least, most;
   size_t zone = lbr_check_count(L, 3, 1, 1u << 30);
   luaL_argcheck(L, high > low, 2, "the upper edge must be above the lower");
   if (!lbr_fold_band(low, high, (unsigned)zone, &least, &most)) {
