@@ -279,3 +279,27 @@ describe("pictures of results", function()
     assert.same({ 12345, 6789 }, { seen[50], seen[-40] })
   end)
 end)
+
+describe("results of lines", function()
+  for _, kind in ipairs(line_kinds) do
+    it(kind[1] .. ": JSON reads back, CSV names the unit", function()
+      local r = assert(kind[2]())
+      local back = assert(lb.lines.from_json(r:json()))
+      assert.equal(r:json(), back:json())
+      assert.equal(r:csv(), back:csv())
+      local rows, unit = lb.report.csv.read(r:csv()), 0
+      assert.equal("unit", rows[1][#rows[1]])
+      for i = 2, #rows do
+        if rows[i][#rows[1]] == "m/s^2" then unit = unit + 1 end
+      end
+      assert.is_true(unit > 0)
+    end)
+  end
+
+  it("of noise alone are drawn too", function()
+    local x = lb.synth.noise { rate = RATE, samples = N, density = 0.003, seed = 1 }
+    local r = lb.lines.list(x, spec({ false_alarm = 1e-6 }, with_unit))
+    assert.equal(0, #r.lines)
+    assert(r:plot(folder .. "/a.svg"))
+  end)
+end)

@@ -207,7 +207,8 @@ function M.from_json(text)
 end
 
 --- The result as CSV (RFC 4180): names first, numbers that read back bit for bit.
--- @return string: a row per quantity or line
+-- @return string: a row per quantity or line; the last column is the unit: of the quantity, or of
+--   the amplitudes of the line (names of other columns end in theirs; phases are in rad)
 -- @usage
 -- local x = lb.samples.make(64, function(i) return math.cos(i) end)
 -- assert(lb.lines.sine(x, { rate = 64 }):csv():find "^quantity,value,standard_uncertainty,unit")

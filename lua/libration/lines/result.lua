@@ -73,8 +73,14 @@ end
 
 --- See Result:csv in lines.
 function M.csv(self)
-  local row = kinds[self.kind]
-  return csv.rows(row.columns, row.rows(self))
+  local row, rows = kinds[self.kind], {}
+  if row.columns[#row.columns] == "unit" then return csv.rows(row.columns, row.rows(self)) end
+  for i, line in ipairs(row.rows(self)) do -- a unit for amplitudes; the others say theirs
+    rows[i] = setmetatable({ unit = self.unit }, { __index = line })
+  end
+  local columns = table.move(row.columns, 1, #row.columns, 1, {})
+  columns[#columns + 1] = "unit"
+  return csv.rows(columns, rows)
 end
 
 --- See Result:json in lines.
@@ -104,7 +110,7 @@ end
 local function is_whole(value)
   return math.type(value.samples) == "integer" and type(value.unit) == "string"
     and pcall(kinds[value.kind].text, value)
-    and pcall(M.csv, value)
+    and pcall(M.csv, value) and pcall(shown.picture, value)
 end
 
 --- A result from what json() wrote.

@@ -108,9 +108,12 @@ function pictures.joint(r)
 end
 
 function pictures.orders(r)
+  local most = 0
+  for _, l in ipairs(r.lines) do most = math.max(most, 1.05 * l.order) end
   return { title = ("%d orders of a shaft at %.6g Hz"):format(#r.lines, r.speed_hz),
     below = ("%s; what is left: %.4g %s rms"):format(place_text(r), r.residual_rms, r.unit),
-    panels = { { x = { label = "order", unit = "per turn", least = 0 }, y = amplitude(r),
+    panels = { { x = { label = "order", unit = "per turn", least = 0, most = most },
+                 y = amplitude(r),
                  curves = { points(r.lines, "order", with_limits) } } } }
 end
 
@@ -150,9 +153,14 @@ function pictures.quality(r)
       level(x, r.noise_rms, "noise without harmonics, rms") } } } }
 end
 
+--- What is drawn of a result of lines.
+function M.picture(r)
+  return pictures[r.kind](r)
+end
+
 --- Gives results of lines their pictures.
 function M.results(class)
-  return attach(class, { picture = function(r) return pictures[r.kind](r) end })
+  return attach(class, { picture = M.picture })
 end
 
 return M

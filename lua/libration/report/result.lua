@@ -140,7 +140,9 @@ local function make(value)
   end
   if not base.is_fraction(out.rate) and entry.spec.rate then error("no exact rate", 0) end
   setmetatable(out, entry.class)
-  assert(type(tostring(out)) == "string" and type(out.unit) == "string" and out:csv())
+  local spec = entry.spec
+  assert(type(tostring(out)) == "string" and type(out.unit) == "string" and spec.table(out)
+    and (not spec.picture or spec.picture(out)))
   return out
 end
 

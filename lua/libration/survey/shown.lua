@@ -139,6 +139,17 @@ local function response_lists(r)
   return out, err
 end
 
+-- The limits of a phase that reach over half a turn, seen from the other side.
+local function turned(x, l)
+  local out = { kind = "band", role = "other", x = x, low = {}, high = {}, wrap = 3 }
+  for k = 1, #x do
+    local shift = l.late[k] > math.pi and -2 * math.pi or l.early[k] < -math.pi and 2 * math.pi
+      or 0 / 0
+    out.low[k], out.high[k] = l.early[k] + shift, l.late[k] + shift
+  end
+  return out
+end
+
 local function response_picture(r)
   local x, l = frequencies(r, #r.re), response_lists(r)
   local title = pair_title(r, ("response (%s)"):format(r.estimate))
@@ -148,7 +159,8 @@ local function response_picture(r)
                    name = "95 % limits of the random error" },
                  { kind = "line", x = x, y = l.gain, name = "gain" } } },
     { x = frequency, y = phase_axis,
-      curves = { { kind = "band", role = "other", x = x, low = l.early, high = l.late, wrap = 3,
+      curves = { turned(x, l),
+                 { kind = "band", role = "other", x = x, low = l.early, high = l.late, wrap = 3,
                    name = "the same of the phase" },
                  { kind = "dots", role = "other", x = x, y = l.phase, name = "phase" } } },
     coherence_panel(r, x, r.coherence) } }
