@@ -369,17 +369,37 @@ describe("the launcher", function()
 
   it("is a prompt that prints results, reads on, and ends with its input", function()
     local input = write("input", "1 + 1\nfor i = 1, 2 do\n  print('row', i)\nend\n"
-      .. "lb.version\nhelp 'plan'\nerror 'mine'\n'still here'\n")
+      .. "lb.version\nhelp 'plan'\nerror 'mine'\nlb.plna\n"
+      .. "help(lb.digitizer)\n'still here'\n")
     local out, err = folder .. "/.out", folder .. "/.err"
     local _, _, code = os.execute(("%s prompt <%s >%s 2>%s"):format(
       quote(root .. "/scripts/libration"), input, out, err))
     assert.equal(0, code)
     local said = read(out)
     for _, part in ipairs { "2", "row\t2", require("libration").version, "lb.plan(demand",
-                            "still here" } do
+                            "effort_s (seconds of search", "@param input", "still here" } do
       assert.truthy(said:find(part, 1, true), part)
     end
-    assert.truthy(read(err):find("mine", 1, true))
+    local complaints = read(err)
+    assert.truthy(complaints:find("mine", 1, true))
+    assert.truthy(complaints:find("lb.plna is not there; did you mean lb.plan?", 1, true))
+    assert.is_nil(require("libration").plna)
+  end)
+end)
+
+describe("help at the prompt", function()
+  it("names what the library has", function()
+    local lb, text = require "libration", require("libration.prompt").about()
+    for line in text:gmatch "[^\n]+" do
+      local room, rest = line:match "^  lb%.([%w_]+)(.-)  "
+      assert.truthy(lb[room], line)
+      for field in rest:gsub("[({].*", ""):gmatch "%.([%w_]+)" do
+        assert.truthy(lb[room][field], line .. ": " .. field)
+      end
+    end
+    for room in pairs(getmetatable(lb).rooms) do
+      assert.truthy(text:find("lb." .. room, 1, true), room)
+    end
   end)
 end)
 

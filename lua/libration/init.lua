@@ -30,6 +30,7 @@ local rooms = {
 }
 
 return setmetatable(M, {
+  rooms = rooms, -- for the reference and the prompt
   __index = function(t, key)
     local room = rooms[key]
     if not room then
