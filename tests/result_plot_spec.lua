@@ -206,6 +206,17 @@ describe("a result of each kind is written and read back:", function()
 end)
 
 describe("damaged JSON of a result", function()
+  it("is refused where a field of its picture is missing or of another type", function()
+    local text = measurement():json()
+    for _, change in ipairs { { '"name": "[^"]*"', '"name": null' }, { '"name": "[^"]*"',
+        '"name": []' }, { '"amplitude": [%d.]+', '"amplitude": "1"' },
+        { '"coverage": %d', '"coverage": {}' }, { '"unit": "V"', '"unit": 3' } } do
+      local damaged, count = text:gsub(change[1], change[2])
+      assert.equal(1, count)
+      assert.equal("format", select(3, lb.report.result.read(damaged)), change[2])
+    end
+  end)
+
   it("is refused, or is a result that prints", function()
     local text, random = averages():response(1, 2, { estimate = "h1" }):json():sub(1, 3000), 7
     local whole = lb.bands.groups(lb.synth.tones { rate = 10000, samples = 2000, tones = {
@@ -218,7 +229,7 @@ describe("damaged JSON of a result", function()
       local damaged = whole:sub(1, at - 1) .. string.char(byte) .. whole:sub(at + 1)
       local back, message, code = lb.report.result.read(damaged)
       if back then
-        assert.equal("string", type(tostring(back)))
+        assert.equal("string", type(tostring(back) .. back:csv() .. back:json()))
       else
         refused = refused + 1
         assert.equal("format", code)

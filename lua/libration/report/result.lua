@@ -141,8 +141,8 @@ local function make(value)
   if not base.is_fraction(out.rate) and entry.spec.rate then error("no exact rate", 0) end
   setmetatable(out, entry.class)
   local spec = entry.spec
-  assert(type(tostring(out)) == "string" and type(out.unit) == "string" and spec.table(out)
-    and (not spec.picture or spec.picture(out)))
+  assert(type(tostring(out)) == "string" and type(out.unit) == "string" and spec.table(out))
+  if spec.picture then result_plot.commands(spec.picture(out)) end -- raises where a field is wrong
   return out
 end
 
