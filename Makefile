@@ -99,6 +99,10 @@ check-san: ## the suite under the address and undefined-behaviour sanitizers
 	    >build/san/planted.log 2>&1 || ! grep -q 'ERROR\|runtime error' build/san/planted.log; \
 	  then echo "check-san: did not see the planted fault '$$fault'"; exit 1; fi; \
 	done; echo "check-san: sees planted faults"
+	@mkdir -p build/san/bin # programs with leaks of their own run without the library
+	@printf '#!/bin/sh\nunset LD_PRELOAD\nexec %s "$$@"\n' "$$(command -v gnuplot)" >build/san/bin/gnuplot
+	@chmod +x build/san/bin/gnuplot
+	PATH="$(CURDIR)/build/san/bin:$$PATH" \
 	LBR_SLOWED=1 BUILD=build/san LUA="$(SANITIZED)" BUSTED_FLAGS="--exclude-tags=checks" \
 	  scripts/env $(LUA) tests/support/suite.lua $(SPECS)
 

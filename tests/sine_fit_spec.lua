@@ -273,7 +273,8 @@ describe("a result", function()
       cells[#cells + 1] = tonumber(cell)
     end
     local l = r.lines[1]
-    assert.same({ 0.11, l.amplitude, l.u_amplitude, l.phase, l.u_phase }, cells)
+    local unit = 1 -- the last cell: no unit was stated
+    assert.same({ 0.11, l.amplitude, l.u_amplitude, l.phase, l.u_phase, unit }, cells)
   end)
 
   it("prints units and two digits of uncertainty", function()
