@@ -119,16 +119,14 @@ static uint32_t whole(lua_State *L, const char *name) {
 }
 
 static int settings_free(lua_State *L) {
-  lbr_settings *s = lua_touserdata(L, 1);
-  free(s->item);
-  *s = (lbr_settings){NULL, 0};
+  lbr_settings_free(lua_touserdata(L, 1));
   return 0;
 }
 
 /* Pushes a handle that frees the settings whatever happens. */
 static lbr_settings *push_settings(lua_State *L) {
   lbr_settings *s = lua_newuserdatauv(L, sizeof *s, 0);
-  *s = (lbr_settings){NULL, 0};
+  *s = (lbr_settings){NULL, 0, 0};
   if (luaL_newmetatable(L, "libration.settings")) {
     lua_pushcfunction(L, settings_free);
     lua_setfield(L, -2, "__gc");
@@ -145,14 +143,21 @@ static int by_duration(const void *left, const void *right) {
   return a->samples < b->samples ? -1 : a->samples > b->samples;
 }
 
+/* The shortest records as rows; pushes one table. */
 static void push_rows(lua_State *L, const lbr_settings *s, size_t most) {
   size_t n = s->count < most ? s->count : most;
+  lbr_setting *all = NULL;
+  if (n > 0) {
+    all = lua_newuserdatauv(L, s->count * sizeof *all, 0);
+    lbr_settings_join(s, all);
+    qsort(all, s->count, sizeof *all, by_duration);
+  }
   lua_createtable(L, (int)n, 0);
   for (size_t i = 0; i < n; i++) {
     lua_createtable(L, 0, 2);
-    lua_pushinteger(L, s->item[i].divider);
+    lua_pushinteger(L, all[i].divider);
     lua_setfield(L, -2, "divider");
-    lua_pushinteger(L, s->item[i].samples);
+    lua_pushinteger(L, all[i].samples);
     lua_setfield(L, -2, "samples");
     lua_rawseti(L, -2, (lua_Integer)i + 1);
   }
@@ -198,8 +203,6 @@ static int plan_coherent(lua_State *L) {
   lbr_status status = lbr_coherent_settings(&grid, &d, (unsigned)workers,
                                             found);
   if (status != LBR_OK) return lbr_refuse(L, status, "coherent settings");
-  if (most > 0 && found->count > 1)
-    qsort(found->item, found->count, sizeof *found->item, by_duration);
   push_rows(L, found, (size_t)most);
   lua_pushinteger(L, (lua_Integer)found->count);
   return 2;

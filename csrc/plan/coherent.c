@@ -115,10 +115,7 @@ typedef struct runs {
   size_t count;
 } runs;
 
-typedef struct chunk {
-  lbr_setting *item;
-  size_t count, room;
-} chunk;
+typedef struct lbr_settings_piece chunk;
 
 typedef struct job {
   const lbr_grid *grid;
@@ -150,12 +147,15 @@ static lbr_status keep(chunk *c, lbr_setting setting) {
  * at once. */
 CLONES static void clearance(const lbr_pair_demand *d, const double *rate,
                              double *least) {
-  double shown[LANES];
-  for (int k = 0; k < LANES; k++) least[k] = INFINITY;
+  double shown[LANES], inverse[LANES];
+  for (int k = 0; k < LANES; k++) {
+    least[k] = INFINITY;
+    inverse[k] = 1 / rate[k];
+  }
   for (size_t j = 0; j < d->n_away; j++) {
     double hz = d->away[j];
     for (int k = 0; k < LANES; k++)
-      shown[k] = fabs(hz - rate[k] * rint(hz / rate[k]));
+      shown[k] = fabs(hz - rate[k] * rint(hz * inverse[k]));
     for (size_t i = 0; i < d->n_lines; i++) {
       double line = d->line[i];
       for (int k = 0; k < LANES; k++) {
@@ -269,29 +269,31 @@ static lbr_status make_runs(const lbr_spans *spans, double clock, runs *r) {
   return LBR_OK;
 }
 
-static lbr_status gather(const job *j, size_t tasks, lbr_settings *out) {
-  size_t count = 0;
-  for (size_t t = 0; t < tasks; t++) count += j->chunks[t].count;
-  out->item = lbr_alloc(count, sizeof *out->item);
-  if (!out->item) return LBR_NO_MEMORY;
-  out->count = 0;
-  for (size_t t = 0; t < tasks; t++) {
-    const chunk *c = &j->chunks[t];
-    if (c->count == 0) continue;
-    memcpy(out->item + out->count, c->item, c->count * sizeof *c->item);
-    out->count += c->count;
+void lbr_settings_free(lbr_settings *s) {
+  for (size_t k = 0; s->piece && k < s->pieces; k++) free(s->piece[k].item);
+  free(s->piece);
+  *s = (lbr_settings){NULL, 0, 0};
+}
+
+void lbr_settings_join(const lbr_settings *s, lbr_setting *out) {
+  for (size_t k = 0; k < s->pieces; k++) {
+    const chunk *c = &s->piece[k];
+    if (c->count > 0) memcpy(out, c->item, c->count * sizeof *out);
+    out += c->count;
   }
-  return LBR_OK;
 }
 
 static lbr_status run_job(job *j, unsigned workers, lbr_settings *out) {
   size_t tasks = (j->most - j->first) / CHUNK + 1;
-  j->chunks = lbr_alloc(tasks, sizeof *j->chunks);
-  if (!j->chunks) return LBR_NO_MEMORY;
+  lbr_settings found = {lbr_alloc(tasks, sizeof *found.piece), tasks, 0};
+  if (!found.piece) return LBR_NO_MEMORY;
+  j->chunks = found.piece;
   lbr_status status = lbr_workers_run(one_chunk, j, tasks, workers);
-  if (status == LBR_OK) status = gather(j, tasks, out);
-  for (size_t t = 0; t < tasks; t++) free(j->chunks[t].item);
-  free(j->chunks);
+  for (size_t t = 0; t < tasks; t++) found.count += found.piece[t].count;
+  if (status == LBR_OK)
+    *out = found;
+  else
+    lbr_settings_free(&found);
   return status;
 }
 
@@ -302,7 +304,7 @@ lbr_status lbr_coherent_settings(const lbr_grid *grid,
     return LBR_DOMAIN;
   double top = demand->line[demand->n_lines - 1];
   double most = fmin(grid->divider_most, ceil(grid->clock / (2 * top)) - 1);
-  *out = (lbr_settings){NULL, 0};
+  *out = (lbr_settings){NULL, 0, 0};
   if (most < grid->divider_least) return LBR_OK;
   double longest = fmin(grid->most_duration,
                         most * (double)grid->samples_most / grid->clock);

@@ -62,10 +62,21 @@ typedef struct lbr_setting {
   uint32_t samples;
 } lbr_setting;
 
+/* By divider, then by samples, in pieces: fresh memory is dearer than the
+ * search, so they are only joined when somebody asks. */
 typedef struct lbr_settings {
-  lbr_setting *item; /* by divider, then by samples */
-  size_t count;
+  struct lbr_settings_piece {
+    lbr_setting *item;
+    size_t count, room;
+  } *piece;
+  size_t pieces;
+  size_t count; /* of all pieces together */
 } lbr_settings;
+
+void lbr_settings_free(lbr_settings *settings);
+
+/* Copies all of them to `out`, which has room for settings->count. */
+void lbr_settings_join(const lbr_settings *settings, lbr_setting *out);
 
 /* Every (divider, samples) that keeps the lines below half the rate, on their
  * bins, and the folded interferers away.  `workers`: as in lbr_workers_run. */

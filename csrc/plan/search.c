@@ -127,9 +127,11 @@ static lbr_problem beat(const lbr_problem *p, const lbr_choice *choice) {
   double t = duration(p, choice), sum = 0;
   for (size_t r = 0; r < p->rates->count; r++) sum += p->rates->item[r].value;
   narrow.most_duration = t * (1 - 4 * EDGE);
-  if (sum * t / (double)p->block > FEW_IN_ALL)
-    narrow.least_duration = fmax(NEAR * t, p->least_duration);
   narrow.most_work = p->care_work;
+  if (sum * t / (double)p->block > FEW_IN_ALL) {
+    narrow.least_duration = fmax(NEAR * t, p->least_duration);
+    narrow.most_work /= 4; /* a try: there is too much to see it through */
+  }
   return narrow;
 }
 
