@@ -58,6 +58,26 @@ static int store_head(lua_State *L) {
   return 2;
 }
 
+/* A feed that keeps the path, argument 1, for its messages. */
+static lbr_feed_handle *push_feed_of_path(lua_State *L) {
+  lbr_feed_handle *h = lbr_push_feed(L);
+  lua_pushvalue(L, 1);
+  lua_setiuservalue(L, -2, 1);
+  return h;
+}
+
+/* Arguments 2 and 3 of what reads a stated layout: the list of channels, whose
+ * length is returned, and the samples of each. */
+static lua_Integer check_layout(lua_State *L, int64_t *samples) {
+  luaL_checktype(L, 2, LUA_TTABLE);
+  lua_settop(L, 3);
+  lua_Integer channels = luaL_len(L, 2);
+  luaL_argcheck(L, channels >= 1 && channels <= LBR_PACKED_MOST_CHANNELS, 2,
+                "a list of 1 to 65536 channels");
+  *samples = (int64_t)lbr_check_count(L, 3, 0, INT64_MAX / 2);
+  return channels;
+}
+
 static void close_rows(void *context) { lbr_rows_close(context); }
 
 /***
@@ -91,9 +111,7 @@ static int store_rows(lua_State *L) {
   const char *separator = luaL_checklstring(L, -1, &n);
   luaL_argcheck(L, n == 1, 2, "separator must be one character");
   spec.separator = *separator;
-  lbr_feed_handle *h = lbr_push_feed(L);
-  lua_pushvalue(L, 1);
-  lua_setiuservalue(L, -2, 1);
+  lbr_feed_handle *h = push_feed_of_path(L);
   lbr_rows *rows;
   int64_t count;
   lbr_status status = lbr_rows_open(path, &spec, &rows, &count, &why);
@@ -128,12 +146,8 @@ static void close_packed(void *context) { lbr_packed_close(context); }
  */
 static int store_packed(lua_State *L) {
   const char *path = lbr_check_path(L, 1);
-  luaL_checktype(L, 2, LUA_TTABLE);
-  lua_settop(L, 3);
-  lua_Integer channels = luaL_len(L, 2);
-  luaL_argcheck(L, channels >= 1 && channels <= LBR_PACKED_MOST_CHANNELS, 2,
-                "a list of 1 to 65536 channels");
-  int64_t samples = (int64_t)lbr_check_count(L, 3, 0, INT64_MAX / 2);
+  int64_t samples;
+  lua_Integer channels = check_layout(L, &samples);
   lbr_packed_channel *list = lua_newuserdatauv(
       L, (size_t)channels * sizeof *list, 0);
   for (lua_Integer k = 0; k < channels; k++) {
@@ -144,9 +158,7 @@ static int store_packed(lua_State *L) {
     list[k].step = (size_t)integer_field(L, at, "step", 1, 65536);
     lua_pop(L, 1);
   }
-  lbr_feed_handle *h = lbr_push_feed(L);
-  lua_pushvalue(L, 1);
-  lua_setiuservalue(L, -2, 1);
+  lbr_feed_handle *h = push_feed_of_path(L);
   lbr_packed *packed;
   lbr_why why;
   lbr_status status = lbr_packed_open(path, list, (size_t)channels, samples,
@@ -179,12 +191,8 @@ static void close_columns(void *context) { lbr_columns_close(context); }
  */
 static int store_columns(lua_State *L) {
   const char *path = lbr_check_path(L, 1);
-  luaL_checktype(L, 2, LUA_TTABLE);
-  lua_settop(L, 3);
-  lua_Integer channels = luaL_len(L, 2);
-  luaL_argcheck(L, channels >= 1 && channels <= LBR_PACKED_MOST_CHANNELS, 2,
-                "a list of 1 to 65536 channels");
-  int64_t samples = (int64_t)lbr_check_count(L, 3, 0, INT64_MAX / 2);
+  int64_t samples;
+  lua_Integer channels = check_layout(L, &samples);
   lbr_columns_channel *list = lua_newuserdatauv(
       L, (size_t)channels * sizeof *list, 0);
   for (lua_Integer k = 0; k < channels; k++) {
@@ -196,9 +204,7 @@ static int store_columns(lua_State *L) {
     list[k].line = (size_t)integer_field(L, at, "line", 1, 1024);
     lua_pop(L, 1);
   }
-  lbr_feed_handle *h = lbr_push_feed(L);
-  lua_pushvalue(L, 1);
-  lua_setiuservalue(L, -2, 1);
+  lbr_feed_handle *h = push_feed_of_path(L);
   lbr_columns *columns;
   lbr_why why;
   lbr_status status = lbr_columns_open(path, list, (size_t)channels, samples,
