@@ -116,7 +116,7 @@ check-valgrind: all probe ## the suite, but for slow specs, under memcheck
 	  if [ $$? -ne 99 ]; then \
 	    echo "check-valgrind: did not see the planted fault '$$fault'"; exit 1; fi; \
 	done; echo "check-valgrind: sees planted faults"
-	LBR_SLOWED=1 LUA="$(MEMCHECK)" BUSTED_FLAGS="--exclude-tags=checks,slow" $(SUITE) $(SPECS)
+	LBR_SLOWED=1 LUA="$(MEMCHECK)" BUSTED_FLAGS="--exclude-tags=checks,slow,extended" $(SUITE) $(SPECS)
 
 ALLOC_WRAPS = malloc calloc realloc aligned_alloc posix_memalign free strdup \
   fftw_malloc fftw_free pthread_create

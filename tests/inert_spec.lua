@@ -140,7 +140,8 @@ describe("writing data", function()
     return result
   end
 
-  it("reads back equal, bit for bit", function()
+  -- Tagged: memcheck computes long doubles in 64 bits, so last bits differ there.
+  it("reads back equal, bit for bit #extended", function()
     math.randomseed(4242)
     for _ = 1, 300 do
       local data = { a = draw(4), b = draw(2) }
