@@ -9,7 +9,7 @@
 
 #define MOST_SPANS ((size_t)1 << 22)
 #define MOST_SETTINGS ((size_t)1 << 26)
-#define CHUNK 256  /* dividers a task takes */
+#define CHUNK 512  /* dividers a task takes */
 #define EXACT 1e-6 /* whole quotients of whole numbers below 2^53 stay whole */
 
 void lbr_spans_free(lbr_spans *s) {
@@ -128,7 +128,7 @@ typedef struct job {
 
 static lbr_status keep(chunk *c, lbr_setting setting) {
   if (c->count == c->room) {
-    size_t room = c->room ? 4 * c->room : 1024;
+    size_t room = c->room ? 2 * c->room : 4096;
     if (room > MOST_SETTINGS) return LBR_OVERFLOW;
     lbr_setting *item = realloc(c->item, room * sizeof *item);
     if (!item) return LBR_NO_MEMORY;
@@ -187,11 +187,13 @@ static size_t first_run(const runs *r, double periods) {
 }
 
 static lbr_status take(const job *j, chunk *c, uint32_t divider, size_t k,
-                       double least_periods) {
-  double d = divider, n = floor(j->run.before[k] / d + EXACT) + 1;
-  double end = floor(j->run.last[k] / d + EXACT);
-  n = fmax(n, (double)j->grid->samples_least);
-  end = fmin(end, (double)j->grid->samples_most);
+                       double inverse, double least_periods) {
+  double d = divider, n = floor(j->run.before[k] * inverse + EXACT) + 1;
+  double end = floor(j->run.last[k] * inverse + EXACT);
+  double least = (double)j->grid->samples_least;
+  double most = (double)j->grid->samples_most;
+  if (n < least) n = least;
+  if (end > most) end = most;
   for (; n <= end; n++) {
     if (n * d <= least_periods) continue;
     lbr_status status = keep(c, (lbr_setting){divider, (uint32_t)n});
@@ -229,14 +231,15 @@ static lbr_status one_divider(const job *j, chunk *c, uint32_t divider,
         continue;
       }
       if (!hit[i]) continue;
-      lbr_status status = take(j, c, divider, k + i, periods);
+      lbr_status status = take(j, c, divider, k + i, inverse, periods);
       if (status != LBR_OK) return status;
     }
   }
   return LBR_OK;
 }
 
-static lbr_status one_chunk(void *context, size_t task, unsigned worker) {
+CLONES static lbr_status one_chunk(void *context, size_t task,
+                                   unsigned worker) {
   job *j = context;
   double rate[LANES], clear[LANES];
   (void)worker;
